@@ -1,0 +1,1 @@
+"""Statistics of draws, on plain arrays."""

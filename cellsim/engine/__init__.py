@@ -1,0 +1,1 @@
+"""Running a compiled program over blocks of draws."""

@@ -1,0 +1,1 @@
+"""The formula language: from text to a syntax tree and back."""

@@ -1,0 +1,1 @@
+"""The spreadsheet functions: one registry, one module a family."""

@@ -1,0 +1,1 @@
+"""Which cell depends on which, and in what order they are calculated."""

@@ -1,0 +1,1 @@
+"""The evaluators: the reference that walks trees, and the compiled program over draws."""

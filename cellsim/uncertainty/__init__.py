@@ -1,0 +1,1 @@
+"""What is uncertain: the side-car, distributions, dependence and sampling."""

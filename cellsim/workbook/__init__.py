@@ -1,0 +1,1 @@
+"""Reading a workbook into frozen records."""
