@@ -123,7 +123,7 @@ Value: TypeAlias = Scalar | Array | Reference | LambdaValue
 
 _ERROR_ORDER = tuple(ErrorValue)
 _QUIET_NAN = 0x7FF8_0000_0000_0000
-_PAYLOADS = {
+_PAYLOADS: dict[ErrorValue, float] = {
     error: struct.unpack("<d", struct.pack("<Q", _QUIET_NAN | (code + 1)))[0]
     for code, error in enumerate(_ERROR_ORDER)
 }

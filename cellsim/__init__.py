@@ -1,0 +1,1 @@
+"""Uncertainty in ordinary workbooks: recalculated exactly, drawn, evaluated, reported."""
