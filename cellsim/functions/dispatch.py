@@ -14,7 +14,6 @@ from cellsim.functions.registry import (
     ArgumentKind,
     Context,
     FunctionRecord,
-    ParameterRecord,
 )
 from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value
 
