@@ -11,7 +11,9 @@ LAST_COLUMN = 16_384
 
 _ADDRESS = re.compile(r"\$?([A-Za-z]{1,3})\$?([0-9]{1,7})\Z")
 _PLAIN_TITLE = re.compile(r"[^\W\d][\w.]*\Z")
-_LOOKS_LIKE_ADDRESS = re.compile(r"(?:[A-Za-z]{1,3}[0-9]{1,7}|[Rr][0-9]*(?:[Cc][0-9]*)?|[Cc][0-9]*)\Z")
+_LOOKS_LIKE_ADDRESS = re.compile(
+    r"(?:[A-Za-z]{1,3}[0-9]{1,7}|[Rr][0-9]*(?:[Cc][0-9]*)?|[Cc][0-9]*)\Z"
+)
 
 
 class CellRef(NamedTuple):
