@@ -1,0 +1,1 @@
+"""Distributions: what they are, the families that there are, and how one is built."""

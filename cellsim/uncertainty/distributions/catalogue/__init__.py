@@ -1,0 +1,1 @@
+"""The families of distributions, one module a group; each module offers `FAMILIES`."""
