@@ -83,10 +83,10 @@ def cancels(result: float, left: float) -> bool:
     operands agree to about 15 significant digits. Common practice, no source; the bound of 2^-48 relative was
     taken from what stored values show.
     """
-    return abs(result) <= abs(left) * _CANCELLATION
+    return abs(result) <= abs(left) * CANCELLATION
 
 
-_CANCELLATION = 2.0**-48
+CANCELLATION = 2.0**-48
 
 
 def _divide(left: float, right: float) -> float:

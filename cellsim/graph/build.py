@@ -213,6 +213,12 @@ class Graph:
         self._collect(self.facts(formula.tree), formula.cell, found, 0)
         return found
 
+    def areas_of(self, tree: Node, cell: CellRef) -> list[RangeRef]:
+        """The areas that an expression's references name at a place, defined names followed."""
+        found: list[RangeRef] = []
+        self._collect(self.facts(tree), cell, found, 0)
+        return found
+
     def _collect(self, facts: ShapeFacts, cell: CellRef, found: list[RangeRef], depth: int) -> None:
         resolver = self.resolver
         for reference in facts.references:

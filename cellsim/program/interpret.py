@@ -339,7 +339,7 @@ def _postfix(node: Postfix, frame: Frame, whole: bool) -> Value:
 def _binary(node: Binary, frame: Frame, whole: bool) -> Value:
     operator = node.operator
     if operator in REFERENCE_OPERATORS:
-        return _combine_references(operator, evaluate(node.left, frame, whole=True), evaluate(node.right, frame, whole=True))
+        return combine_references(operator, evaluate(node.left, frame, whole=True), evaluate(node.right, frame, whole=True))
     left = operand(node.left, frame, whole=whole)
     right = operand(node.right, frame, whole=whole)
     if isinstance(left, Array) or isinstance(right, Array):
@@ -347,7 +347,8 @@ def _binary(node: Binary, frame: Frame, whole: bool) -> Value:
     return binary_scalar(operator, left, right, date_1904=frame.date_1904)
 
 
-def _combine_references(operator: str, left: Value, right: Value) -> Value:
+def combine_references(operator: str, left: Value, right: Value) -> Reference | ErrorValue:
+    """A reference operator: `:` spans both operands, `,` joins them, a space intersects them."""
     for value in (left, right):
         if isinstance(value, ErrorValue):
             return value

@@ -1,0 +1,257 @@
+"""Fast steps: plain array operations for blocks in which no draw has failed so far.
+
+NumPy raises a fault as soon as an operation divides by zero, overflows or leaves its domain; steps
+that can give an error without such a fault raise the given exception themselves.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import partial
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from cellsim.functions.coercion import to_number
+from cellsim.functions.registry import Stack, find_over_draws
+from cellsim.program.buffers import Buffers
+from cellsim.program.calculation import Calculation
+from cellsim.program.comparisons import compare_over_draws, settle_cancellation
+from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
+from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
+from cellsim.values import Fault, Scalar, encode_error
+
+Step = Callable[[], Any]
+AnyArray = npt.NDArray[Any]
+
+UFUNCS: dict[Op, np.ufunc] = {
+    Op.ADD: np.add,
+    Op.SUBTRACT: np.subtract,
+    Op.MULTIPLY: np.multiply,
+    Op.DIVIDE: np.divide,
+    Op.NEGATE: np.negative,
+    Op.ABSOLUTE: np.absolute,
+    Op.EXP: np.exp,
+    Op.LN: np.log,
+    Op.SQRT: np.sqrt,
+    Op.MINIMUM: np.minimum,
+    Op.MAXIMUM: np.maximum,
+    Op.AND: np.logical_and,
+    Op.OR: np.logical_or,
+    Op.NOT: np.logical_not,
+}
+
+
+def fast_step(
+    instruction: Instruction, buffers: Buffers, base: Calculation, go_carefully: type[Exception]
+) -> Step:
+    """The fast step of an instruction, bound to its buffers.
+
+    Args:
+        instruction: Any instruction but LOOP.
+        buffers: Where its operands and its target live.
+        base: The base case.
+        go_carefully: What a step raises when a draw has failed without a floating-point fault.
+    """
+    op = instruction.op
+    out = buffers.array(instruction.target)
+    if op is Op.CALL:
+        return _call(instruction.detail, buffers, out, go_carefully)
+    operands = [buffers.operand(operand) for operand in instruction.operands]
+    if op is Op.INTERPRET:
+        return _interpret(instruction, operands, base, out, go_carefully)
+    ufunc = UFUNCS.get(op)
+    if ufunc is not None:
+        return partial(ufunc, *operands, out)
+    constant_error = any(
+        isinstance(operand, Constant) and operand.value != operand.value for operand in instruction.operands
+    )
+    if constant_error:
+        return partial(_check_after, _OTHERS[op](operands, out), out, go_carefully)
+    step = _OTHERS[op](operands, out)
+    if op is Op.TO_NUMBER:
+        return partial(_check_after, step, out, go_carefully)
+    return step
+
+
+def _check_after(step: Step, out: AnyArray, go_carefully: type[Exception]) -> None:
+    step()
+    if out.dtype != bool and np.isnan(out).any():
+        raise go_carefully
+    if out.dtype == bool:
+        raise go_carefully  # which flags are errors is only known to the careful step
+
+
+def _power(operands: list[AnyArray], out: AnyArray) -> Step:
+    base, exponent = operands
+
+    def step() -> None:
+        if not exponent.ndim and exponent != 0:
+            np.power(base, exponent, out)
+            return
+        if np.any((base == 0) & (exponent == 0)):
+            raise FloatingPointError
+        np.power(base, exponent, out)
+
+    return step
+
+
+def _select(operands: list[AnyArray], out: AnyArray) -> Step:
+    flag, then, otherwise = operands
+
+    def step() -> None:
+        out[:] = np.where(flag, then, otherwise)
+
+    return step
+
+
+def _select_flag(operands: list[AnyArray], out: AnyArray) -> Step:
+    flag, then, otherwise = (operand.astype(bool) if operand.dtype != bool else operand for operand in operands)
+
+    def step() -> None:
+        out[:] = np.where(flag, then, otherwise)
+
+    return step
+
+
+def _copy(operands: list[AnyArray], out: AnyArray) -> Step:
+    return partial(np.copyto, out, operands[0], casting="unsafe")
+
+
+def _none_fails(_operands: list[AnyArray], out: AnyArray) -> Step:
+    return partial(out.fill, False)
+
+
+def _is_true(operands: list[AnyArray], out: AnyArray) -> Step:
+    return partial(np.not_equal, operands[0], 0.0, out)
+
+
+def _compare(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:
+    return lambda operands, out: partial(compare_over_draws, op, operands[0], operands[1], out)
+
+
+def _cancel(operands: list[AnyArray], out: AnyArray) -> Step:
+    return partial(settle_cancellation, operands[0], operands[1], out)
+
+
+def _to_number(operands: list[AnyArray], out: AnyArray) -> Step:
+    def step() -> None:
+        out[:] = numbers_from_objects(operands[0])
+
+    return step
+
+
+_OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
+    Op.POWER: _power,
+    Op.SELECT: _select,
+    Op.SELECT_FLAG: _select_flag,
+    Op.IF_ERROR: _copy,
+    Op.IF_NA: _copy,
+    Op.IS_ERROR: _none_fails,
+    Op.IS_NA: _none_fails,
+    Op.IS_TRUE: _is_true,
+    Op.AS_NUMBER: _copy,
+    Op.CANCEL: _cancel,
+    Op.TO_NUMBER: _to_number,
+    **{
+        op: _compare(op)
+        for op in (Op.EQUAL, Op.NOT_EQUAL, Op.LESS, Op.LESS_EQUAL, Op.GREATER, Op.GREATER_EQUAL)
+    },
+}
+
+
+def _call(call: KernelCall, buffers: Buffers, out: AnyArray, go_carefully: type[Exception]) -> Step:
+    run = kernel_runner(call, buffers)
+
+    def step() -> None:
+        result = run()
+        out[:] = result
+        if np.isnan(out).any():
+            raise go_carefully
+
+    return step
+
+
+def kernel_runner(call: KernelCall, buffers: Buffers) -> Callable[[], AnyArray]:
+    """A function that calls a kernel over draws on the buffers of its arguments."""
+    kernel = find_over_draws(call.function)
+    if kernel is None:
+        raise LookupError(call.function)
+    gather = [_argument(argument, buffers) for argument in call.arguments]
+
+    def run() -> AnyArray:
+        with np.errstate(all="ignore"):
+            return kernel(*[argument() for argument in gather])
+
+    return run
+
+
+def _argument(argument: Any, buffers: Buffers) -> Callable[[], Any]:
+    if not isinstance(argument, StackOperand):
+        array = buffers.operand(argument)
+        if array.ndim:
+            return lambda: array
+        number = float(array)
+        return lambda: number
+    rows = [buffers.operand(item) for item in argument.items]
+    data = np.empty((len(rows), buffers.block))
+    varying = [(place, row) for place, row in enumerate(rows) if row.ndim]
+    for place, row in enumerate(rows):
+        if not row.ndim:
+            data[place] = row
+
+    def gather() -> Any:
+        for place, row in varying:
+            data[place] = row
+        return data if argument.plain else Stack(argument.rows, argument.columns, data)
+
+    return gather
+
+
+def _interpret(
+    instruction: Instruction,
+    operands: list[AnyArray],
+    base: Calculation,
+    out: AnyArray,
+    go_carefully: type[Exception],
+) -> Step:
+    run = expression_runner(instruction, operands, base, out)
+
+    def step() -> None:
+        run()
+        if instruction.kind is Kind.NUMBER and np.isnan(out).any():
+            raise go_carefully
+
+    return step
+
+
+def expression_runner(
+    instruction: Instruction, operands: list[AnyArray], base: Calculation, out: AnyArray
+) -> Step:
+    """A function that evaluates an expression draw by draw into its buffer."""
+    evaluator = ExpressionEvaluator(instruction.detail, base)
+    columns = [operand if operand.ndim else float(operand) for operand in operands]
+
+    def run() -> None:
+        with np.errstate(all="ignore"):
+            values = evaluator.evaluate(columns, len(out))
+        if instruction.kind is Kind.NUMBER:
+            out[:] = as_numbers(values)
+        else:
+            for place, value in enumerate(values):
+                out[place] = value
+
+    return run
+
+
+def numbers_from_objects(values: AnyArray) -> AnyArray:
+    """Objects as numbers by the rule of operators, errors encoded."""
+    return np.array([_operator_number(value) for value in values], dtype=np.float64)
+
+
+def _operator_number(value: Scalar) -> float:
+    try:
+        return to_number(value)
+    except Fault as fault:
+        return encode_error(fault.error)

@@ -1,0 +1,186 @@
+"""The NumPy evaluator: a program over blocks of draws, in fixed buffers.
+
+Guarantees:
+- the result of a draw depends on its inputs alone, not on its block, its neighbours or the thread;
+- buffers are reused, so memory is bounded by the block's size times the registers alive at once;
+- an error never turns into a number. As long as no draw of a block fails, the fast steps run with
+  floating-point faults raised by NumPy; from the first fault on, the block goes on with the careful
+  steps, which carry errors as NaNs whose payload names them.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from cellsim.program.buffers import Buffers, plan_buffers
+from cellsim.program.calculation import Calculation
+from cellsim.program.careful import careful_step
+from cellsim.program.fast import fast_step
+from cellsim.program.ir import Instruction, Kind, Loop, Op, Operand, Program, Register
+
+FloatArray = npt.NDArray[np.float64]
+Step = Callable[[], Any]
+
+_SETTLED = 1e-14
+_MORE_PASSES = 20
+
+
+class GoCarefully(Exception):  # noqa: N818  (a change of pace, not a failure)
+    """An error has come up in a block: go on with the careful steps."""
+
+
+@dataclass(slots=True)
+class _Steps:
+    fast: list[Step]
+    careful: list[Step]
+
+
+class BlockEvaluator:
+    """Evaluates a program over blocks of draws; one for each thread.
+
+    Args:
+        program: The program.
+        base: The base case, for expressions that are taken draw by draw.
+        block: Draws in a block.
+    """
+
+    def __init__(self, program: Program, base: Calculation, block: int) -> None:
+        self._program = program
+        self._base = base
+        self.block = block
+        self._buffers = Buffers(plan_buffers(program), block)
+        self.poison: dict[int, FloatArray | None] = {}
+        self.unsettled = 0
+        self._steps = self._build(program.instructions)
+        self._inputs = [self._buffers.array(number) for number in range(len(program.inputs))]
+        self._outputs = [
+            (self._buffers.operand(operand), operand.number if isinstance(operand, Register) else -1)
+            for operand, _ in program.outputs
+        ]
+
+    def evaluate(self, draws: Sequence[FloatArray], out: FloatArray) -> None:
+        """Evaluate one block.
+
+        Args:
+            draws: The inputs' values, each of shape (n,) with n at most the block's size.
+            out: Where the outputs go, shape (outputs, n); failed draws are NaN, the payload names
+                the error.
+        """
+        count = out.shape[1]
+        for buffer, values in zip(self._inputs, draws, strict=True):
+            buffer[:count] = values
+            if count < self.block:
+                buffer[count:] = values[0]
+        self._run()
+        for row, (array, _) in enumerate(self._outputs):
+            out[row] = array[:count] if array.ndim else array
+
+    def _run(self) -> None:
+        self.poison.clear()
+        finite = all(np.isfinite(buffer).all() for buffer in self._inputs)
+        done = 0
+        if finite:
+            with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
+                done = _run_fast(self._steps.fast)
+        if done < len(self._steps.careful):
+            with np.errstate(all="ignore"):
+                for step in self._steps.careful[done:]:
+                    step()
+
+    def _build(self, instructions: Sequence[Instruction]) -> _Steps:
+        fast: list[Step] = []
+        careful: list[Step] = []
+        for instruction in instructions:
+            if instruction.op is Op.LOOP:
+                runner = _LoopRunner(self, instruction.detail, self._build(instruction.detail.body))
+                fast.append(runner.run_fast)
+                careful.append(runner.run_careful)
+                continue
+            fast.append(fast_step(instruction, self._buffers, self._base, GoCarefully))
+            careful.append(careful_step(instruction, self._buffers, self._base, self.poison))
+        return _Steps(fast, careful)
+
+    def operand(self, operand: Operand) -> FloatArray:
+        """The buffer of an operand, or its constant as an array without dimensions."""
+        return self._buffers.operand(operand)
+
+    def register(self, number: int) -> FloatArray:
+        """The buffer of a register."""
+        return self._buffers.array(number)
+
+
+def _run_fast(steps: Sequence[Step]) -> int:
+    """Run steps until the first fault; how many need not be run again."""
+    done = 0
+    try:
+        for step in steps:
+            step()
+            done += 1
+    except (FloatingPointError, GoCarefully):
+        return done
+    return done
+
+
+class _LoopRunner:
+    """Solves a circular chain by passes; a draw stands still as soon as a pass no longer moves it."""
+
+    def __init__(self, evaluator: BlockEvaluator, loop: Loop, steps: _Steps) -> None:
+        self._evaluator = evaluator
+        self._loop = loop
+        self._steps = steps
+        self._carried = [evaluator.register(number) for number in loop.carried]
+        self._results = [evaluator.operand(operand) for operand in loop.results]
+
+    def run_fast(self) -> None:
+        """All passes with faults raised."""
+        if not self._run(self._steps.fast):
+            raise GoCarefully
+
+    def run_careful(self) -> None:
+        """All passes, errors carried."""
+        self._run(self._steps.careful)
+
+    def _run(self, steps: Sequence[Step]) -> bool:
+        for buffer, start in zip(self._carried, self._loop.start, strict=True):
+            buffer.fill(start)
+        size = self._evaluator.block
+        active = np.ones(size, dtype=bool)
+        last = np.full(size, np.inf)
+        limit = self._loop.passes
+        for number in range(1, limit * _MORE_PASSES + 1):
+            for step in steps:
+                step()
+            change = np.zeros(size)
+            for buffer, result in zip(self._carried, self._results, strict=True):
+                moved = np.abs(result - buffer) / np.maximum(1.0, np.abs(result))
+                moved[np.isnan(moved)] = 0.0  # an error stays one
+                np.maximum(change, moved, out=change)
+                np.copyto(buffer, result, where=active)
+            active &= change > _SETTLED
+            if number >= limit:
+                active &= change < last
+            if not active.any():
+                break
+            last = change
+        self._evaluator.unsettled += int((last > _SETTLED).sum()) if active.any() else 0
+        return not any(np.isnan(buffer).any() for buffer in self._carried)
+
+
+def program_kinds(program: Program) -> dict[int, Kind]:
+    """What each register holds."""
+    kinds = dict.fromkeys(range(len(program.inputs)), Kind.NUMBER)
+
+    def add(instructions: Sequence[Instruction]) -> None:
+        for instruction in instructions:
+            kinds[instruction.target] = instruction.kind
+            if instruction.op is Op.LOOP:
+                kinds.update(dict.fromkeys(instruction.detail.carried, Kind.NUMBER))
+                add(instruction.detail.body)
+
+    add(program.instructions)
+    return kinds
