@@ -87,6 +87,23 @@ def lower_factor(matrix: FloatArray) -> FloatArray:
     return unit_rows
 
 
+def mix_rows(rows: Sequence[FloatArray], factor: FloatArray) -> None:
+    """Multiplies rows by a lower triangular matrix, in place.
+
+    Guarantees: each draw is computed by itself, so that its bits do not depend on the block.
+
+    Args:
+        rows: One for each input, shape (draws,).
+        factor: Shape (inputs, inputs), lower triangular.
+    """
+    for position in reversed(range(len(rows))):  # the last first: it needs the others unmixed
+        row = rows[position]
+        row *= factor[position, position]
+        for other in range(position):
+            if factor[position, other] != 0.0:
+                row += factor[position, other] * rows[other]
+
+
 def dependent_groups(matrix: FloatArray) -> list[list[int]]:
     """The sets of two or more inputs that are tied to each other, directly or through others."""
     left = set(range(len(matrix)))
@@ -102,33 +119,3 @@ def dependent_groups(matrix: FloatArray) -> list[list[int]]:
         if len(group) > 1:
             groups.append(sorted(group))
     return groups
-
-
-def achieved_rank_correlation(draws: FloatArray) -> FloatArray:
-    """Spearman rank correlations of draws; equal values share the mean of their ranks.
-
-    Args:
-        draws: Shape (inputs, draws), at least two draws.
-
-    Returns:
-        Shape (inputs, inputs); NaN where an input takes one value only, except on the diagonal.
-    """
-    ranks = np.array([_mid_ranks(row) for row in draws])
-    ranks -= ranks.mean(axis=1, keepdims=True)
-    products = ranks @ ranks.T
-    spread = np.sqrt(np.diag(products))
-    with np.errstate(invalid="ignore", divide="ignore"):
-        result: FloatArray = products / np.outer(spread, spread)
-    np.clip(result, -1.0, 1.0, out=result)
-    np.fill_diagonal(result, 1.0)
-    return result
-
-
-def _mid_ranks(values: FloatArray) -> FloatArray:
-    order = np.argsort(values)
-    sorted_values = values[order]
-    starts = np.flatnonzero(np.append(True, sorted_values[1:] != sorted_values[:-1]))
-    ends = np.append(starts[1:], len(values))
-    ranks = np.empty(len(values))
-    ranks[order] = np.repeat((starts + ends - 1) / 2.0, ends - starts)
-    return ranks

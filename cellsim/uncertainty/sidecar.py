@@ -71,7 +71,7 @@ def load_sidecar(path: Path) -> Sidecar:
         raise SidecarError(_toml_problem(path, error)) from error
     findings = Findings(path.name, locate_lines(text.replace("\r\n", "\n")))
     _check_sections(findings, document)
-    workbook, as_of = _read_model(findings, document.get("model", {}))
+    workbook, as_of, iterate = _read_model(findings, document.get("model", {}))
     run = _read_run(findings, document.get("run", {}))
     inputs = read_inputs(findings, document.get("inputs", {}))
     known_inputs = document.get("inputs", {})
@@ -86,6 +86,7 @@ def load_sidecar(path: Path) -> Sidecar:
         text=text,
         workbook=path.parent / workbook,
         as_of=as_of,
+        iterate=iterate,
         run=run,
         inputs=inputs,
         dependence=dependence,
@@ -125,22 +126,24 @@ def _check_sections(findings: Findings, document: dict[str, Any]) -> None:
             findings.add((), f"there are no {name}: expected a section [{name}.NAME]")
 
 
-def _read_model(findings: Findings, section: Any) -> tuple[str, dt.date | None]:
+def _read_model(findings: Findings, section: Any) -> tuple[str, dt.date | None, bool]:
     table = findings.table(("model",), section)
     if table is None:
-        return "", None
-    workbook, as_of = "", None
+        return "", None, False
+    workbook, as_of, iterate = "", None, False
     for key, value in table.items():
         path = ("model", key)
         if key == "workbook":
             workbook = findings.text(path, value) or ""
         elif key == "as_of":
             as_of = _read_date(findings, path, value)
+        elif key == "iterate":
+            iterate = bool(findings.flag(path, value))
         else:
-            findings.unknown_key(path, ("workbook", "as_of"))
+            findings.unknown_key(path, ("workbook", "as_of", "iterate"))
     if "workbook" not in table:
         findings.add(("model",), "the section [model] lacks the key 'workbook'")
-    return workbook, as_of
+    return workbook, as_of, iterate
 
 
 def _read_date(findings: Findings, path: tuple[str, ...], value: Any) -> dt.date | None:

@@ -133,6 +133,7 @@ class Sidecar:
         text: Its text.
         workbook: The model's path, resolved relative to the side-car's folder.
         as_of: What TODAY() and NOW() return (a `datetime` if a time of day was given), or None.
+        iterate: Whether circular references are iterated even if the workbook does not ask for it.
         run: The section `[run]`.
         inputs: The inputs in the file's order, at least one.
         dependence: The dependence sections in the file's order.
@@ -143,6 +144,7 @@ class Sidecar:
     text: str
     workbook: Path
     as_of: dt.date | None
+    iterate: bool
     run: RunSettings
     inputs: tuple[InputSpec, ...]
     dependence: tuple[DependenceSpec, ...]

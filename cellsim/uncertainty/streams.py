@@ -13,9 +13,11 @@ _PURPOSES = 2
 _NUMBERS_IN_A_STEP = 4
 _SMALLEST = 2.0**-54
 """Stands for the one value outside (0, 1) that a generator gives, 0."""
+_HALF_STEP = 2.0**-25
+"""Half the distance between the single precision numbers that a generator gives."""
 
 
-def stream(seed: int, position: int, purpose: int = VALUES) -> np.random.Generator:
+def stream(seed: int, position: int, purpose: int, first_step: int = 0) -> np.random.Generator:
     """The stream of one input for one purpose.
 
     Guarantees: streams of different seeds, inputs or purposes are independent (Philox 4x64-10,
@@ -25,9 +27,10 @@ def stream(seed: int, position: int, purpose: int = VALUES) -> np.random.Generat
         seed: 0 to 2**64 - 1.
         position: The input's position in the study, counted from 0.
         purpose: `VALUES` or `ORDER`.
+        first_step: How many steps of four numbers to leave out.
     """
     key = np.array([seed, position * _PURPOSES + purpose], dtype=np.uint64)
-    return np.random.Generator(np.random.Philox(key=key))
+    return np.random.Generator(np.random.Philox(key=key, counter=first_step))
 
 
 def fill_uniforms(out: FloatArray, seed: int, position: int, first: int) -> None:
@@ -43,7 +46,21 @@ def fill_uniforms(out: FloatArray, seed: int, position: int, first: int) -> None
     """
     if first % _NUMBERS_IN_A_STEP:
         raise ValueError(f"a block must start at a multiple of {_NUMBERS_IN_A_STEP}, not {first}")
-    key = np.array([seed, position * _PURPOSES + VALUES], dtype=np.uint64)
-    generator = np.random.Philox(key=key, counter=first // _NUMBERS_IN_A_STEP)
-    np.random.Generator(generator).random(out=out)
+    stream(seed, position, VALUES, first // _NUMBERS_IN_A_STEP).random(out=out)
     np.maximum(out, _SMALLEST, out=out)
+
+
+def fill_strata(out: FloatArray, seed: int, position: int) -> None:
+    """Fills `out`, shape (draws,), with one uniform in each of as many equal strata, rising.
+
+    The place inside its stratum has 24 random bits, so that it stays inside in double precision.
+    """
+    out[:] = stream(seed, position, VALUES).random(out.size, dtype=np.float32)
+    out += _HALF_STEP
+    out += np.arange(out.size)
+    out /= out.size
+
+
+def shuffle(out: FloatArray, seed: int, position: int) -> None:
+    """Puts `out` into the input's own random order."""
+    stream(seed, position, ORDER).shuffle(out)

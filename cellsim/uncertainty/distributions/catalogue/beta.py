@@ -1,0 +1,194 @@
+"""The beta distribution between two bounds, and the PERT distribution, which is one of them."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property, lru_cache, partial
+
+import numpy as np
+from scipy import special
+
+from cellsim.uncertainty.distributions.distribution import FloatArray, ScoreDistribution
+from cellsim.uncertainty.distributions.family import (
+    Family,
+    ParameterError,
+    ParameterSet,
+    any_number,
+    positive,
+    spell,
+)
+from cellsim.uncertainty.distributions.score_table import ScoreTable, build_score_table
+
+_NEGLIGIBLE = 1e-17
+"""Relative size of the second term of a quantile's series below which the leading one is all."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class Beta(ScoreDistribution):
+    """The beta distribution, scaled to bounds.
+
+    Quantiles come from a table of the logit over the normal score: their distances from either
+    bound are within a relative error of `score_table.ERROR_BOUND`.
+
+    Attributes:
+        alpha: First shape, above 0.
+        beta: Second shape, above 0.
+        low: The lower bound.
+        high: The upper bound, above `low`.
+    """
+
+    alpha: float
+    beta: float
+    low: float
+    high: float
+
+    @property
+    def mean(self) -> float:
+        """The mean."""
+        return self.low + (self.high - self.low) * self.alpha / (self.alpha + self.beta)
+
+    @property
+    def sd(self) -> float:
+        """The standard deviation."""
+        total = self.alpha + self.beta
+        share = math.sqrt(self.alpha / total * (self.beta / total) / (total + 1))
+        return (self.high - self.low) * share
+
+    @property
+    def lower(self) -> float:
+        """The lower bound."""
+        return self.low
+
+    @property
+    def upper(self) -> float:
+        """The upper bound."""
+        return self.high
+
+    @cached_property
+    def _table(self) -> ScoreTable:
+        return _logit_table(self.alpha, self.beta)
+
+    def at_score(self, z: FloatArray) -> FloatArray:
+        """The value as far out as `z` is in the standard normal distribution."""
+        logit = self._table(z)
+        near = np.exp(-np.abs(logit))
+        near /= 1.0 + near
+        near *= self.high - self.low
+        return np.where(logit <= 0.0, self.low + near, self.high - near)
+
+    def cdf(self, x: FloatArray) -> FloatArray:
+        """The probability of a value at or below `x`."""
+        result: FloatArray = special.betainc(self.alpha, self.beta, self._share_below(x))
+        return result
+
+    def survival(self, x: FloatArray) -> FloatArray:
+        """The probability of a value above `x`."""
+        result: FloatArray = special.betainc(self.beta, self.alpha, self._share_above(x))
+        return result
+
+    def density(self, x: FloatArray) -> FloatArray:
+        """The probability density at `x`."""
+        below, above = self._share_below(x), self._share_above(x)
+        with np.errstate(divide="ignore", over="ignore"):
+            logarithm = special.xlogy(self.alpha - 1.0, below)
+            logarithm += special.xlogy(self.beta - 1.0, above)
+            inside = np.exp(logarithm - special.betaln(self.alpha, self.beta))
+        outside = (x < self.low) | (x > self.high)
+        return np.where(outside, 0.0, inside / (self.high - self.low))
+
+    def _share_below(self, x: FloatArray) -> FloatArray:
+        return np.clip((x - self.low) / (self.high - self.low), 0.0, 1.0)
+
+    def _share_above(self, x: FloatArray) -> FloatArray:
+        return np.clip((self.high - x) / (self.high - self.low), 0.0, 1.0)
+
+
+@lru_cache(maxsize=256)
+def _logit_table(alpha: float, beta: float) -> ScoreTable:
+    return build_score_table(partial(_logit_quantile, alpha, beta))
+
+
+def _logit_quantile(alpha: float, beta: float, z: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """The logit of the beta quantile at normal scores, and its derivative by the score."""
+    log_below, log_above = np.empty(z.shape), np.empty(z.shape)
+    low = z <= 0.0
+    log_below[low], log_above[low] = _log_shares(alpha, beta, z[low])
+    log_above[~low], log_below[~low] = _log_shares(beta, alpha, -z[~low])
+    log_beta = float(special.betaln(alpha, beta))
+    log_normal_density = -0.5 * z * z - 0.5 * math.log(2 * math.pi)
+    with np.errstate(over="ignore"):
+        slope = np.exp(log_normal_density + log_beta - alpha * log_below - beta * log_above)
+    return log_below - log_above, slope
+
+
+def _log_shares(alpha: float, beta: float, z: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Logarithms of a beta quantile and of 1 minus it, at normal scores of 0 or less."""
+    p = special.ndtr(z)
+    with np.errstate(divide="ignore"):
+        log_below = np.log(special.betaincinv(alpha, beta, p))
+        log_above = np.log(special.betainccinv(beta, alpha, p))
+    log_beta = float(special.betaln(alpha, beta))
+    leading = (special.log_ndtr(z) + math.log(alpha) + log_beta) / alpha
+    tiny = leading < math.log(_NEGLIGIBLE / (1.0 + beta))
+    log_below[tiny], log_above[tiny] = leading[tiny], 0.0
+    return log_below, log_above
+
+
+def _by_shapes(alpha: float, beta: float, low: float = 0.0, high: float = 1.0) -> Beta:
+    _check_bounds(low, high)
+    return Beta(alpha=alpha, beta=beta, low=low, high=high)
+
+
+def _by_moments(mean: float, sd: float, low: float = 0.0, high: float = 1.0) -> Beta:
+    _check_bounds(low, high)
+    if not low < mean < high:
+        message = f"mean must lie between {spell(low)} and {spell(high)}, read {spell(mean)}"
+        raise ParameterError("mean", message)
+    share, spread = (mean - low) / (high - low), sd / (high - low)
+    total = share * (1.0 - share) / spread**2 - 1.0
+    if total <= 0.0:
+        most = (high - low) * math.sqrt(share * (1.0 - share))
+        message = f"sd must be below {spell(most)} for this mean and these bounds, read {spell(sd)}"
+        raise ParameterError("sd", message)
+    return Beta(alpha=share * total, beta=(1.0 - share) * total, low=low, high=high)
+
+
+def _pert(low: float, mode: float, high: float, weight: float = 4.0) -> Beta:
+    """The beta distribution whose mean is `(low + weight mode + high) / (weight + 2)`."""
+    width = high - low
+    alpha = 1.0 + weight * (mode - low) / width
+    beta = 1.0 + weight * (high - mode) / width
+    return Beta(alpha=alpha, beta=beta, low=low, high=high)
+
+
+def _check_bounds(low: float, high: float) -> None:
+    if not low < high:
+        message = f"low must be below high, read {spell(low)} and {spell(high)}"
+        raise ParameterError("low", message)
+
+
+FAMILIES = (
+    Family(
+        name="beta",
+        checks={
+            "alpha": positive,
+            "beta": positive,
+            "mean": any_number,
+            "sd": positive,
+            "low": any_number,
+            "high": any_number,
+        },
+        sets=(
+            ParameterSet(("alpha", "beta"), _by_shapes, optional=("low", "high")),
+            ParameterSet(("mean", "sd"), _by_moments, optional=("low", "high")),
+        ),
+        rising=("low", "high"),
+    ),
+    Family(
+        name="pert",
+        checks={"low": any_number, "mode": any_number, "high": any_number, "weight": positive},
+        sets=(ParameterSet(("low", "mode", "high"), _pert, optional=("weight",)),),
+        rising=("low", "mode", "high"),
+    ),
+)
