@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Any
+from typing import Any, TypeAlias
 
 from cellsim.uncertainty.distributions.families import FAMILIES, parameter_faults
-from cellsim.uncertainty.distributions.family import Family, ParameterValue
+from cellsim.uncertainty.distributions.family import ParameterValue
 from cellsim.uncertainty.findings import Findings, nearest, nearest_word
 from cellsim.uncertainty.specs import Formula, InputSpec, Number, Parameter
 from cellsim.uncertainty.toml_lines import KeyPath
@@ -15,6 +15,8 @@ _TEXTS = ("cell", "label", "distribution", "note", "source", "unit")
 _BOUNDS = ("floor", "cap")
 _GENERAL = (*_TEXTS, *_BOUNDS, "replace_formula")
 _PATHS = ("cells", "path")
+Bounds: TypeAlias = tuple[Number | None, Number | None]
+"""Floor and cap."""
 
 
 def read_inputs(findings: Findings, section: Any) -> tuple[InputSpec, ...]:
@@ -49,9 +51,9 @@ def _read_input(findings: Findings, name: str, table: dict[str, Any]) -> InputSp
     for key in ("cell", "distribution"):
         if key not in table:
             findings.add(path, f"[inputs.{name}] lacks the key {key!r}")
-    floor, cap = _read_bounds(findings, path, table)
+    bounds = _read_bounds(findings, path, table)
     replace = findings.flag((*path, "replace_formula"), table.get("replace_formula", False))
-    parameters = _read_parameters(findings, path, table, texts.get("distribution"))
+    parameters = _read_parameters(findings, path, table, texts.get("distribution"), bounds)
     cell, distribution = texts.get("cell"), texts.get("distribution")
     if cell is None or distribution is None or parameters is None:
         return None
@@ -62,8 +64,8 @@ def _read_input(findings: Findings, name: str, table: dict[str, Any]) -> InputSp
         label=texts.get("label"),
         distribution=distribution,
         parameters=parameters,
-        floor=floor,
-        cap=cap,
+        floor=bounds[0],
+        cap=bounds[1],
         replace_formula=bool(replace),
         note=texts.get("note") or "",
         source=texts.get("source") or "",
@@ -80,19 +82,22 @@ def check_cell_text(findings: Findings, path: KeyPath, cell: str) -> None:
         findings.add(path, message, f'write "{cell[1:].strip()}" without "="')
 
 
-def _read_bounds(
-    findings: Findings, path: KeyPath, table: dict[str, Any]
-) -> tuple[Number | None, Number | None]:
+def _read_bounds(findings: Findings, path: KeyPath, table: dict[str, Any]) -> Bounds:
     floor, cap = (
         findings.number((*path, key), table[key]) if key in table else None for key in _BOUNDS
     )
     if isinstance(floor, float) and isinstance(cap, float) and floor >= cap:
         findings.add((*path, "floor"), f"floor must be below cap, read {floor:.12g} and {cap:.12g}")
+        return None, None
     return floor, cap
 
 
 def _read_parameters(
-    findings: Findings, path: KeyPath, table: dict[str, Any], distribution: str | None
+    findings: Findings,
+    path: KeyPath,
+    table: dict[str, Any],
+    distribution: str | None,
+    bounds: Bounds,
 ) -> dict[str, Parameter] | None:
     """The parameters by key, or None if there is no known family to read them for."""
     if distribution is None:
@@ -116,7 +121,11 @@ def _read_parameters(
         value = _read_parameter(findings, (*path, key), item)
         if value is not None:
             parameters[key] = value
-    _check_parameters(findings, path, family, parameters, [key for key in meant if key])
+    keys = [key for key in meant if key]
+    floor, cap = (bound if isinstance(bound, float) else None for bound in bounds)
+    for fault in parameter_faults(distribution, _known(parameters), keys, floor, cap):
+        place = (*path, fault.key) if fault.key else path
+        findings.add(place, f"[inputs.{path[-1]}]: {fault.message}")
     return parameters
 
 
@@ -128,14 +137,8 @@ def _read_parameter(findings: Findings, path: KeyPath, value: Any) -> Parameter 
     return tuple(complete) if len(complete) == len(items) else None
 
 
-def _check_parameters(
-    findings: Findings,
-    path: KeyPath,
-    family: Family,
-    parameters: Mapping[str, Parameter],
-    keys: list[str],
-) -> None:
-    """Notes what is wrong with the parameters as far as their values are known."""
+def _known(parameters: Mapping[str, Parameter]) -> dict[str, ParameterValue]:
+    """The parameters that hold no formula."""
     known: dict[str, ParameterValue] = {}
     for key, value in parameters.items():
         if isinstance(value, float):
@@ -144,9 +147,7 @@ def _check_parameters(
             numbers = tuple(item for item in value if not isinstance(item, Formula))
             if len(numbers) == len(value):
                 known[key] = numbers
-    for fault in parameter_faults(family.name, known, keys):
-        place = (*path, fault.key) if fault.key else path
-        findings.add(place, f"[inputs.{path[-1]}]: {fault.message}")
+    return known
 
 
 def _check_cells_differ(findings: Findings, specs: list[InputSpec]) -> None:

@@ -121,9 +121,6 @@ def _check_sections(findings: Findings, document: dict[str, Any]) -> None:
         elif name not in _SECTIONS:
             hint = nearest(name, _SECTIONS) or f"known: {', '.join(_SECTIONS)}"
             findings.add((name,), f"unknown section {name!r}", hint)
-    for name in ("inputs", "outputs"):
-        if name not in document:
-            findings.add((), f"there are no {name}: expected a section [{name}.NAME]")
 
 
 def _read_model(findings: Findings, section: Any) -> tuple[str, dt.date | None, bool]:

@@ -59,7 +59,11 @@ def build_distribution(
 
 
 def parameter_faults(
-    family: str, known: Mapping[str, ParameterValue], keys: Collection[str]
+    family: str,
+    known: Mapping[str, ParameterValue],
+    keys: Collection[str],
+    floor: float | None = None,
+    cap: float | None = None,
 ) -> list[ParameterError]:
     """What is wrong with parameters of which some values may not be known yet.
 
@@ -67,6 +71,8 @@ def parameter_faults(
         family: Name of a family, a key of `FAMILIES`.
         known: The parameters whose values are known.
         keys: All keys given.
+        floor: The floor if there is one and its value is known.
+        cap: The cap if there is one and its value is known.
 
     Returns:
         All faults found; without unknown values, an empty list means that the distribution can be
@@ -77,7 +83,7 @@ def parameter_faults(
     try:
         declared.set_for(keys)
         if not faults and len(known) == len(keys):
-            declared.build(known)
+            build_distribution(family, known, floor, cap)
     except ParameterError as fault:
         faults.append(fault)
     return faults

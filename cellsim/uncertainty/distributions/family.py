@@ -160,9 +160,10 @@ class Family:
                 found.append(_order_fault(left, right, "not be above", known))
         if not found and len(rising) > 1 and known[rising[0]] == known[rising[-1]]:
             found.append(_order_fault(rising[0], rising[-1], "be below", known))
-        by_probability = sorted(
+        quantiles = [
             (probability, key) for key in known if (probability := quantile_probability(key))
-        )
+        ]
+        by_probability = sorted(quantiles, key=lambda quantile: quantile[0])
         for (first, left), (second, right) in pairwise(by_probability):
             if first == second:
                 message = f"{left} and {right} are the same quantile"
