@@ -12,17 +12,24 @@ _Node = CellRef | RangeRef
 
 
 def affected_cells(
-    graph: Graph, inputs: Iterable[CellRef], outputs: Iterable[CellRef]
+    graph: Graph,
+    inputs: Iterable[CellRef],
+    outputs: Iterable[CellRef],
+    *,
+    count_dynamic: bool = True,
 ) -> frozenset[CellRef]:
     """The formula cells upstream of the outputs that depend on an input.
 
     A formula that reads cells which its references do not name (OFFSET, INDIRECT, a data table)
     counts as reading every formula of the workbook and as depending on every input, so the set may
-    hold some cells too many, never one too few. Input cells themselves are not in it.
+    hold some cells too many, never one too few; unless `count_dynamic` is false, and only named
+    references are followed. Input cells themselves are not in it.
     """
     wanted = frozenset(inputs)
     readers, dynamic = _readers(graph, outputs, wanted)
     affected: set[_Node] = set()
+    if not count_dynamic:
+        dynamic = []
     frontier: list[_Node] = [*wanted, *dynamic]
     affected.update(dynamic)
     while frontier:

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import datetime as dt
+import threading
 import zlib
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -12,7 +13,6 @@ import numpy as np
 import cellsim.functions.library  # noqa: F401  (fills the registry)
 from cellsim.cells import CellRef, RangeRef
 from cellsim.functions.dispatch import LARGEST_ARRAY, item_at
-from cellsim.functions.registry import find_function
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
 from cellsim.program.interpret import (
@@ -74,6 +74,7 @@ class Calculation:
         graph: The formulas.
         as_of: What NOW() returns.
         findings: What was met on the way.
+        lock: To be held by threads that share a calculation.
     """
 
     def __init__(
@@ -103,6 +104,7 @@ class Calculation:
         self._ready: set[RangeRef] = set()
         self._active: dict[CellRef, None] = {}
         self._volatile_areas = False
+        self.lock = threading.RLock()
 
     @property
     def graph(self) -> Graph:
@@ -389,8 +391,3 @@ def calculate_workbook(graph: Graph, *, as_of: dt.datetime) -> Calculation:
     for formula in graph.all_formulas():
         calculation.cell_value(*formula.cell)
     return calculation
-
-
-def volatile_functions(names: Iterable[str]) -> list[str]:
-    """Those of the named functions whose value may change by itself."""
-    return [name for name in names if (f := find_function(name)) is not None and f.volatile]

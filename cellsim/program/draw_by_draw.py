@@ -109,9 +109,10 @@ class ExpressionEvaluator:
             draws: Number of draws.
         """
         representatives, places = _distinct(columns, draws)
-        if representatives is None:
-            return [self._value(columns, draw) for draw in range(draws)]
-        values = [self._value(columns, int(draw)) for draw in representatives]
+        with self._base.lock:
+            if representatives is None:
+                return [self._value(columns, draw) for draw in range(draws)]
+            values = [self._value(columns, int(draw)) for draw in representatives]
         return [values[place] for place in places]
 
     def _value(self, columns: Sequence[npt.NDArray[np.generic] | float], draw: int) -> Scalar:

@@ -1,0 +1,1 @@
+"""Looking at a model before it is simulated."""

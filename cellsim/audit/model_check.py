@@ -1,0 +1,136 @@
+"""The model check: every formula recalculated and compared with the value that the file stores."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterable
+
+from cellsim.cells import CellRef
+from cellsim.formula.unparse import unparse
+from cellsim.functions.catalogue.unsupported import unsupported_reason
+from cellsim.functions.registry import find_function
+from cellsim.graph.build import Formula, Graph
+from cellsim.graph.slicing import affected_cells
+from cellsim.program.calculation import Calculation
+from cellsim.results import Disagreement, ModelCheck
+from cellsim.values import Scalar
+from cellsim.workbook.model import Workbook
+
+TOLERANCE = 1e-9
+"""Numbers agree within this, relative, absolute below 1."""
+
+_PLACE_DEPENDENT = frozenset({"CELL", "INFO"})
+
+
+def check_model(calculation: Calculation) -> ModelCheck:
+    """Compare a finished calculation with the stored values.
+
+    Left out are formulas that are volatile or depend on a volatile one, and those for which the file
+    stores no value.
+    """
+    graph = calculation.graph
+    volatile = volatile_cells(graph)
+    compared = agreeing = without_value = 0
+    wrong: dict[CellRef, tuple[Formula, Scalar]] = {}
+    for formula in graph.all_formulas():
+        cell = formula.cell
+        if cell in volatile:
+            continue
+        if not formula.has_stored:
+            without_value += 1
+            continue
+        compared += 1
+        found = calculation.cell_value(*cell)
+        if agrees(formula.stored, found):
+            agreeing += 1
+        else:
+            wrong[cell] = formula, found
+    return ModelCheck(
+        compared=compared,
+        agreeing=agreeing,
+        volatile=len(volatile),
+        without_value=without_value,
+        disagreements=tuple(_disagreements(graph, wrong)),
+        unsupported=_unsupported(calculation.findings.unsupported.values()),
+        notes=tuple(_notes(graph, calculation)),
+    )
+
+
+def agrees(stored: Scalar, found: Scalar) -> bool:
+    """Whether a recalculated value is the stored one: numbers within the tolerance, others equal."""
+    if isinstance(stored, float) and isinstance(found, float):
+        return abs(stored - found) <= TOLERANCE * max(1.0, abs(stored))
+    if stored in (None, "") and (found in (None, "") or (isinstance(found, float) and found == 0)):
+        return True
+    return type(stored) is type(found) and stored == found
+
+
+def volatile_cells(graph: Graph) -> frozenset[CellRef]:
+    """The formula cells that call a volatile function, and those that depend on one."""
+    sources: list[CellRef] = []
+    everything: list[CellRef] = []
+    for formula in graph.all_formulas():
+        everything.append(formula.cell)
+        for name in graph.functions_of(formula):
+            function = find_function(name)
+            if name in _PLACE_DEPENDENT or (function is not None and function.volatile):
+                if name not in {"OFFSET", "INDIRECT"}:
+                    sources.append(formula.cell)
+                break
+    if not sources:
+        return frozenset()
+    return affected_cells(graph, sources, everything, count_dynamic=False) | frozenset(sources)
+
+
+def _disagreements(
+    graph: Graph, wrong: dict[CellRef, tuple[Formula, Scalar]]
+) -> Iterable[Disagreement]:
+    """Roots first: the cells that read no other cell that disagrees."""
+    rows = []
+    for cell, (formula, found) in wrong.items():
+        reads = (
+            source
+            for area in graph.precedents(formula)
+            for source in graph.formula_cells_in(graph.resolver.clip(area))
+        )
+        root = not any(source in wrong and source != cell for source in reads)
+        text = "=" + (
+            unparse(formula.tree, cell.row, cell.column) if formula.tree is not None else formula.source.text
+        )
+        rows.append(Disagreement(str(cell), text, formula.stored, found, root))
+    return sorted(rows, key=lambda row: not row.root)
+
+
+def _unsupported(names: Iterable[str]) -> tuple[tuple[str, int, str], ...]:
+    counts = Counter(names)
+    return tuple((name, count, reason_for(name)) for name, count in counts.most_common())
+
+
+def reason_for(name: str) -> str:
+    """Why a function is not calculated, for the user."""
+    if not name:
+        return "the formula could not be read"
+    return unsupported_reason(name) or "no such function is known: a macro or an add-in may define it"
+
+
+def _notes(graph: Graph, calculation: Calculation) -> Iterable[str]:
+    workbook: Workbook = graph.workbook
+    if workbook.has_macros:
+        yield "The workbook carries macros; they are not run."
+    if workbook.external:
+        yield (
+            f"The workbook links to {len(workbook.external)} other workbook"
+            f"{'s' if len(workbook.external) > 1 else ''}; the values kept in the file are used."
+        )
+    if not workbook.full_precision:
+        yield "The workbook is set to calculate with numbers as displayed; full precision is used here."
+    for problem in graph.problems:
+        yield f"A formula could not be read, its stored value is used: {problem}"
+    for cycle in calculation.findings.cycles:
+        first = cycle.cells[0]
+        state = "settled" if cycle.settled else "had not settled"
+        allowed = "" if workbook.iteration.enabled else ", although iterative calculation is off"
+        yield (
+            f"{len(cycle.cells)} cells from {first} on depend on each other in a circle and were solved by "
+            f"iteration, which {state} after {cycle.passes} passes{allowed}."
+        )
