@@ -36,12 +36,17 @@ def moments_of(
     Args:
         inverse: The value with probability `p` below it and `q = 1 - p` above it.
     """
-    values = inverse(_P, _Q)
+    with np.errstate(over="ignore"):
+        values = inverse(_P, _Q)
+    reached = np.isfinite(values)  # a probability below the least number has its value at infinity
+    weights = _WEIGHTS[reached] / _WEIGHTS[reached].sum()
     middle = float(values[len(values) // 2])
-    from_middle = values - middle
-    shift = math.fsum(_WEIGHTS * from_middle)
-    variance = math.fsum(_WEIGHTS * (from_middle - shift) ** 2)
-    return middle + shift, math.sqrt(variance)
+    from_middle = values[reached] - middle
+    unit = float(np.abs(from_middle).max()) or 1.0
+    from_middle /= unit  # so that no square overflows
+    shift = math.fsum(weights * from_middle)
+    variance = math.fsum(weights * (from_middle - shift) ** 2)
+    return middle + unit * shift, unit * math.sqrt(variance)
 
 
 def combine_moments(pieces: Sequence[tuple[float, float, float]]) -> tuple[float, float]:

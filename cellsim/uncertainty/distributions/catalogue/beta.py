@@ -79,13 +79,11 @@ class Beta(ScoreDistribution):
 
     def cdf(self, x: FloatArray) -> FloatArray:
         """The probability of a value at or below `x`."""
-        result: FloatArray = special.betainc(self.alpha, self.beta, self._share_below(x))
-        return result
+        return _tail(self.alpha, self.beta, self._share_below(x), self._share_above(x))
 
     def survival(self, x: FloatArray) -> FloatArray:
         """The probability of a value above `x`."""
-        result: FloatArray = special.betainc(self.beta, self.alpha, self._share_above(x))
-        return result
+        return _tail(self.beta, self.alpha, self._share_above(x), self._share_below(x))
 
     def density(self, x: FloatArray) -> FloatArray:
         """The probability density at `x`."""
@@ -102,6 +100,13 @@ class Beta(ScoreDistribution):
 
     def _share_above(self, x: FloatArray) -> FloatArray:
         return np.clip((self.high - x) / (self.high - self.low), 0.0, 1.0)
+
+
+def _tail(alpha: float, beta: float, share: FloatArray, rest: FloatArray) -> FloatArray:
+    """The beta cdf at a share of the width, given `rest = 1 - share` to full precision as well."""
+    small = special.betainc(alpha, beta, share)
+    large = special.betaincc(beta, alpha, rest)
+    return np.where(share <= rest, small, large)
 
 
 @lru_cache(maxsize=256)
