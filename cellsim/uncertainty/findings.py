@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import datetime as dt
 import difflib
-import math
 import re
+import sys
 from collections.abc import Collection, Iterable, Mapping
 from decimal import Decimal
 from typing import Any
@@ -89,9 +89,9 @@ class Findings:
     def number(self, path: KeyPath, value: Any) -> Number | None:
         """The value if it is a finite number, a percentage or a formula."""
         if isinstance(value, (int, float)) and not isinstance(value, bool):
-            if math.isfinite(value):
+            if abs(value) <= sys.float_info.max:
                 return float(value)
-            self.add(path, f"{path[-1]} must be a finite number, read {value}")
+            self.add(path, f"{_value_name(path)} must be a finite number, read {spell_toml(value)}")
             return None
         if isinstance(value, str):
             return self._number_from_text(path, value)
@@ -142,9 +142,9 @@ def spell_toml(value: Any) -> str:
             return str(value).lower()
         case str():
             return f'"{value}"' if len(value) <= 60 else f'"{value[:57]}..."'
-        case int() | float():
-            return str(value)
-        case dt.date() | dt.time():
+        case int() if abs(value) >= 10**30:
+            return "a number of more than 30 digits"
+        case int() | float() | dt.date() | dt.time():
             return str(value)
         case list():
             return "an empty list" if not value else "a list"

@@ -121,7 +121,7 @@ def _read_parameters(
         value = _read_parameter(findings, (*path, key), item)
         if value is not None:
             parameters[key] = value
-    keys = [key for key in meant if key]
+    keys = list(dict.fromkeys(key for key in meant if key))
     floor, cap = (bound if isinstance(bound, float) else None for bound in bounds)
     for fault in parameter_faults(distribution, _known(parameters), keys, floor, cap):
         place = (*path, fault.key) if fault.key else path

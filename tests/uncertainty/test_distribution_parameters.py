@@ -81,6 +81,24 @@ REFUSED: dict[str, tuple[str, dict[str, ParameterValue], str, str]] = {
         "mean",
         "mean must lie between 0 and 1, read 1.5",
     ),
+    "shape out of reach": (
+        "beta",
+        {"alpha": 1e-9, "beta": 1},
+        "alpha",
+        "alpha must be a number from 0.001 to 100000000, read 1e-09",
+    ),
+    "spread out of reach": (
+        "beta",
+        {"mean": 0.5, "sd": 1e-6},
+        "sd",
+        "sd 1e-06 is too extreme for this mean and these bounds: it gives alpha 125000000000",
+    ),
+    "weight out of reach": (
+        "pert",
+        {"low": 0, "mode": 1, "high": 2, "weight": 1e9},
+        "weight",
+        "weight must be a number above 0 and below 100000000, read 1000000000",
+    ),
     "quantile below the shift": (
         "lognormal",
         {"p10": 1, "p90": 3, "shift": 2},
@@ -259,6 +277,21 @@ def test_cdf_undoes_quantile(distribution: Distribution, probabilities: list[flo
     assert np.all(np.abs(distribution.survival(x) - (1 - u)) <= 1e-9 + resolution)
     assert np.all(np.diff(x) >= 0)
     assert np.all((x >= distribution.lower) & (x <= distribution.upper))
+
+
+@pytest.mark.parametrize(
+    ("alpha", "beta"), [(0.001, 0.001), (0.001, 1e8), (1000.0, 1e8), (10.0, 1e7), (1e8, 1e8)]
+)
+def test_extreme_shapes_have_right_quantiles(alpha: float, beta: float) -> None:
+    """Where the shapes differ by many powers of ten a library's own inverse is off by half."""
+    distribution = build_distribution("beta", {"alpha": alpha, "beta": beta})
+    u = np.array([1e-4, 0.05, 0.3, 0.5, 0.9, 0.999])
+
+    x = distribution.quantile(u)
+
+    held = (x > 1e-300) & (x < 1 - 1e-16)  # else the true value has no number of its own
+    np.testing.assert_allclose(distribution.cdf(x)[held], u[held], rtol=1e-6)
+    np.testing.assert_array_equal(np.sort(x), x)
 
 
 def test_package_does_not_import_scipy_stats() -> None:

@@ -324,6 +324,11 @@ MISTAKES: dict[str, tuple[str, str, list[str]]] = {
         [f"line 13: sd must be {NUMBER}, read true"],
     ),
     "infinite number": ("sd = 0.01", "sd = inf", ["line 13: sd must be a finite number, read inf"]),
+    "number of many digits": (
+        "sd = 0.01",
+        f"sd = 1{'0' * 400}",
+        ["line 13: sd must be a finite number, read a number of more than 30 digits"],
+    ),
     "not a number": ("sd = 0.01", "sd = nan", ["line 13: sd must be a finite number, read nan"]),
     "list for a number": (
         "sd = 0.01",
@@ -618,3 +623,38 @@ def test_text_that_is_not_utf8(tmp_path: Path) -> None:
     assert str(caught.value) == (
         "study.toml, line 2: byte 0xf6 is not UTF-8 text; save the file as UTF-8"
     )
+
+
+ODD_VALUES = [
+    "[]",
+    "{}",
+    '""',
+    "true",
+    "-1",
+    "1e308",
+    "[[1]]",
+    "{ a = 1 }",
+    "2026-01-01",
+    "12:00:00",
+    "[1, '=A!B1']",
+]
+
+
+@pytest.mark.parametrize("odd", ODD_VALUES)
+def test_value_of_any_kind_anywhere_is_read_or_answered(tmp_path: Path, odd: str) -> None:
+    lines = (GOOD + THIRD).splitlines()
+    answered = []
+    for place, line in enumerate(lines):
+        key, equals, _ = line.partition(" = ")
+        if not equals:
+            continue
+        path = tmp_path / "study.toml"
+        changed = [*lines[:place], f"{key} = {odd}", *lines[place + 1 :]]
+        path.write_text("\n".join(changed), encoding="utf-8")
+        try:
+            load_sidecar(path)
+        except SidecarError as error:
+            answered.append(error.problems[0].place)
+
+    assert len(answered) > 10
+    assert all(place.startswith("study.toml, line ") for place in answered)
