@@ -26,7 +26,7 @@ _NAME_DAY = re.compile(
     r"(?P<name>[A-Za-z]{3,9})[- ](?P<day>\d{1,2})(?:st|nd|rd|th)?[, -]+(?P<year>\d{4})\Z"
 )
 _NAME_YEAR = re.compile(r"(?P<name>[A-Za-z]{3,9})[- ,]+(?P<year>\d{4}|\d{2})\Z")
-_MONTHS = (
+MONTHS = (
     "january", "february", "march", "april", "may", "june",
     "july", "august", "september", "october", "november", "december",
 )  # fmt: skip
@@ -126,7 +126,7 @@ def time_from_text(text: str) -> float | None:
 
 def _month(name: str | None) -> int | None:
     word = (name or "").lower()
-    for number, month in enumerate(_MONTHS, start=1):
+    for number, month in enumerate(MONTHS, start=1):
         if month.startswith(word) and len(word) >= 3:
             return number
     return None

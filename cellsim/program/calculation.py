@@ -254,9 +254,18 @@ class Calculation:
         except RecursionError:
             return ErrorValue.NUM
 
-    def _stand_in(self, formula: Formula, function: str) -> Scalar:
+    def _stand_in(self, formula: Formula, function: str) -> Value:
+        """The stored value of a formula that cannot be calculated, of all cells of an array."""
         self.findings.unsupported[formula.cell] = function
-        return formula.stored if formula.has_stored else ErrorValue.NAME
+        if formula.area is None:
+            return formula.stored if formula.has_stored else ErrorValue.NAME
+        area = formula.area
+        constants = self._graph.sheets[area.sheet].constants
+        items: list[Scalar] = [
+            formula.stored if cell == formula.cell else constants.get((cell.row, cell.column))
+            for cell in area.cells()
+        ]
+        return Array(area.rows, area.columns, items)
 
     def _store(self, formula: Formula, value: Value) -> None:
         cell = formula.cell

@@ -44,7 +44,7 @@ def careful_step(instruction: Instruction, buffers: Buffers, base: Calculation, 
     bound = _Bound(instruction, operands, out, poison)
     op = instruction.op
     if op is Op.CALL:
-        run = kernel_runner(instruction.detail, buffers)
+        run = kernel_runner(instruction.detail, buffers, base)
         return lambda: _call(bound, run)
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)

@@ -13,14 +13,17 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
+from cellsim.cells import CellRef
 from cellsim.functions.coercion import to_number
-from cellsim.functions.registry import Stack, find_over_draws
+from cellsim.functions.dispatch import call_function
+from cellsim.functions.registry import Stack, find_function, find_over_draws
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import compare_over_draws, settle_cancellation
 from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
 from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
-from cellsim.values import Fault, Scalar, encode_error
+from cellsim.program.interpret import Frame
+from cellsim.values import Array, Fault, Scalar, Value, decode_error, encode_error
 
 Step = Callable[[], Any]
 AnyArray = npt.NDArray[Any]
@@ -57,7 +60,7 @@ def fast_step(
     op = instruction.op
     out = buffers.array(instruction.target)
     if op is Op.CALL:
-        return _call(instruction.detail, buffers, out, go_carefully)
+        return _call(instruction.detail, buffers, base, out, go_carefully)
     operands = [buffers.operand(operand) for operand in instruction.operands]
     if op is Op.INTERPRET:
         return _interpret(instruction, operands, base, out, go_carefully)
@@ -161,8 +164,10 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
 }
 
 
-def _call(call: KernelCall, buffers: Buffers, out: AnyArray, go_carefully: type[Exception]) -> Step:
-    run = kernel_runner(call, buffers)
+def _call(
+    call: KernelCall, buffers: Buffers, base: Calculation, out: AnyArray, go_carefully: type[Exception]
+) -> Step:
+    run = kernel_runner(call, buffers, base)
 
     def step() -> None:
         result = run()
@@ -173,7 +178,7 @@ def _call(call: KernelCall, buffers: Buffers, out: AnyArray, go_carefully: type[
     return step
 
 
-def kernel_runner(call: KernelCall, buffers: Buffers) -> Callable[[], AnyArray]:
+def kernel_runner(call: KernelCall, buffers: Buffers, base: Calculation) -> Callable[[], AnyArray]:
     """A function that calls a kernel over draws on the buffers of its arguments."""
     kernel = find_over_draws(call.function)
     if kernel is None:
@@ -181,10 +186,42 @@ def kernel_runner(call: KernelCall, buffers: Buffers) -> Callable[[], AnyArray]:
     gather = [_argument(argument, buffers) for argument in call.arguments]
 
     def run() -> AnyArray:
+        arguments = [argument() for argument in gather]
         with np.errstate(all="ignore"):
-            return kernel(*[argument() for argument in gather])
+            result = kernel(*arguments)
+        return _one_by_one(call.function, arguments, buffers.block, base) if result is None else result
 
     return run
+
+
+def _one_by_one(name: str, arguments: list[Any], draws: int, base: Calculation) -> AnyArray:
+    """A function's kernel for single draws, where that over draws does not serve."""
+    function = find_function(name)
+    if function is None:
+        raise LookupError(name)
+    frame = Frame(base, CellRef(base.graph.resolver.titles()[0], 1, 1))
+    with base.lock:
+        values = [
+            call_function(function, [_of_draw(argument, draw) for argument in arguments], frame, whole_arrays=True)
+            for draw in range(draws)
+        ]
+    return as_numbers([value.items[0] if isinstance(value, Array) else value for value in values])  # type: ignore[misc]
+
+
+def _of_draw(argument: Any, draw: int) -> Value:
+    if isinstance(argument, Stack):
+        return Array(argument.rows, argument.columns, [number_of(x) for x in argument.data[:, draw]])
+    if isinstance(argument, float):
+        return number_of(argument)
+    if argument.ndim == 2:
+        return Array(len(argument), 1, [number_of(x) for x in argument[:, draw]])
+    return number_of(argument[draw])
+
+
+def number_of(number: float) -> Scalar:
+    """A number over draws in one draw: itself, or the error that it encodes."""
+    value = float(number)
+    return value if value == value else decode_error(value)
 
 
 def _argument(argument: Any, buffers: Buffers) -> Callable[[], Any]:
