@@ -15,6 +15,7 @@ from cellsim.cells import CellRef, RangeRef
 from cellsim.functions.dispatch import LARGEST_ARRAY, item_at
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
+from cellsim.program.deep_stack import run_deeply
 from cellsim.program.interpret import (
     Frame,
     UnsupportedFunctionError,
@@ -103,7 +104,8 @@ class Calculation:
         self._areas: dict[RangeRef, Array] = {}
         self._ready: set[RangeRef] = set()
         self._active: dict[CellRef, None] = {}
-        self._volatile_areas = False
+        self._moving: frozenset[CellRef] = frozenset()  # cells of the cycle being solved
+        self._moving_areas: dict[RangeRef, bool] = {}
         self.lock = threading.RLock()
 
     @property
@@ -166,20 +168,30 @@ class Calculation:
 
     def _make_ready(self, area: RangeRef) -> bool:
         """Calculate the formula cells of an area; whether some may still change (a cycle's)."""
-        if self._volatile_areas:
-            for cell in self._graph.formula_cells_in(area):
-                self.cell_value(*cell)
-            return True
-        if area not in self._ready:
-            for cell in self._graph.formula_cells_in(area):
-                self.cell_value(*cell)
-            self._ready.add(area)
+        if area in self._ready:
+            return False
+        cells = self._graph.formula_cells_in(area)
+        if self._moving:
+            pending = self._moving_areas.get(area)
+            if pending is None:
+                pending = self._moving_areas[area] = not self._moving.isdisjoint(cells)
+            if pending:
+                return True
+        for cell in cells:
+            self.cell_value(*cell)
+        self._ready.add(area)
         return False
 
     def spill_of(self, cell: CellRef) -> Value:
         """The whole array that a cell's formula gives; #REF! if it holds no array formula."""
         value = self.cell_value(*cell)
-        return self._spills.get(cell, value if isinstance(value, ErrorValue) else ErrorValue.REF)
+        spill = self._spills.get(cell)
+        if spill is not None:
+            return spill
+        formula = self._graph.formula(cell)
+        if formula is None or formula.area is None or isinstance(value, ErrorValue):
+            return value if isinstance(value, ErrorValue) else ErrorValue.REF
+        return self.area_values(formula.area)
 
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers in [0, 1) for a cell's volatile functions."""
@@ -192,14 +204,22 @@ class Calculation:
         return (cell.row, cell.column) in self._values[cell.sheet]
 
     def _ensure(self, formula: Formula) -> None:
-        """Calculate a formula cell after those that it reads, without deep recursion."""
+        """Calculate a formula cell.
+
+        Outermost, those that it reads come first, so that recursion stays shallow. A cell that turns
+        out to be read while another is calculated (a computed reference) is calculated alone: what
+        its references name but do not read must not be taken for a cycle.
+        """
+        if self._active:
+            self._calculate(formula)
+            return
         while not self._is_done(formula.cell):
-            outermost = not self._active
             try:
-                self._calculate_in_order(formula)
+                try:
+                    self._calculate_in_order(formula)
+                except RecursionError:
+                    run_deeply(lambda: self._calculate_in_order(formula))
             except _CycleFoundError as found:
-                if not outermost:
-                    raise
                 self._solve_cycle(found.cells)
 
     def _calculate_in_order(self, start: Formula) -> None:
@@ -251,12 +271,13 @@ class Calculation:
             return self._stand_in(formula, missing.name)
         except Fault as fault:
             return fault.error
-        except RecursionError:
-            return ErrorValue.NUM
 
     def _stand_in(self, formula: Formula, function: str) -> Value:
         """The stored value of a formula that cannot be calculated, of all cells of an array."""
         self.findings.unsupported[formula.cell] = function
+        return self._stored_value(formula)
+
+    def _stored_value(self, formula: Formula) -> Value:
         if formula.area is None:
             return formula.stored if formula.has_stored else ErrorValue.NAME
         area = formula.area
@@ -273,8 +294,11 @@ class Calculation:
         if formula.area is None:
             values[cell.row, cell.column] = _single(value)
             return
-        if formula.data_table is None and isinstance(value, Array):
-            self._spills[cell] = value
+        if formula.data_table is None:
+            if isinstance(value, Array):
+                self._spills[cell] = value
+            else:
+                self._spills.pop(cell, None)
         array = value if isinstance(value, Array) else Array(1, 1, [_single(value)])
         area = formula.area
         members = self._graph.members[cell.sheet]
@@ -342,8 +366,9 @@ class Calculation:
 
     def _iterate(self, formulas: list[Formula], *, from_stored: bool) -> tuple[int, bool]:
         for formula in formulas:
-            self._store(formula, formula.stored if from_stored else 0.0)
-        self._volatile_areas = True
+            self._store(formula, self._stored_value(formula) if from_stored else 0.0)
+        self._moving = frozenset(formula.cell for formula in formulas)
+        self._moving_areas = {}
         limit = self._graph.workbook.iteration.passes
         last_change = float("inf")
         passes = 0
@@ -359,7 +384,7 @@ class Calculation:
                     break
                 last_change = change
         finally:
-            self._volatile_areas = False
+            self._moving = frozenset()
         return passes, False
 
     def _pass_over(self, formula: Formula) -> float:

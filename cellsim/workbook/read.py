@@ -275,13 +275,13 @@ def _area(title: str, text: str) -> RangeRef | None:
 def _external_book(number: int, target: str, book: Element) -> ExternalWorkbook:
     holder = child(book, "sheetNames")
     titles = [attribute(e, "val") or "" for e in children(holder, "sheetName")] if holder is not None else []
-    sheets: dict[str, dict[Position, Scalar]] = {title: {} for title in titles}
+    sheets: dict[str, dict[Position, Scalar]] = {}  # sheets whose values the file does not keep are left out
     data = child(book, "sheetDataSet")
     for sheet in children(data, "sheetData") if data is not None else ():
         place = int(attribute(sheet, "sheetId") or -1)
-        if not 0 <= place < len(titles):
+        if not 0 <= place < len(titles) or is_on(attribute(sheet, "refreshError")):
             continue
-        values = sheets[titles[place]]
+        values = sheets.setdefault(titles[place], {})
         for row in children(sheet, "row"):
             for cell in children(row, "cell"):
                 position = parse_address(attribute(cell, "r") or "")

@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from cellsim.functions.coercion import numbers_in
+from cellsim.functions.coercion import first_error, numbers_in, to_number
 from cellsim.functions.dispatch import values_of
 from cellsim.functions.irr_over_draws import internal_rates
 from cellsim.functions.registry import (
@@ -104,6 +104,9 @@ def _dated(
     days = values_of(dates, context)
     if len(flows.items) != len(days.items):
         raise Fault(ErrorValue.NUM)
+    error = first_error(flows) or first_error(days)
+    if error is not None:
+        raise Fault(error)
     amounts, moments = numbers_in(flows), numbers_in(days)
     if len(amounts) != len(flows.items) or len(moments) != len(days.items):
         amounts, moments = _filled(flows, days)
@@ -116,15 +119,13 @@ def _dated(
 
 
 def _filled(flows: Array, days: Array) -> tuple[list[float], list[float]]:
-    """Pairs of which a blank flow counts as 0."""
+    """Pairs of which a blank flow counts as 0 and a date may be written as text."""
     amounts, moments = [], []
     for flow, day in zip(flows.items, days.items, strict=True):
-        if type(day) is not float and day is not None:
-            raise Fault(ErrorValue.VALUE)
         if flow is not None and type(flow) is not float:
             raise Fault(ErrorValue.VALUE)
         amounts.append(flow or 0.0)
-        moments.append(day or 0.0)
+        moments.append(to_number(day))
     return amounts, moments
 
 

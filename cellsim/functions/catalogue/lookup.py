@@ -220,18 +220,13 @@ def lookup_by_mode(
         if fault.error is ErrorValue.NA and missing is not None:
             return missing()
         return fault.error
-    down = values.columns == 1 and (values.rows > 1 or _rows(results, context) == 1)
-    return _line(results, place, context, along_rows=down or values.columns == 1, count=len(items))
-
-
-def _rows(value: Value, context: Context) -> int:
-    return value.areas[0].rows if isinstance(value, Reference) else values_of(value, context).rows
+    return _line(results, place, context, along_rows=values.columns == 1, count=len(items))
 
 
 def _line(results: Value, place: int, context: Context, *, along_rows: bool, count: int) -> Value:
     if isinstance(results, Reference):
         area = results.areas[0]
-        if (area.rows if along_rows else area.columns) != count:
+        if (area.rows if along_rows else area.columns) < count:  # whole columns are longer than their values
             return ErrorValue.VALUE
         if along_rows:
             return Reference((area._replace(first_row=area.first_row + place, last_row=area.first_row + place),))
