@@ -125,5 +125,7 @@ def _ordering(operator: str, operand: Scalar) -> Test:
     }
     accept = holds[operator]
     return lambda value: (
-        not isinstance(value, ErrorValue) and same_type(value, operand) and accept(compare(value, operand))
+        not isinstance(value, ErrorValue)
+        and same_type(value, operand)
+        and accept(compare(value, operand))
     )

@@ -122,7 +122,9 @@ def _average_year(a: Date, b: Date) -> float:
         return 366.0 if is_leap(a[0]) else 365.0
     within_a_year = b[0] == a[0] + 1 and (b[1], b[2]) <= (a[1], a[2])
     if within_a_year:
-        leap_day_passed = (is_leap(a[0]) and (a[1], a[2]) <= (2, 29)) or (is_leap(b[0]) and (b[1], b[2]) >= (2, 29))
+        leap_day_passed = (is_leap(a[0]) and (a[1], a[2]) <= (2, 29)) or (
+            is_leap(b[0]) and (b[1], b[2]) >= (2, 29)
+        )
         return 366.0 if leap_day_passed else 365.0
     years = b[0] - a[0] + 1
     leaps = sum(is_leap(year) for year in range(a[0], b[0] + 1))

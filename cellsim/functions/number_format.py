@@ -40,7 +40,11 @@ class _Section:
 
     @property
     def is_date(self) -> bool:
-        return any(token[0].lower() in "ymdhs" or token[:1] == "[" and _ELAPSED.match(token) for token in self.tokens if _is_code(token))
+        return any(
+            token[0].lower() in "ymdhs" or token[:1] == "[" and _ELAPSED.match(token)
+            for token in self.tokens
+            if _is_code(token)
+        )
 
     @property
     def is_text(self) -> bool:
@@ -142,14 +146,21 @@ _HOLDS = {
 
 def _choose(sections: tuple[_Section, ...], number: float) -> tuple[_Section | None, float]:
     """The section for a number, and the number as it is to be shown: without sign where the section says it."""
-    numeric = [section for section in sections[:3] if not (section.is_text and len(sections) > 1)] or list(sections)
+    numeric = [
+        section for section in sections[:3] if not (section.is_text and len(sections) > 1)
+    ] or list(sections)
     if any(section.condition for section in numeric):
         for section in numeric:
             if section.condition is None:
-                return section, abs(number) if len(numeric) > 1 and number < 0 and section is not numeric[0] else number
+                return section, abs(number) if len(
+                    numeric
+                ) > 1 and number < 0 and section is not numeric[0] else number
             operator, bound = section.condition
             if _HOLDS[operator](number, bound):
-                return section, abs(number) if number < 0 and operator in {"<", "<="} and bound <= 0 else number
+                return section, abs(number) if number < 0 and operator in {
+                    "<",
+                    "<=",
+                } and bound <= 0 else number
         return None, number
     if len(numeric) == 1:
         return numeric[0], number
@@ -163,7 +174,8 @@ def _choose(sections: tuple[_Section, ...], number: float) -> tuple[_Section | N
 def _format_number(number: float, tokens: tuple[str, ...]) -> str:
     if any(token.lower() == "general" for token in tokens):
         return "".join(
-            general_text(number) if token.lower() == "general" else _literal(token) for token in tokens
+            general_text(number) if token.lower() == "general" else _literal(token)
+            for token in tokens
         )
     if not any(token in {"0", "#", "?"} for token in tokens):
         sign = "-" if number < 0 and any(token == "%" for token in tokens) else ""
@@ -334,7 +346,9 @@ def _format_date(number: float, tokens: tuple[str, ...], *, date_1904: bool) -> 
     date = date_from_serial(float(day), date_1904=date_1904)
     if date is None:
         return ErrorValue.VALUE
-    clock = _Clock(seconds, day, date, any(token.upper() in {"AM/PM", "A/P"} for token in tokens), date_1904)
+    clock = _Clock(
+        seconds, day, date, any(token.upper() in {"AM/PM", "A/P"} for token in tokens), date_1904
+    )
     result: list[str] = []
     for place, token in enumerate(tokens):
         result.append(clock.show(token, tokens, place))
@@ -343,7 +357,14 @@ def _format_date(number: float, tokens: tuple[str, ...], *, date_1904: bool) -> 
 
 def _second_decimals(tokens: tuple[str, ...]) -> int:
     for place, token in enumerate(tokens):
-        if token == "." and place and (tokens[place - 1].lower().startswith("s") or tokens[place - 1].lower().startswith("[s")):
+        if (
+            token == "."
+            and place
+            and (
+                tokens[place - 1].lower().startswith("s")
+                or tokens[place - 1].lower().startswith("[s")
+            )
+        ):
             count = 0
             while place + 1 + count < len(tokens) and tokens[place + 1 + count] == "0":
                 count += 1

@@ -13,7 +13,9 @@ from cellsim.values import Array, ErrorValue, Fault, Scalar
 _LONGEST_TEXT = 32_767
 
 
-def binary(operator: str, left: Scalar | Array, right: Scalar | Array, *, date_1904: bool = False) -> Scalar | Array:
+def binary(
+    operator: str, left: Scalar | Array, right: Scalar | Array, *, date_1904: bool = False
+) -> Scalar | Array:
     """The result of an infix operator other than the reference operators.
 
     Arrays are combined item by item; the error of the left operand wins over that of the right.
@@ -128,7 +130,10 @@ def _by_item(operator: str, left: Array, right: Array, *, date_1904: bool) -> Ar
         columns,
         [
             binary_scalar(
-                operator, item_at(left, row, column), item_at(right, row, column), date_1904=date_1904
+                operator,
+                item_at(left, row, column),
+                item_at(right, row, column),
+                date_1904=date_1904,
             )
             for row in range(rows)
             for column in range(columns)
@@ -136,7 +141,9 @@ def _by_item(operator: str, left: Array, right: Array, *, date_1904: bool) -> Ar
     )
 
 
-def _each(value: Scalar | Array, apply: Callable[[float], float], *, date_1904: bool) -> Scalar | Array:
+def _each(
+    value: Scalar | Array, apply: Callable[[float], float], *, date_1904: bool
+) -> Scalar | Array:
     if isinstance(value, Array):
         items = [_each_scalar(item, apply, date_1904=date_1904) for item in value.items]
         return Array(value.rows, value.columns, items)

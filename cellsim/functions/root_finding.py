@@ -55,9 +55,7 @@ def _differ(a: float, b: float) -> bool:
     return (a <= 0 < b) or (b <= 0 < a) or (a < 0 <= b) or (b < 0 <= a)
 
 
-def polish(
-    evaluate: Callable[[float], Evaluation], low: float, high: float
-) -> float:
+def polish(evaluate: Callable[[float], Evaluation], low: float, high: float) -> float:
     """The root inside an interval, by Newton's method kept inside by bisection, to full precision."""
     if low == high:
         return low

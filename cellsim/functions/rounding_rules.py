@@ -63,7 +63,9 @@ def round_half_away_over_draws(number: FloatArray, digits: FloatArray | float) -
     whole = whole + ((fraction >= 0.5) | (0.5 - fraction <= shifted * _NEARLY))
     back = np.where(places >= 0, whole / up, whole * down)
     result = np.where(shifted < 2.0**52, np.copysign(back, numbers), numbers)
-    return np.where((numbers == 0) | np.isnan(numbers) | np.isnan(places), numbers + places * 0, result)
+    return np.where(
+        (numbers == 0) | np.isnan(numbers) | np.isnan(places), numbers + places * 0, result
+    )
 
 
 def _power_array(places: FloatArray) -> FloatArray:

@@ -12,7 +12,9 @@ from cellsim.functions.wildcards import has_wildcards, wildcard_regex
 from cellsim.values import Array, ErrorValue, Scalar
 
 
-def find_equal(key: Scalar, items: list[Scalar], *, wildcards: bool = True, last: bool = False) -> int | None:
+def find_equal(
+    key: Scalar, items: list[Scalar], *, wildcards: bool = True, last: bool = False
+) -> int | None:
     """The place, from 0, of the first (or last) item equal to a key; None if there is none."""
     places = range(len(items) - 1, -1, -1) if last else range(len(items))
     if isinstance(key, str) and wildcards and has_wildcards(key):
@@ -70,7 +72,9 @@ def find_at_least_descending(key: Scalar, items: list[Scalar]) -> int | None:
     return found
 
 
-def find_nearest(key: Scalar, items: list[Scalar], *, larger: bool, last: bool = False) -> int | None:
+def find_nearest(
+    key: Scalar, items: list[Scalar], *, larger: bool, last: bool = False
+) -> int | None:
     """The place of an equal item, else of the next larger or smaller one, on unsorted items."""
     equal = find_equal(key, items, wildcards=False, last=last)
     if equal is not None:
@@ -84,7 +88,11 @@ def find_nearest(key: Scalar, items: list[Scalar], *, larger: bool, last: bool =
         order = compare(item, key)
         if (order > 0) != larger or order == 0:
             continue
-        if best is None or (compare(item, items[best]) < 0) == larger and compare(item, items[best]) != 0:
+        if (
+            best is None
+            or (compare(item, items[best]) < 0) == larger
+            and compare(item, items[best]) != 0
+        ):
             best = place
     return best
 

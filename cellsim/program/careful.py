@@ -89,7 +89,7 @@ def _put_errors(out: AnyArray, operands: Sequence[AnyArray]) -> None:
 
 def _arithmetic(bound: _Bound) -> None:
     out, operands = bound.out, bound.operands
-    UFUNCS[bound.instruction.op](*operands, out)
+    UFUNCS[bound.instruction.op](*operands, out=out)
     out[~np.isfinite(out)] = _NUM
     if bound.instruction.op is Op.DIVIDE:
         np.copyto(out, _DIV0, where=operands[1] == 0)
@@ -134,7 +134,7 @@ def _is_true(bound: _Bound) -> None:
 
 
 def _connect(bound: _Bound) -> None:
-    UFUNCS[bound.instruction.op](*bound.operands, bound.out)
+    UFUNCS[bound.instruction.op](*bound.operands, out=bound.out)
     errors = [bound.errors_of_flag(place) for place in range(len(bound.operands))]
     bound.set_errors(_first_errors([e for e in errors if e is not None], len(bound.out)))
 

@@ -35,7 +35,7 @@ def compare_over_draws(op: Op, left: AnyArray, right: AnyArray, out: AnyArray) -
         right: Numbers, likewise.
         out: Where the flags go, shape (draws,).
     """
-    COMPARISONS[op](left, right, out)
+    COMPARISONS[op](left, right, out=out)
     if left is right or _is_zero(left) or _is_zero(right):
         return  # nothing but zero is equal to zero
     apart = np.subtract(left, right)

@@ -66,7 +66,7 @@ def fast_step(
         return _interpret(instruction, operands, base, out, go_carefully)
     ufunc = UFUNCS.get(op)
     if ufunc is not None:
-        return partial(ufunc, *operands, out)
+        return partial(ufunc, *operands, out=out)
     constant_error = any(
         isinstance(operand, Constant) and operand.value != operand.value for operand in instruction.operands
     )
@@ -127,7 +127,7 @@ def _none_fails(_operands: list[AnyArray], out: AnyArray) -> Step:
 
 
 def _is_true(operands: list[AnyArray], out: AnyArray) -> Step:
-    return partial(np.not_equal, operands[0], 0.0, out)
+    return partial(np.not_equal, operands[0], 0.0, out=out)
 
 
 def _compare(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:

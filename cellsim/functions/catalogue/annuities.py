@@ -33,7 +33,9 @@ def _due(kind: float) -> float:
 
 
 @spreadsheet_function("PMT")
-def payment(rate: Number, periods: Number, present: Number, future: Number = 0.0, kind: Number = 0.0) -> float | ErrorValue:
+def payment(
+    rate: Number, periods: Number, present: Number, future: Number = 0.0, kind: Number = 0.0
+) -> float | ErrorValue:
     """The level payment of a loan or annuity; kind 1 pays at the beginning of each period."""
     if periods == 0:
         return ErrorValue.NUM
@@ -46,7 +48,9 @@ def payment(rate: Number, periods: Number, present: Number, future: Number = 0.0
 
 
 @spreadsheet_function("PV")
-def present_value(rate: Number, periods: Number, paid: Number = 0.0, future: Number = 0.0, kind: Number = 0.0) -> float:
+def present_value(
+    rate: Number, periods: Number, paid: Number = 0.0, future: Number = 0.0, kind: Number = 0.0
+) -> float:
     """The value today of level payments and a final amount."""
     if rate == 0:
         return -(future + paid * periods)
@@ -57,7 +61,9 @@ def present_value(rate: Number, periods: Number, paid: Number = 0.0, future: Num
 
 
 @spreadsheet_function("FV")
-def future_value(rate: Number, periods: Number, paid: Number = 0.0, present: Number = 0.0, kind: Number = 0.0) -> float:
+def future_value(
+    rate: Number, periods: Number, paid: Number = 0.0, present: Number = 0.0, kind: Number = 0.0
+) -> float:
     """The value at the end of level payments and a first amount."""
     if rate == 0:
         return -(present + paid * periods)
@@ -66,7 +72,9 @@ def future_value(rate: Number, periods: Number, paid: Number = 0.0, present: Num
 
 
 @spreadsheet_function("NPER")
-def number_of_periods(rate: Number, paid: Number, present: Number, future: Number = 0.0, kind: Number = 0.0) -> float | ErrorValue:
+def number_of_periods(
+    rate: Number, paid: Number, present: Number, future: Number = 0.0, kind: Number = 0.0
+) -> float | ErrorValue:
     """The number of periods of a loan or annuity."""
     if rate == 0:
         return -(present + future) / paid if paid else ErrorValue.NUM
@@ -81,7 +89,12 @@ def number_of_periods(rate: Number, paid: Number, present: Number, future: Numbe
 
 @spreadsheet_function("RATE")
 def periodic_rate(
-    periods: Number, paid: Number, present: Number, future: Number = 0.0, kind: Number = 0.0, guess: Number = 0.1
+    periods: Number,
+    paid: Number,
+    present: Number,
+    future: Number = 0.0,
+    kind: Number = 0.0,
+    guess: Number = 0.1,
 ) -> float | ErrorValue:
     """The rate per period of a loan or annuity."""
     if periods <= 0 or guess <= -1:
@@ -119,7 +132,9 @@ def _quiet(function: Any, rate: float) -> float:
         return math.nan
 
 
-def _interest(rate: float, period: float, periods: float, present: float, future: float, kind: float) -> float:
+def _interest(
+    rate: float, period: float, periods: float, present: float, future: float, kind: float
+) -> float:
     paid = payment(rate, periods, present, future, kind)
     if isinstance(paid, ErrorValue):
         raise Fault(paid)
@@ -131,7 +146,12 @@ def _interest(rate: float, period: float, periods: float, present: float, future
 
 @spreadsheet_function("IPMT")
 def interest_paid(
-    rate: Number, period: Number, periods: Number, present: Number, future: Number = 0.0, kind: Number = 0.0
+    rate: Number,
+    period: Number,
+    periods: Number,
+    present: Number,
+    future: Number = 0.0,
+    kind: Number = 0.0,
 ) -> float | ErrorValue:
     """The interest part of a payment."""
     if period < 1 or period >= periods + 1:
@@ -141,7 +161,12 @@ def interest_paid(
 
 @spreadsheet_function("PPMT")
 def principal_paid(
-    rate: Number, period: Number, periods: Number, present: Number, future: Number = 0.0, kind: Number = 0.0
+    rate: Number,
+    period: Number,
+    periods: Number,
+    present: Number,
+    future: Number = 0.0,
+    kind: Number = 0.0,
 ) -> float | ErrorValue:
     """The principal part of a payment."""
     if period < 1 or period >= periods + 1:
@@ -153,13 +178,25 @@ def principal_paid(
 
 
 @spreadsheet_function("ISPMT")
-def interest_with_level_principal(rate: Number, period: Number, periods: Number, present: Number) -> float | ErrorValue:
+def interest_with_level_principal(
+    rate: Number, period: Number, periods: Number, present: Number
+) -> float | ErrorValue:
     """The interest of a loan whose principal is paid back evenly."""
     return -present * rate * (1 - period / periods) if periods else ErrorValue.DIV0
 
 
-def _cumulated(rate: float, periods: int, present: float, first: int, last: int, kind: float, *, interest: bool) -> float:
-    if rate <= 0 or periods <= 0 or present <= 0 or first < 1 or last < first or last > periods or kind not in (0, 1):
+def _cumulated(
+    rate: float, periods: int, present: float, first: int, last: int, kind: float, *, interest: bool
+) -> float:
+    if (
+        rate <= 0
+        or periods <= 0
+        or present <= 0
+        or first < 1
+        or last < first
+        or last > periods
+        or kind not in (0, 1)
+    ):
         raise Fault(ErrorValue.NUM)
     total = 0.0
     for period in range(first, last + 1):
@@ -172,13 +209,17 @@ def _cumulated(rate: float, periods: int, present: float, first: int, last: int,
 
 
 @spreadsheet_function("CUMIPMT")
-def cumulated_interest(rate: Number, periods: Whole, present: Number, first: Whole, last: Whole, kind: Number) -> float:
+def cumulated_interest(
+    rate: Number, periods: Whole, present: Number, first: Whole, last: Whole, kind: Number
+) -> float:
     """The interest paid from one period to another."""
     return _cumulated(rate, periods, present, first, last, kind, interest=True)
 
 
 @spreadsheet_function("CUMPRINC")
-def cumulated_principal(rate: Number, periods: Whole, present: Number, first: Whole, last: Whole, kind: Number) -> float:
+def cumulated_principal(
+    rate: Number, periods: Whole, present: Number, first: Whole, last: Whole, kind: Number
+) -> float:
     """The principal paid from one period to another."""
     return _cumulated(rate, periods, present, first, last, kind, interest=False)
 
@@ -186,13 +227,19 @@ def cumulated_principal(rate: Number, periods: Whole, present: Number, first: Wh
 @spreadsheet_function("EFFECT")
 def effective_rate(nominal: Number, periods: Whole) -> float | ErrorValue:
     """The yearly rate with compounding of a nominal one."""
-    return (1 + nominal / periods) ** periods - 1 if nominal > 0 and periods >= 1 else ErrorValue.NUM
+    return (
+        (1 + nominal / periods) ** periods - 1 if nominal > 0 and periods >= 1 else ErrorValue.NUM
+    )
 
 
 @spreadsheet_function("NOMINAL")
 def nominal_rate(effective: Number, periods: Whole) -> float | ErrorValue:
     """The nominal rate of a yearly one with compounding."""
-    return ((1 + effective) ** (1 / periods) - 1) * periods if effective > 0 and periods >= 1 else ErrorValue.NUM
+    return (
+        ((1 + effective) ** (1 / periods) - 1) * periods
+        if effective > 0 and periods >= 1
+        else ErrorValue.NUM
+    )
 
 
 @spreadsheet_function("PDURATION")
@@ -219,7 +266,10 @@ def decimal_price(price: Number, fraction: Whole) -> float | ErrorValue:
     if fraction == 0:
         return ErrorValue.DIV0
     whole = math.trunc(price)
-    return whole + (price - whole) * 10 ** math.ceil(math.log10(fraction) if fraction > 1 else 0) / fraction
+    return (
+        whole
+        + (price - whole) * 10 ** math.ceil(math.log10(fraction) if fraction > 1 else 0) / fraction
+    )
 
 
 @spreadsheet_function("DOLLARFR")
@@ -230,7 +280,9 @@ def fractional_price(price: Number, fraction: Whole) -> float | ErrorValue:
     if fraction == 0:
         return ErrorValue.DIV0
     whole = math.trunc(price)
-    return whole + (price - whole) * fraction / 10 ** math.ceil(math.log10(fraction) if fraction > 1 else 0)
+    return whole + (price - whole) * fraction / 10 ** math.ceil(
+        math.log10(fraction) if fraction > 1 else 0
+    )
 
 
 # Over draws.
@@ -238,7 +290,9 @@ def fractional_price(price: Number, fraction: Whole) -> float | ErrorValue:
 
 def _growth_over_draws(rate: FloatArray, periods: FloatArray) -> FloatArray:
     growth = np.power(1 + rate, periods)
-    growth = np.where((rate <= -1) & (periods != np.trunc(periods)), encode_error(ErrorValue.NUM), growth)
+    growth = np.where(
+        (rate <= -1) & (periods != np.trunc(periods)), encode_error(ErrorValue.NUM), growth
+    )
     growth = np.where((rate == -1) & (periods < 0), encode_error(ErrorValue.DIV0), growth)
     return np.where(np.isinf(growth), encode_error(ErrorValue.NUM), growth)
 
@@ -249,7 +303,11 @@ def _arrays(*values: FloatArray | float) -> list[FloatArray]:
 
 @over_draws("PMT")
 def payment_over_draws(
-    rate: FloatArray, periods: FloatArray, present: FloatArray, future: FloatArray | float = 0.0, kind: FloatArray | float = 0.0
+    rate: FloatArray,
+    periods: FloatArray,
+    present: FloatArray,
+    future: FloatArray | float = 0.0,
+    kind: FloatArray | float = 0.0,
 ) -> FloatArray:
     """PMT over draws."""
     r, n, p, f, k = _arrays(rate, periods, present, future, kind)
@@ -262,7 +320,11 @@ def payment_over_draws(
 
 @over_draws("PV")
 def present_value_over_draws(
-    rate: FloatArray, periods: FloatArray, paid: FloatArray | float = 0.0, future: FloatArray | float = 0.0, kind: FloatArray | float = 0.0
+    rate: FloatArray,
+    periods: FloatArray,
+    paid: FloatArray | float = 0.0,
+    future: FloatArray | float = 0.0,
+    kind: FloatArray | float = 0.0,
 ) -> FloatArray:
     """PV over draws."""
     r, n, p, f, k = _arrays(rate, periods, paid, future, kind)
@@ -274,7 +336,11 @@ def present_value_over_draws(
 
 @over_draws("FV")
 def future_value_over_draws(
-    rate: FloatArray, periods: FloatArray, paid: FloatArray | float = 0.0, present: FloatArray | float = 0.0, kind: FloatArray | float = 0.0
+    rate: FloatArray,
+    periods: FloatArray,
+    paid: FloatArray | float = 0.0,
+    present: FloatArray | float = 0.0,
+    kind: FloatArray | float = 0.0,
 ) -> FloatArray:
     """FV over draws."""
     r, n, p, v, k = _arrays(rate, periods, paid, present, kind)

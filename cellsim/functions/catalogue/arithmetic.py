@@ -169,7 +169,9 @@ def logarithm_over_draws(number: FloatArray, base: FloatArray | float = 10.0) ->
     """LOG over draws."""
     numbers, bases = np.asarray(number, dtype=np.float64), np.asarray(base, dtype=np.float64)
     result = np.where(
-        bases == 10, np.log10(numbers), np.where(bases == 2, np.log2(numbers), np.log(numbers) / np.log(bases))
+        bases == 10,
+        np.log10(numbers),
+        np.where(bases == 2, np.log2(numbers), np.log(numbers) / np.log(bases)),
     )
     result = np.where(bases == 1, encode_error(ErrorValue.DIV0), result)
     return np.where((numbers <= 0) | (bases <= 0), encode_error(ErrorValue.NUM), result)
@@ -266,7 +268,9 @@ def multinomial(*numbers: NumberItems) -> float:
 
 
 @spreadsheet_function("SERIESSUM")
-def power_series(context: Context, x: Number, first: Number, step: Number, coefficients: Operand) -> float:
+def power_series(
+    context: Context, x: Number, first: Number, step: Number, coefficients: Operand
+) -> float:
     """The sum of coefficients times rising powers of x."""
     total = 0.0
     for place, item in enumerate(values_of(coefficients, context).items):

@@ -8,22 +8,19 @@ import numpy as np
 
 from cellsim.functions.coercion import first_error, numbers_in, to_number
 from cellsim.functions.dispatch import values_of
-from cellsim.functions.irr_over_draws import internal_rates
+from cellsim.functions.rates_of_return import internal_rate_of, internal_rates
 from cellsim.functions.registry import (
     Context,
     FloatArray,
     Number,
     NumberItems,
     Operand,
+    Stack,
     Values,
     over_draws,
     spreadsheet_function,
 )
-from cellsim.functions.root_finding import bracket_outward, polish
 from cellsim.values import Array, ErrorValue, Fault, Reference, encode_error
-
-_LARGEST_RATE = 1e9
-_SMALLEST_RATE = -1 + 1e-12
 
 
 @spreadsheet_function("NPV", least=2)
@@ -48,41 +45,7 @@ def _signs_differ(flows: list[float]) -> bool:
 @spreadsheet_function("IRR")
 def internal_rate(flows: NumberItems, guess: Number = 0.1) -> float | ErrorValue:
     """The rate at which flows are worth nothing today; of several, the one nearest the guess."""
-    if not _signs_differ(flows):
-        return ErrorValue.NUM
-    if guess <= -1:
-        return ErrorValue.VALUE
-
-    def present(rate: float) -> float:
-        factor = 1 / (1 + rate)
-        total = 0.0
-        for flow in reversed(flows):
-            total = total * factor + flow
-        return total
-
-    def with_slope(rate: float) -> tuple[float, float]:
-        factor = 1 / (1 + rate)
-        total = slope = 0.0
-        for flow in reversed(flows):
-            slope = slope * factor + total
-            total = total * factor + flow
-        return total, -slope * factor * factor
-
-    return _root(present, with_slope, guess)
-
-
-def _root(present, with_slope, guess: float) -> float | ErrorValue:  # type: ignore[no-untyped-def]
-    def safe(rate: float) -> float:
-        try:
-            value = present(rate)
-        except (OverflowError, ZeroDivisionError):
-            return math.nan
-        return float(value)
-
-    found = bracket_outward(safe, guess, _SMALLEST_RATE, _LARGEST_RATE)
-    if found is None:
-        return ErrorValue.NUM
-    return polish(with_slope, *found)
+    return ErrorValue.VALUE if guess <= -1 else internal_rate_of(flows, guess)
 
 
 @over_draws("IRR")
@@ -91,9 +54,7 @@ def internal_rate_over_draws(flows: FloatArray, guess: FloatArray | float = 0.1)
     return internal_rates(flows, guess)
 
 
-def _dated(
-    context: Context, flows: Array, dates: Operand
-) -> tuple[list[float], list[float]]:
+def _dated(context: Context, flows: Array, dates: Operand) -> tuple[list[float], list[float]]:
     """Flows and the years from the first date to each of theirs.
 
     Raises:
@@ -130,7 +91,9 @@ def _filled(flows: Array, days: Array) -> tuple[list[float], list[float]]:
 
 
 @spreadsheet_function("XNPV")
-def dated_present_value(context: Context, rate: Number, flows: Values, dates: Operand) -> float | ErrorValue:
+def dated_present_value(
+    context: Context, rate: Number, flows: Values, dates: Operand
+) -> float | ErrorValue:
     """The value at the first date of flows at given dates."""
     if rate <= -1:
         return ErrorValue.NUM
@@ -147,25 +110,13 @@ def dated_internal_rate(
 ) -> float | ErrorValue:
     """The rate at which flows at given dates are worth nothing at the first."""
     amounts, years = _dated(context, flows, dates)
-    if not _signs_differ(amounts) or guess <= -1:
-        return ErrorValue.NUM
-
-    def present(rate: float) -> float:
-        return sum(a * math.pow(1 + rate, -y) for a, y in zip(amounts, years, strict=True))
-
-    def with_slope(rate: float) -> tuple[float, float]:
-        value = slope = 0.0
-        for amount, year in zip(amounts, years, strict=True):
-            part = amount * math.pow(1 + rate, -year)
-            value += part
-            slope -= year * part / (1 + rate)
-        return value, slope
-
-    return _root(present, with_slope, guess)
+    return internal_rate_of(amounts, guess, years)
 
 
 @over_draws("XNPV")
-def dated_present_value_over_draws(rate, flows, dates):  # type: ignore[no-untyped-def]
+def dated_present_value_over_draws(
+    rate: FloatArray | float, flows: Stack, dates: Stack
+) -> FloatArray:
     """XNPV over draws."""
     days = np.floor(dates.data)
     years = (days - days[0]) / 365
@@ -177,14 +128,22 @@ def dated_present_value_over_draws(rate, flows, dates):  # type: ignore[no-untyp
 
 
 @over_draws("XIRR")
-def dated_internal_rate_over_draws(flows, dates, guess=0.1):  # type: ignore[no-untyped-def]
+def dated_internal_rate_over_draws(
+    flows: Stack, dates: Stack, guess: FloatArray | float = 0.1
+) -> FloatArray:
     """XIRR over draws."""
     days = np.floor(dates.data)
-    return internal_rates(flows.data, guess, years=(days - days[0]) / 365)
+    years = (days - days[0]) / 365
+    if (years == years[:, :1]).all():
+        years = years[:, :1]
+    rates = internal_rates(flows.data, guess, years)
+    return np.where((years < 0).any(axis=0), encode_error(ErrorValue.NUM), rates)
 
 
 @spreadsheet_function("MIRR")
-def modified_internal_rate(flows: NumberItems, finance_rate: Number, reinvestment_rate: Number) -> float | ErrorValue:
+def modified_internal_rate(
+    flows: NumberItems, finance_rate: Number, reinvestment_rate: Number
+) -> float | ErrorValue:
     """The rate of return with one rate for outlays and one for what is reinvested."""
     if not _signs_differ(flows) or finance_rate == -1 or reinvestment_rate == -1:
         return ErrorValue.DIV0
@@ -198,7 +157,9 @@ def modified_internal_rate(flows: NumberItems, finance_rate: Number, reinvestmen
 
 
 @spreadsheet_function("FVSCHEDULE")
-def future_value_of_schedule(context: Context, principal: Number, rates: Operand) -> float | ErrorValue:
+def future_value_of_schedule(
+    context: Context, principal: Number, rates: Operand
+) -> float | ErrorValue:
     """A principal after a series of rates."""
     if isinstance(rates, ErrorValue):
         return rates

@@ -197,7 +197,9 @@ def _reads_as_number(text: str) -> bool:
 @spreadsheet_function("COUNTA", least=1)
 def count_values(context: Context, *values: Operand) -> float:
     """How many values of any kind there are, errors and empty texts included."""
-    return float(sum(not in_range or item is not None for item, in_range in _items(context, values)))
+    return float(
+        sum(not in_range or item is not None for item, in_range in _items(context, values))
+    )
 
 
 @spreadsheet_function("COUNTBLANK")
@@ -208,4 +210,3 @@ def count_blanks(context: Context, where: CellArea) -> float:
         items = context.area_values(area).items
         blank += area.size - len(items) + sum(item is None or item == "" for item in items)
     return float(blank)
-

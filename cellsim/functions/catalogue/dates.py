@@ -100,7 +100,9 @@ def days_between(end: Number, start: Number) -> float:
 
 
 @spreadsheet_function("DAYS360")
-def days_between_360(context: Context, start: Number, end: Number, european: Logical = False) -> float:
+def days_between_360(
+    context: Context, start: Number, end: Number, european: Logical = False
+) -> float:
     """The days between two dates in a year of 360."""
     a, b = _date(context, start), _date(context, end)
     if european:
@@ -195,14 +197,22 @@ def _weekend(context: Context, value: Operand | None) -> Weekend:
 
 
 @spreadsheet_function("NETWORKDAYS")
-def workdays_between(context: Context, start: Number, end: Number, holidays: Operand | None = None) -> float:
+def workdays_between(
+    context: Context, start: Number, end: Number, holidays: Operand | None = None
+) -> float:
     """The workdays from one date to another, both included."""
-    return float(count_workdays(int(start), int(end), weekend_of(1.0), _holidays(context, holidays)))
+    return float(
+        count_workdays(int(start), int(end), weekend_of(1.0), _holidays(context, holidays))
+    )
 
 
 @spreadsheet_function("NETWORKDAYS.INTL")
 def workdays_between_by_weekend(
-    context: Context, start: Number, end: Number, weekend: Operand | None = None, holidays: Operand | None = None
+    context: Context,
+    start: Number,
+    end: Number,
+    weekend: Operand | None = None,
+    holidays: Operand | None = None,
 ) -> float:
     """The workdays between two dates with a weekend of one's own."""
     chosen = _weekend(context, weekend)
@@ -210,14 +220,20 @@ def workdays_between_by_weekend(
 
 
 @spreadsheet_function("WORKDAY")
-def workdays_later(context: Context, start: Number, days: Whole, holidays: Operand | None = None) -> float:
+def workdays_later(
+    context: Context, start: Number, days: Whole, holidays: Operand | None = None
+) -> float:
     """The date some workdays later."""
     return float(move_workdays(int(start), days, weekend_of(1.0), _holidays(context, holidays)))
 
 
 @spreadsheet_function("WORKDAY.INTL")
 def workdays_later_by_weekend(
-    context: Context, start: Number, days: Whole, weekend: Operand | None = None, holidays: Operand | None = None
+    context: Context,
+    start: Number,
+    days: Whole,
+    weekend: Operand | None = None,
+    holidays: Operand | None = None,
 ) -> float:
     """The date some workdays later with a weekend of one's own."""
     chosen = _weekend(context, weekend)

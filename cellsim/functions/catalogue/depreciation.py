@@ -17,7 +17,9 @@ def straight_line(cost: Number, salvage: Number, life: Number) -> float | ErrorV
 
 
 @spreadsheet_function("SYD")
-def sum_of_years_digits(cost: Number, salvage: Number, life: Number, period: Number) -> float | ErrorValue:
+def sum_of_years_digits(
+    cost: Number, salvage: Number, life: Number, period: Number
+) -> float | ErrorValue:
     """Depreciation of a period by the sum of the years' digits."""
     if life <= 0 or salvage < 0 or not 1 <= period <= life:
         return ErrorValue.NUM
@@ -25,9 +27,18 @@ def sum_of_years_digits(cost: Number, salvage: Number, life: Number, period: Num
 
 
 @spreadsheet_function("DB")
-def fixed_declining(cost: Number, salvage: Number, life: Number, period: Whole, months: Number = 12.0) -> float | ErrorValue:
+def fixed_declining(
+    cost: Number, salvage: Number, life: Number, period: Whole, months: Number = 12.0
+) -> float | ErrorValue:
     """Fixed-declining depreciation, the rate rounded to three decimals."""
-    if cost < 0 or salvage < 0 or life <= 0 or period < 1 or not 1 <= months <= 12 or period > life + 1:
+    if (
+        cost < 0
+        or salvage < 0
+        or life <= 0
+        or period < 1
+        or not 1 <= months <= 12
+        or period > life + 1
+    ):
         return ErrorValue.NUM
     if cost == 0:
         return 0.0
@@ -61,7 +72,9 @@ def _declining(cost: float, salvage: float, life: float, period: float, factor: 
 
 
 @spreadsheet_function("DDB")
-def double_declining(cost: Number, salvage: Number, life: Number, period: Number, factor: Number = 2.0) -> float | ErrorValue:
+def double_declining(
+    cost: Number, salvage: Number, life: Number, period: Number, factor: Number = 2.0
+) -> float | ErrorValue:
     """Declining-balance depreciation of a period, twice the straight line by default."""
     if cost < 0 or salvage < 0 or life <= 0 or period <= 0 or period > life or factor <= 0:
         return ErrorValue.NUM
@@ -89,7 +102,9 @@ def variable_declining(
         left = life - (period - 1)
         if not no_switch and left > 0:
             straight = (book - salvage) / left
-            part = max(declining, min(straight, book - salvage)) if straight > declining else declining
+            part = (
+                max(declining, min(straight, book - salvage)) if straight > declining else declining
+            )
         share = max(0.0, min(end, period) - max(start, period - 1))
         total += part * share
         book -= part
@@ -98,7 +113,14 @@ def variable_declining(
 
 @spreadsheet_function("AMORLINC")
 def linear_by_days(
-    context: Context, cost: Number, bought: Number, first_end: Number, salvage: Number, period: Whole, rate: Number, basis: Whole = 0
+    context: Context,
+    cost: Number,
+    bought: Number,
+    first_end: Number,
+    salvage: Number,
+    period: Whole,
+    rate: Number,
+    basis: Whole = 0,
 ) -> float | ErrorValue:
     """Linear depreciation of a period with a first period counted in days."""
     if rate <= 0 or cost < salvage or period < 0:
@@ -113,7 +135,14 @@ def linear_by_days(
 
 @spreadsheet_function("AMORDEGRC")
 def degressive_by_days(
-    context: Context, cost: Number, bought: Number, first_end: Number, salvage: Number, period: Whole, rate: Number, basis: Whole = 0
+    context: Context,
+    cost: Number,
+    bought: Number,
+    first_end: Number,
+    salvage: Number,
+    period: Whole,
+    rate: Number,
+    basis: Whole = 0,
 ) -> float | ErrorValue:
     """Degressive depreciation of a period, each rounded to whole units."""
     if rate <= 0 or cost < salvage or period < 0:
@@ -123,7 +152,9 @@ def degressive_by_days(
         raise Fault(ErrorValue.NUM)
     coefficient = 1.5 if life <= 4 else 2.0 if life <= 6 else 2.5
     raised = rate * coefficient
-    part = round_half_away(year_fraction(bought, first_end, basis, date_1904=context.date_1904) * raised * cost, 0)
+    part = round_half_away(
+        year_fraction(bought, first_end, basis, date_1904=context.date_1904) * raised * cost, 0
+    )
     left = cost - part
     rest = left - salvage
     for place in range(period):

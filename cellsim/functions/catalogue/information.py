@@ -197,8 +197,22 @@ def _format_code(number_format: str) -> str:
     code = number_format.split(";")[0]
     if code == "General":
         return "G"
-    decimals = len(code.partition(".")[2].rstrip("%E+ )_").replace("#", "0").split("0")) - 1 if "." in code else 0
-    letter = "P" if "%" in code else "S" if "E" in code else "C" if "$" in code else "," if "," in code else "F"
+    decimals = (
+        len(code.partition(".")[2].rstrip("%E+ )_").replace("#", "0").split("0")) - 1
+        if "." in code
+        else 0
+    )
+    letter = (
+        "P"
+        if "%" in code
+        else "S"
+        if "E" in code
+        else "C"
+        if "$" in code
+        else ","
+        if "," in code
+        else "F"
+    )
     return f"{letter}{decimals}"
 
 

@@ -144,4 +144,3 @@ def true_value() -> bool:
 def false_value() -> bool:
     """FALSE."""
     return False
-

@@ -27,7 +27,16 @@ from cellsim.functions.searching import (
     find_nearest,
     line_of,
 )
-from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value, encode_error
+from cellsim.values import (
+    Array,
+    ErrorValue,
+    Fault,
+    LambdaValue,
+    Reference,
+    Scalar,
+    Value,
+    encode_error,
+)
 
 
 def _place(key: Scalar, items: list[Scalar], kind: int) -> int:
@@ -123,7 +132,9 @@ def lookup_in_columns(
 
 
 @spreadsheet_function("HLOOKUP")
-def lookup_in_rows(key: ScalarValue, table: Values, row: Whole, approximate: Logical = True) -> Scalar:
+def lookup_in_rows(
+    key: ScalarValue, table: Values, row: Whole, approximate: Logical = True
+) -> Scalar:
     """The value in a row of the column whose first cell matches a key."""
     if row < 1:
         return ErrorValue.VALUE
@@ -158,7 +169,11 @@ def lookup_in_rows_over_draws(
 
 
 def _gather(
-    table: Stack, rows: FloatArray | float, columns: FloatArray | float, *, place_of_column: bool = False
+    table: Stack,
+    rows: FloatArray | float,
+    columns: FloatArray | float,
+    *,
+    place_of_column: bool = False,
 ) -> FloatArray:
     """Items of a table by row and column from 1, which may differ by draw."""
     draws = table.data.shape[1]
@@ -175,7 +190,9 @@ def _gather(
 
 
 @spreadsheet_function("LOOKUP")
-def lookup_in_vector(key: ScalarValue, values: Values, results: Operand | None = None) -> Scalar | Reference:
+def lookup_in_vector(
+    key: ScalarValue, values: Values, results: Operand | None = None
+) -> Scalar | Reference:
     """The value beside the last item not above a key."""
     by_column = values.rows >= values.columns
     if 1 in (values.rows, values.columns):
@@ -188,7 +205,9 @@ def lookup_in_vector(key: ScalarValue, values: Values, results: Operand | None =
         along_rows = area.rows >= area.columns
         row = area.first_row + (place if along_rows else 0)
         column = area.first_column + (0 if along_rows else place)
-        return Reference((area._replace(first_row=row, first_column=column, last_row=row, last_column=column),))
+        return Reference(
+            (area._replace(first_row=row, first_column=column, last_row=row, last_column=column),)
+        )
     if isinstance(results, Array):
         return results.items[place] if place < len(results.items) else ErrorValue.NA
     if results is not None:
@@ -226,23 +245,33 @@ def lookup_by_mode(
 def _line(results: Value, place: int, context: Context, *, along_rows: bool, count: int) -> Value:
     if isinstance(results, Reference):
         area = results.areas[0]
-        if (area.rows if along_rows else area.columns) < count:  # whole columns are longer than their values
+        if (
+            area.rows if along_rows else area.columns
+        ) < count:  # whole columns are longer than their values
             return ErrorValue.VALUE
         if along_rows:
-            return Reference((area._replace(first_row=area.first_row + place, last_row=area.first_row + place),))
+            return Reference(
+                (area._replace(first_row=area.first_row + place, last_row=area.first_row + place),)
+            )
         column = area.first_column + place
         return Reference((area._replace(first_column=column, last_column=column),))
     array = values_of(results, context)
     if (array.rows if along_rows else array.columns) != count:
         return ErrorValue.VALUE
     if along_rows:
-        return Array(1, array.columns, array.items[place * array.columns : (place + 1) * array.columns])
+        return Array(
+            1, array.columns, array.items[place * array.columns : (place + 1) * array.columns]
+        )
     return Array(array.rows, 1, array.items[place :: array.columns])
 
 
 @spreadsheet_function("INDEX", gives_reference=True)
 def item_at_place(
-    context: Context, where: Operand, row: AnyScalar = None, column: AnyScalar = None, area: Whole = 1
+    context: Context,
+    where: Operand,
+    row: AnyScalar = None,
+    column: AnyScalar = None,
+    area: Whole = 1,
 ) -> Value:
     """The cell or item at a row and column from 1; 0 or nothing means all of them."""
     if isinstance(where, ErrorValue):
@@ -267,7 +296,9 @@ def item_at_place(
     return Array(len(rows), len(columns), [values.at(i, j) for i in rows for j in columns])
 
 
-def _cell_at(where: Reference, place: int, row: int, column: int, *, column_given: bool) -> Reference | ErrorValue:
+def _cell_at(
+    where: Reference, place: int, row: int, column: int, *, column_given: bool
+) -> Reference | ErrorValue:
     area = where.areas[place]
     if not column_given and area.rows == 1 and area.columns > 1:
         row, column = (1 if row else 0), row
@@ -284,7 +315,10 @@ def _cell_at(where: Reference, place: int, row: int, column: int, *, column_give
     return Reference(
         (
             area._replace(
-                first_row=first_row, last_row=last_row, first_column=first_column, last_column=last_column
+                first_row=first_row,
+                last_row=last_row,
+                first_column=first_column,
+                last_column=last_column,
             ),
         )
     )

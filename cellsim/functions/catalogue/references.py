@@ -28,7 +28,11 @@ _R1C1 = re.compile(
 
 @spreadsheet_function("OFFSET", volatile=True, gives_reference=True)
 def moved_reference(
-    start: CellArea, rows: Whole, columns: Whole, height: Operand | None = None, width: Operand | None = None
+    start: CellArea,
+    rows: Whole,
+    columns: Whole,
+    height: Operand | None = None,
+    width: Operand | None = None,
 ) -> Reference | ErrorValue:
     """A reference moved by rows and columns, with another size if given."""
     area = start.areas[0]
@@ -72,7 +76,9 @@ def _from_r1c1(context: Context, text: str) -> Value:
     sheet = context.cell.sheet
     if match["sheet"]:
         wanted = match["sheet"].strip("'").replace("''", "'").casefold()
-        found = next((title for title in context.sheet_titles() if title.casefold() == wanted), None)
+        found = next(
+            (title for title in context.sheet_titles() if title.casefold() == wanted), None
+        )
         if found is None:
             return ErrorValue.REF
         sheet = found
@@ -81,7 +87,12 @@ def _from_r1c1(context: Context, text: str) -> Value:
     if ":" not in text.rpartition("!")[2]:
         rows[1], columns[1] = rows[0], columns[0]
     area = RangeRef(sheet, min(rows), min(columns), max(rows), max(columns))
-    if area.first_row < 1 or area.first_column < 1 or area.last_row > LAST_ROW or area.last_column > LAST_COLUMN:
+    if (
+        area.first_row < 1
+        or area.first_column < 1
+        or area.last_row > LAST_ROW
+        or area.last_column > LAST_COLUMN
+    ):
         return ErrorValue.REF
     return Reference((area,))
 
@@ -110,7 +121,9 @@ def row_number(context: Context, where: Operand | None = None) -> float | Array:
     if area.rows == 1:
         return float(area.first_row)
     last = min(area.last_row, area.first_row + LAST_ROW - 1)
-    return Array(last - area.first_row + 1, 1, [float(row) for row in range(area.first_row, last + 1)])
+    return Array(
+        last - area.first_row + 1, 1, [float(row) for row in range(area.first_row, last + 1)]
+    )
 
 
 @spreadsheet_function("COLUMN")
@@ -119,7 +132,9 @@ def column_number_of(context: Context, where: Operand | None = None) -> float | 
     area = _bounds(context, where)
     if area.columns == 1:
         return float(area.first_column)
-    return Array(1, area.columns, [float(c) for c in range(area.first_column, area.last_column + 1)])
+    return Array(
+        1, area.columns, [float(c) for c in range(area.first_column, area.last_column + 1)]
+    )
 
 
 def _shape(value: Operand) -> tuple[int, int]:
@@ -164,13 +179,17 @@ def transpose(values: Values) -> Array:
 
 
 @spreadsheet_function("ADDRESS")
-def address_text(row: Whole, column: Whole, kind: Whole = 1, a1: Logical = True, sheet: Text = "") -> str | ErrorValue:
+def address_text(
+    row: Whole, column: Whole, kind: Whole = 1, a1: Logical = True, sheet: Text = ""
+) -> str | ErrorValue:
     """The text of an address: 1 absolute, 2 row absolute, 3 column absolute, 4 relative."""
     if not (1 <= row <= LAST_ROW and 1 <= column <= LAST_COLUMN and 1 <= kind <= 4):
         return ErrorValue.VALUE
     row_fixed, column_fixed = kind in {1, 2}, kind in {1, 3}
     if a1:
-        text = f"{'$' if column_fixed else ''}{column_letters(column)}{'$' if row_fixed else ''}{row}"
+        text = (
+            f"{'$' if column_fixed else ''}{column_letters(column)}{'$' if row_fixed else ''}{row}"
+        )
     else:
         text = f"R{row if row_fixed else f'[{row}]'}C{column if column_fixed else f'[{column}]'}"
     return f"{quote_title(sheet)}!{text}" if sheet else text

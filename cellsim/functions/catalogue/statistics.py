@@ -71,7 +71,11 @@ def _all_values(context: Context, arguments: tuple[Value, ...]) -> list[float]:
         if not isinstance(argument, (Reference, Array)):
             found.append(to_number(argument))
             continue
-        arrays = [argument] if isinstance(argument, Array) else [context.area_values(a) for a in argument.areas]
+        arrays = (
+            [argument]
+            if isinstance(argument, Array)
+            else [context.area_values(a) for a in argument.areas]
+        )
         for item in (item for array in arrays for item in array.items):
             if isinstance(item, ErrorValue):
                 raise Fault(item)
@@ -183,7 +187,9 @@ def rank(number: Number, numbers: NumberItems, ascending: Logical = False) -> fl
 
 
 @spreadsheet_function("RANK.AVG")
-def average_rank(number: Number, numbers: NumberItems, ascending: Logical = False) -> float | ErrorValue:
+def average_rank(
+    number: Number, numbers: NumberItems, ascending: Logical = False
+) -> float | ErrorValue:
     """The place of a number among others, ties sharing their mean."""
     found = rank_of(number, numbers, ascending=ascending)
     return ErrorValue.NA if found is None else found[0] + (found[1] - 1) / 2
@@ -245,7 +251,11 @@ def _percent_rank(numbers: list[float], number: float, digits: int, *, ends: boo
     else:
         low, high = ordered[below - 1], ordered[below]
         place = below - 1 + (number - low) / (high - low)
-    share = (place / (len(ordered) - 1) if len(ordered) > 1 else 1.0) if ends else (place + 1) / (len(ordered) + 1)
+    share = (
+        (place / (len(ordered) - 1) if len(ordered) > 1 else 1.0)
+        if ends
+        else (place + 1) / (len(ordered) + 1)
+    )
     scale = 10.0**digits
     return math.floor(share * scale + 1e-9) / scale
 
@@ -417,7 +427,9 @@ def sample_skewness(*numbers: NumberItems) -> float | ErrorValue:
     if n < 3 or squared_deviations(found) == 0:
         return ErrorValue.DIV0
     centre, deviation = _sum(found) / n, math.sqrt(_variance(found, 1))
-    return n / ((n - 1) * (n - 2)) * _sum([((number - centre) / deviation) ** 3 for number in found])
+    return (
+        n / ((n - 1) * (n - 2)) * _sum([((number - centre) / deviation) ** 3 for number in found])
+    )
 
 
 @spreadsheet_function("SKEW.P", least=1)
@@ -440,7 +452,9 @@ def sample_excess_kurtosis(*numbers: NumberItems) -> float | ErrorValue:
         return ErrorValue.DIV0
     centre, deviation = _sum(found) / n, math.sqrt(_variance(found, 1))
     fourth = _sum([((number - centre) / deviation) ** 4 for number in found])
-    return n * (n + 1) / ((n - 1) * (n - 2) * (n - 3)) * fourth - 3 * (n - 1) ** 2 / ((n - 2) * (n - 3))
+    return n * (n + 1) / ((n - 1) * (n - 2) * (n - 3)) * fourth - 3 * (n - 1) ** 2 / (
+        (n - 2) * (n - 3)
+    )
 
 
 @spreadsheet_function("STANDARDIZE")

@@ -56,7 +56,9 @@ def join_all_texts(context: Context, *texts: Operand) -> str:
 
 
 @spreadsheet_function("TEXTJOIN", least=3)
-def join_with_separator(context: Context, separator: Operand, skip_empty: Logical, *texts: Operand) -> str:
+def join_with_separator(
+    context: Context, separator: Operand, skip_empty: Logical, *texts: Operand
+) -> str:
     """Texts with a separator between them."""
     separators = _texts(context, (separator,)) or [""]
     parts = [part for part in _texts(context, texts) if part or not skip_empty]
@@ -137,7 +139,9 @@ def number_of_text(context: Context, text: ScalarValue) -> float | ErrorValue:
 
 
 @spreadsheet_function("NUMBERVALUE")
-def number_of_text_with_separators(text: Text, decimal: Text = ".", group: Text = ",") -> float | ErrorValue:
+def number_of_text_with_separators(
+    text: Text, decimal: Text = ".", group: Text = ","
+) -> float | ErrorValue:
     """The number that a text stands for, with separators of one's own."""
     if not decimal or not group:
         return ErrorValue.VALUE
@@ -272,14 +276,17 @@ def text_only(value: AnyScalar) -> Scalar:
 def narrow(text: Text) -> str:
     """Full-width letters as half-width ones."""
     return "".join(
-        unicodedata.normalize("NFKC", c) if "\uff01" <= c <= "\uff5e" or c == "\u3000" else c for c in text
+        unicodedata.normalize("NFKC", c) if "\uff01" <= c <= "\uff5e" or c == "\u3000" else c
+        for c in text
     )
 
 
 @spreadsheet_function("DBCS", "JIS")
 def widen(text: Text) -> str:
     """Half-width letters as full-width ones."""
-    return "".join("\u3000" if c == " " else chr(ord(c) + 0xFEE0) if "!" <= c <= "~" else c for c in text)
+    return "".join(
+        "\u3000" if c == " " else chr(ord(c) + 0xFEE0) if "!" <= c <= "~" else c for c in text
+    )
 
 
 @spreadsheet_function("PHONETIC")
@@ -299,7 +306,9 @@ def _cut(
 ) -> tuple[int, int] | None:
     """Where a separator stands, counted from the start or, if negative, from the end."""
     flags = re.IGNORECASE if ignore_case else 0
-    pattern = re.compile("|".join(re.escape(s) for s in sorted(separators, key=len, reverse=True)), flags)
+    pattern = re.compile(
+        "|".join(re.escape(s) for s in sorted(separators, key=len, reverse=True)), flags
+    )
     spots = [match.span() for match in pattern.finditer(text)]
     if to_end:
         spots = [(0, 0), *spots] if which < 0 else [*spots, (len(text), len(text))]
@@ -408,7 +417,9 @@ def matches_pattern(text: Text, pattern: Text, ignore_case: Logical = False) -> 
 
 
 @spreadsheet_function("REGEXEXTRACT")
-def extract_by_pattern(text: Text, pattern: Text, mode: Whole = 0, ignore_case: Logical = False) -> Value:
+def extract_by_pattern(
+    text: Text, pattern: Text, mode: Whole = 0, ignore_case: Logical = False
+) -> Value:
     """What a regular expression matches: 0 the first match, 1 all, 2 the groups of the first."""
     regex = _regex(pattern, ignore_case=ignore_case)
     matches = list(regex.finditer(text))

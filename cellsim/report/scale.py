@@ -1,0 +1,82 @@
+"""How the numbers of one quantity are written, in cells and in sentences."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from cellsim.functions.number_format import format_value
+from cellsim.report.number_formats import (
+    GENERAL,
+    finer_code,
+    is_date_code,
+    is_number_code,
+    safe_code,
+    suited_code,
+)
+from cellsim.report.plain_text import one_line
+
+_DAYS = "#,##0.0"
+
+
+@dataclass(frozen=True, slots=True)
+class Scale:
+    """How the numbers of one quantity are written.
+
+    Attributes:
+        code: Number format code of its values.
+        spread_code: Code of differences between values: days for dates.
+        unit: Its unit, or "".
+    """
+
+    code: str
+    spread_code: str
+    unit: str
+
+    def text(self, value: float | None) -> str:
+        """A value with its unit, for a sentence."""
+        return self._worded(value, self.code, self.unit)
+
+    def spread_text(self, value: float | None) -> str:
+        """A difference between values with its unit, for a sentence."""
+        code = self.spread_code if value is None else finer_code(self.spread_code, value)
+        return self._worded(value, code, "days" if self.is_date else self.unit)
+
+    @property
+    def is_date(self) -> bool:
+        """Whether the values are dates or times."""
+        return is_date_code(self.code)
+
+    @property
+    def title(self) -> str:
+        """The unit as an axis title shows it: `, EUR`, or ""."""
+        unit = one_line(self.unit, 24)
+        return f", {unit}" if unit else ""
+
+    def _worded(self, value: float | None, code: str, unit: str) -> str:
+        if value is None or not math.isfinite(value):
+            return "no number"
+        shown = format_value(value, code)
+        text = shown.strip() if isinstance(shown, str) and shown.strip() else f"{value:.6g}"
+        unit = one_line(unit, 24)
+        return text if not unit or unit in text else f"{text} {unit}"
+
+
+def scale_of(number_format: str, unit: str, largest: float, spread: float) -> Scale:
+    """The scale of a quantity.
+
+    Args:
+        number_format: The model's code for its cell.
+        unit: Its unit, or "".
+        largest: Largest usual size of its values.
+        spread: Its standard deviation, or 0.
+
+    Returns:
+        The model's own code where it can be stored and shows numbers, else one that suits the values.
+    """
+    code = safe_code(number_format)
+    if is_date_code(code):
+        return Scale(code, _DAYS, unit)
+    if code == GENERAL or not is_number_code(code):
+        code = suited_code(largest, spread)
+    return Scale(code, code, unit)
