@@ -97,7 +97,12 @@ def _edges(ordered: FloatArray) -> FloatArray:
     step, power = round_width(wanted)
     width = step * 10.0**power
     first, last = low / width, high / width
-    if not (width > 0 and math.isfinite(first) and math.isfinite(last) and max(-first, last) < _LARGEST_MULTIPLE):
+    if not (
+        width > 0
+        and math.isfinite(first)
+        and math.isfinite(last)
+        and max(-first, last) < _LARGEST_MULTIPLE
+    ):
         return np.linspace(low, high, _FEWEST + 1)
     multiples = np.arange(math.floor(first), math.ceil(last) + 1) * float(step)
     edges: FloatArray = multiples * 10.0**power if power >= 0 else multiples / 10.0**-power

@@ -69,11 +69,15 @@ def binomial_quantile(probability: float, count: int, shares: FloatArray) -> Int
             lower = np.maximum(found - 1, 0)
             found = np.where(bdtr(lower, count, shares) >= probability, lower, found)
         else:
-            found = np.where(bdtr(found, count, shares) < probability, np.minimum(found + 1, count), found)
+            found = np.where(
+                bdtr(found, count, shares) < probability, np.minimum(found + 1, count), found
+            )
     return found.astype(np.int64)
 
 
-def interval_ranks(count: int, probabilities: FloatArray, confidence: float) -> tuple[IntArray, IntArray]:
+def interval_ranks(
+    count: int, probabilities: FloatArray, confidence: float
+) -> tuple[IntArray, IntArray]:
     """Ranks of the order statistics that enclose a quantile (Conover 1999, section 3.2).
 
     With B binomial(count, p), the interval from the r-th to the s-th order statistic covers the
@@ -94,7 +98,9 @@ def interval_ranks(count: int, probabilities: FloatArray, confidence: float) -> 
     return low, high
 
 
-def quantile_table(ordered: FloatArray, probabilities: FloatArray, confidence: float = 0.95) -> Quantiles:
+def quantile_table(
+    ordered: FloatArray, probabilities: FloatArray, confidence: float = 0.95
+) -> Quantiles:
     """Quantiles with confidence intervals.
 
     Args:
@@ -113,4 +119,7 @@ def quantile_table(ordered: FloatArray, probabilities: FloatArray, confidence: f
         low, high = interval_ranks(count, probabilities[inner], confidence)
         lower[inner] = np.where(low >= 1, ordered[np.maximum(low, 1) - 1], np.nan)
         upper[inner] = np.where(high <= count, ordered[np.minimum(high, count) - 1], np.nan)
-    return Quantiles(probabilities, quantiles_of_sorted(ordered, probabilities), lower, upper, confidence)
+    values = np.maximum.accumulate(
+        quantiles_of_sorted(ordered, probabilities)
+    )  # rounding may not turn it
+    return Quantiles(probabilities, values, lower, upper, confidence)

@@ -84,5 +84,8 @@ def exceedance(ordered: FloatArray, value: float, confidence: float = 0.95) -> E
     below = int(np.searchsorted(ordered, value, side="left"))
     up_to = int(np.searchsorted(ordered, value, side="right"))
     return Exceedance(
-        value, wilson_share(below, count, confidence), up_to - below, wilson_share(count - up_to, count, confidence)
+        value,
+        wilson_share(below, count, confidence),
+        up_to - below,
+        wilson_share(count - up_to, count, confidence),
     )

@@ -109,7 +109,14 @@ def bin_chart(
     )
     for (name, span), fill in zip(columns, fills, strict=False):
         chart.add_series(
-            {"name": name, "categories": list(labels), "values": list(span), "gap": 4, "overlap": 100, **fill}
+            {
+                "name": name,
+                "categories": list(labels),
+                "values": list(span),
+                "gap": 4,
+                "overlap": 100,
+                **fill,
+            }
         )
     y_axis = {"name": "Share of draws", "num_format": "0%", "min": 0}
     if cumulative is not None:
@@ -124,10 +131,23 @@ def bin_chart(
             }
         )
         line.set_y2_axis(
-            _axis({"name": "Cumulative share", "num_format": "0%", "min": 0, "max": 1, "major_unit": 0.25})
+            _axis(
+                {
+                    "name": "Cumulative share",
+                    "num_format": "0%",
+                    "min": 0,
+                    "max": 1,
+                    "major_unit": 0.25,
+                }
+            )
         )
         chart.combine(line)
-    _dress(chart, title, _axis({**x_axis, "label_position": "low"}), _axis(y_axis, grid=True))
+    _dress(
+        chart,
+        title,
+        _axis({**x_axis, "label_position": "low"}, rotation=-45),
+        _axis(y_axis, grid=True),
+    )
     return chart
 
 
@@ -138,10 +158,10 @@ def _new(workbook: Workbook, options: dict[str, Any]) -> Chart:
     return chart
 
 
-def _axis(given: dict[str, Any], *, grid: bool = False) -> dict[str, Any]:
+def _axis(given: dict[str, Any], *, grid: bool = False, rotation: int = 0) -> dict[str, Any]:
     return {
         "name_font": _NAME_FONT,
-        "num_font": _NAME_FONT | given.pop("num_font", {}) if "num_font" in given else _NAME_FONT,
+        "num_font": {**_NAME_FONT, "rotation": rotation} if rotation else _NAME_FONT,
         "line": AXIS_LINE,
         "major_gridlines": {"visible": grid, "line": GRID_LINE},
         **given,

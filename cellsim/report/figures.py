@@ -87,8 +87,14 @@ def work_out(results: RunResults) -> Figures:
     Returns:
         Its figures.
     """
-    outputs = tuple(_output(record, draws) for record, draws in zip(results.outputs, results.output_draws, strict=True))
-    inputs = tuple(_input(record, draws) for record, draws in zip(results.inputs, results.input_draws, strict=True))
+    outputs = tuple(
+        _output(record, draws)
+        for record, draws in zip(results.outputs, results.output_draws, strict=True)
+    )
+    inputs = tuple(
+        _input(record, draws)
+        for record, draws in zip(results.inputs, results.input_draws, strict=True)
+    )
     return Figures(outputs, inputs)
 
 
@@ -99,7 +105,9 @@ def _output(record: OutputRecord, draws: np.ndarray) -> OutputFigures:
     about = finite if base is None else [*finite, base]
     summary = summarize(draws, PROBABILITIES, about=about)
     found = iter(summary.exceedances if summary is not None else ())
-    thresholds = tuple(next(found, None) if math.isfinite(t.value) else None for t in record.thresholds)
+    thresholds = tuple(
+        next(found, None) if math.isfinite(t.value) else None for t in record.thresholds
+    )
     return OutputFigures(
         record=record,
         title=one_line(record.label or record.name, 80),
@@ -114,7 +122,9 @@ def _output(record: OutputRecord, draws: np.ndarray) -> OutputFigures:
 def _input(record: InputRecord, draws: np.ndarray) -> InputFigures:
     summary = summarize(draws, PROBABILITIES)
     title = one_line(record.label or record.name, 80)
-    return InputFigures(record, title, _scale(record.number_format, record.unit, summary, record.base), summary)
+    return InputFigures(
+        record, title, _scale(record.number_format, record.unit, summary, record.base), summary
+    )
 
 
 def _scale(number_format: str, unit: str, summary: Summary | None, base: float | None) -> Scale:

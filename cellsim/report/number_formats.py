@@ -60,13 +60,18 @@ def _is_sound(section: list[Token]) -> bool:
     kinds = [kind for kind, _ in section]
     has_date = "date" in kinds or "noon" in kinds
     numeric = {"digit", "percent", "exponent", "comma"} & set(kinds)
-    if "general" in kinds and (numeric or has_date or "text" in kinds or kinds.count("general") > 1):
+    if "general" in kinds and (
+        numeric or has_date or "text" in kinds or kinds.count("general") > 1
+    ):
         return False
     if "text" in kinds and (numeric or has_date):
         return False
     if has_date:
         rest = "".join(spelling for kind, spelling in section if kind in {"digit", "point"})
-        return not ({"percent", "exponent"} & set(kinds)) and re.fullmatch(r"(\.0{1,3})?\.*", rest) is not None
+        return (
+            not ({"percent", "exponent"} & set(kinds))
+            and re.fullmatch(r"(\.0{1,3})?\.*", rest) is not None
+        )
     if kinds.count("point") > 1 or kinds.count("exponent") > 1:
         return False
     if "exponent" in kinds:
@@ -92,7 +97,11 @@ def safe_code(code: str) -> str:
         return GENERAL
     sections = _sections(tokens)
     last_only_text = all(all(kind != "text" for kind, _ in section) for section in sections[:-1])
-    if len(sections) > 4 or not last_only_text or not all(_is_sound(section) for section in sections):
+    if (
+        len(sections) > 4
+        or not last_only_text
+        or not all(_is_sound(section) for section in sections)
+    ):
         return GENERAL
     return code
 
@@ -100,7 +109,13 @@ def safe_code(code: str) -> str:
 def is_date_code(code: str) -> bool:
     """Whether the code shows numbers as dates or times."""
     tokens = _tokens(code) or []
-    return any(kind == "date" or kind == "bracket" and spelling[1].lower() in "hms" and spelling[1:-1].lower() in {"h", "hh", "m", "mm", "s", "ss"} for kind, spelling in tokens)
+    return any(
+        kind == "date"
+        or kind == "bracket"
+        and spelling[1].lower() in "hms"
+        and spelling[1:-1].lower() in {"h", "hh", "m", "mm", "s", "ss"}
+        for kind, spelling in tokens
+    )
 
 
 def is_number_code(code: str) -> bool:
@@ -166,4 +181,9 @@ def _with_decimals(section: list[Token], value: float) -> list[Token]:
     if point is not None:
         place = max(point, last) + 1
         return [*section[:place], *[("digit", "0")] * (wanted - shown), *section[place:]]
-    return [*section[: after + 1], ("point", "."), *[("digit", "0")] * wanted, *section[after + 1 :]]
+    return [
+        *section[: after + 1],
+        ("point", "."),
+        *[("digit", "0")] * wanted,
+        *section[after + 1 :],
+    ]

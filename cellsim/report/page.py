@@ -31,7 +31,12 @@ class Page:
     """
 
     def __init__(
-        self, worksheet: Worksheet, styles: Styles, widths: Sequence[float], *, landscape: bool = False
+        self,
+        worksheet: Worksheet,
+        styles: Styles,
+        widths: Sequence[float],
+        *,
+        landscape: bool = False,
     ) -> None:
         self.worksheet = worksheet
         self._styles = styles
@@ -55,12 +60,16 @@ class Page:
         """Write text as text, whatever it looks like."""
         self.worksheet.write_string(row, column, storable(text), self._styles.get(kind))
 
-    def number(self, row: int, column: int, value: float | None, code: str = "", kind: str = "number") -> None:
+    def number(
+        self, row: int, column: int, value: float | None, code: str = "", kind: str = "number"
+    ) -> None:
         """Write a number, or a dash if there is none or it is not finite."""
         if value is None or not math.isfinite(value):
             self.text(row, column, NO_NUMBER, kind)
         else:
-            self.worksheet.write_number(row, column, value, self._styles.get(kind, safe_code(code) if code else ""))
+            self.worksheet.write_number(
+                row, column, value, self._styles.get(kind, safe_code(code) if code else "")
+            )
 
     def count(self, row: int, column: int, value: int) -> None:
         """Write a whole number."""
@@ -83,14 +92,23 @@ class Page:
 
     def formula(self, row: int, column: int, formula: str, shown: float, code: str) -> None:
         """Write a formula of this package's own making, with its value at the time of writing."""
-        self.worksheet.write_formula(row, column, formula, self._styles.get("answer", safe_code(code)), shown)
+        self.worksheet.write_formula(
+            row, column, formula, self._styles.get("answer", safe_code(code)), shown
+        )
 
-    def header(self, row: int, titles: Sequence[str], first: int = 0, *, numbers_from: int = 1) -> None:
+    def header(
+        self, row: int, titles: Sequence[str], first: int = 0, *, numbers_from: int = 1
+    ) -> None:
         """Write a table's header; titles from `numbers_from` on are set right."""
         for k, title in enumerate(titles):
             self.text(row, first + k, title, "header_right" if k >= numbers_from else "header")
         lines = max(
-            (_lines(title, self.widths[first + k] * 0.86) for k, title in enumerate(titles) if title), default=1
+            (
+                _lines(title, self.widths[first + k] * 0.86)
+                for k, title in enumerate(titles)
+                if title
+            ),
+            default=1,
         )
         self.worksheet.set_row(row, _LINE_HEIGHT * lines + 3)
 
@@ -101,7 +119,9 @@ class Page:
         self.text(row, first, text, "heading")
         self.worksheet.set_row(row, 20)
 
-    def paragraph(self, row: int, text: str, last: int, *, first: int = 0, kind: str = "lead") -> None:
+    def paragraph(
+        self, row: int, text: str, last: int, *, first: int = 0, kind: str = "lead"
+    ) -> None:
         """Write a paragraph over several columns, the row made high enough."""
         style = self._styles.get(kind)
         if last > first:
@@ -124,7 +144,9 @@ class Page:
 
     def link(self, row: int, column: int, sheet: str, text: str, cell: str = "A1") -> None:
         """Write a link to a place in this workbook; sheet and text are this package's own words."""
-        self.worksheet.write_url(row, column, f"internal:'{sheet}'!{cell}", self._styles.get("link"), storable(text))
+        self.worksheet.write_url(
+            row, column, f"internal:'{sheet}'!{cell}", self._styles.get("link"), storable(text)
+        )
 
     def chart(self, row: int, column: int, chart: Chart, alt_text: str) -> None:
         """Place a chart, with words for those who cannot see it."""

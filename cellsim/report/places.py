@@ -48,7 +48,10 @@ def quantile_blocks(figures: Figures) -> tuple[Block, ...]:
 def distribution_blocks(figures: Figures) -> tuple[Block, ...]:
     """The blocks of the sheet Distribution: a heading and a row a bin, beside charts."""
     return _stacked(
-        (len(output.summary.histogram.counts) if output.summary else 0 for output in figures.outputs),
+        (
+            len(output.summary.histogram.counts) if output.summary else 0
+            for output in figures.outputs
+        ),
         least=_CHART_ROWS,
         before=3,
     )

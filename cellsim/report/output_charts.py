@@ -1,0 +1,122 @@
+"""The two charts of an output, used on more than one sheet."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from xlsxwriter import Workbook
+from xlsxwriter.chart import Chart
+
+from cellsim.report.charts import Line, Span, bin_chart, curve_chart
+from cellsim.report.figures import OutputFigures
+from cellsim.report.palette import BASE_LINE, CURVE, THRESHOLD_LINE
+from cellsim.report.places import DISTRIBUTION, QUANTILES, Block, base_bin
+from cellsim.report.plain_text import one_line
+from cellsim.report.wording import base_text
+
+MARKS_COLUMN = 5
+MARKS_ROW = 9
+"""Rows below a quantile block's heading at which its first mark stands: base case, then thresholds."""
+MOST_MARKS = 4
+LABEL, SHARE, CUMULATIVE, BASE_SHARE = 0, 4, 5, 6
+"""Columns of a distribution block's table."""
+_MOST_LABELS = 10
+
+
+def mark_values(output: OutputFigures) -> list[tuple[str, float]]:
+    """The upright lines of an output's curve: base case and the first thresholds."""
+    marks = [] if output.base is None else [("Base case", output.base)]
+    thresholds = [about.value for about in output.thresholds if about is not None]
+    names = (
+        ["Threshold"]
+        if len(thresholds) == 1
+        else [f"Threshold {k + 1}" for k in range(len(thresholds))]
+    )
+    return (marks + list(zip(names, thresholds, strict=True)))[:MOST_MARKS]
+
+
+def cumulative_chart(workbook: Workbook, output: OutputFigures, block: Block) -> Chart:
+    """The cumulative distribution of an output with its base case and thresholds as upright lines."""
+    lines = [
+        Line(
+            "Share of draws at or below",
+            (QUANTILES, block.first, 1, block.last, 1),
+            (QUANTILES, block.first, 0, block.last, 0),
+            CURVE,
+        )
+    ]
+    for k, (name, _) in enumerate(mark_values(output)):
+        row = block.top + MARKS_ROW + k
+        x = (QUANTILES, row, MARKS_COLUMN + 1, row, MARKS_COLUMN + 2)
+        y = (QUANTILES, row, MARKS_COLUMN + 3, row, MARKS_COLUMN + 4)
+        lines.append(Line(name, x, y, BASE_LINE if name == "Base case" else THRESHOLD_LINE))
+    title = f"Cumulative distribution: {one_line(output.title, 50)}"
+    x_axis = {
+        "name": f"Value{output.scale.title}",
+        "num_format": output.scale.code,
+        "label_position": "low",
+    }
+    x_axis |= _bounds(output)
+    y_axis = {
+        "name": "Share of draws at or below",
+        "num_format": "0%",
+        "min": 0,
+        "max": 1,
+        "major_unit": 0.25,
+    }
+    return curve_chart(workbook, title, lines, x_axis, y_axis)
+
+
+def _bounds(output: OutputFigures) -> dict[str, Any]:
+    """Axis bounds about the body of the draws and the marks, at round numbers."""
+    summary = output.summary
+    if summary is None:
+        return {}
+    body = summary.quantiles.values[[1, -2]]
+    marks = [value for _, value in mark_values(output)]
+    low, high = (
+        min(float(body[0]), *marks, float(body[1])),
+        max(float(body[1]), *marks, float(body[0])),
+    )
+    span = high - low
+    if not math.isfinite(span) or span <= 0:
+        return {}
+    unit = 10.0 ** math.floor(math.log10(span / 2))
+    first, last = low / unit, high / unit
+    if not (math.isfinite(first) and math.isfinite(last)) or max(abs(first), abs(last)) > 1e9:
+        return {}
+    return {"min": math.floor(first) * unit, "max": math.ceil(last) * unit}
+
+
+def cumulative_alt_text(output: OutputFigures) -> str:
+    """The curve in words."""
+    return (
+        f"Cumulative distribution of {output.title}: share of draws at or below each value, from the quantile table; "
+        f"base case {base_text(output.record.base, output)}."
+    )
+
+
+def histogram_chart(workbook: Workbook, output: OutputFigures, block: Block) -> Chart:
+    """Share of draws by bin with the cumulative share; the bin of the base case is hatched."""
+    labels = _column(block, LABEL)
+    columns = [("Share of draws", _column(block, SHARE))]
+    if base_bin(output) is not None:
+        columns.append(("Bin with the base case", _column(block, BASE_SHARE)))
+    bins = block.last - block.first + 1
+    title = f"Distribution: {one_line(output.title, 50)}"
+    x_axis = {
+        "name": f"Value{output.scale.title}",
+        "interval_unit": max(1, math.ceil(bins / _MOST_LABELS)),
+    }
+    return bin_chart(workbook, title, labels, columns, _column(block, CUMULATIVE), x_axis)
+
+
+def histogram_alt_text(output: OutputFigures) -> str:
+    """The histogram in words."""
+    place = "" if base_bin(output) is None else " The bin that holds the base case is hatched."
+    return f"Histogram of {output.title}: share of draws in each bin, and the cumulative share as a line.{place}"
+
+
+def _column(block: Block, column: int) -> Span:
+    return (DISTRIBUTION, block.first, column, block.last, column)

@@ -1,0 +1,228 @@
+"""Sentences about a run, made from its figures."""
+
+from __future__ import annotations
+
+from cellsim.analysis.shares import Exceedance, Share
+from cellsim.report.figures import Figures, InputFigures, OutputFigures, central_range
+from cellsim.report.plain_text import one_line
+from cellsim.results import ModelCheck, RunResults
+from cellsim.values import ErrorValue, Scalar
+
+CAUTION = (
+    "The figures describe the model and the distributions that it was given. They are no advice to buy, sell or "
+    "lend; a licensed professional and local rules come first."
+)
+_SAMPLING = {
+    "random": "independent random draws",
+    "latin-hypercube": "Latin hypercube draws",
+}
+_FEW_DRAWS = 1000
+_WIDE = 0.1
+_MOST_NAMED = 3
+
+
+def counted(count: int, one: str, many: str) -> str:
+    """A count with its noun: `1 draw`, `1,000 draws`."""
+    return f"{count:,} {one if count == 1 else many}"
+
+
+def share_text(share: Share) -> str:
+    """A share as per cent that never claims more than was counted."""
+    if share.hits == 0:
+        return "0 %"
+    if share.hits == share.count:
+        return "100 %"
+    if share.share < 0.0005:
+        return "less than 0.1 %"
+    if share.share > 0.9995:
+        return "more than 99.9 %"
+    return f"{share.share * 100:.1f} %"
+
+
+def sampling_words(sampling: str) -> str:
+    """How the draws were made."""
+    return _SAMPLING.get(sampling, f"{one_line(sampling, 40)} draws")
+
+
+def precision_note(sampling: str) -> str:
+    """What the standard errors and intervals mean for the way of sampling."""
+    note = "Standard errors and 95 % intervals show the precision of the draws, not how well the model fits the world."
+    if sampling == "random":
+        return note
+    return (
+        f"{note} They are worked out as for independent draws. With {sampling_words(sampling)} that is an upper bound "
+        "for the standard error of the mean, but for a factor n/(n - 1) in its square; quantiles and shares are "
+        "usually more precise than shown as well."
+    )
+
+
+def asked(results: RunResults) -> str:
+    """What was asked, in one paragraph."""
+    record = results.record
+    return (
+        f"{one_line(record.model, 100)} was evaluated on {counted(record.draws, 'draw', 'draws')} "
+        f"({sampling_words(record.sampling)}, seed {record.seed}) of "
+        f"{counted(len(results.inputs), 'uncertain input', 'uncertain inputs')}, as {one_line(record.sidecar, 100)} "
+        f"describes, for {counted(len(results.outputs), 'output', 'outputs')}. Everything else stays as the model has it."
+    )
+
+
+def base_text(base: Scalar, output: OutputFigures) -> str:
+    """A base case as words: a number with its unit, or what it is instead."""
+    if output.base is not None:
+        return output.scale.text(output.base)
+    if isinstance(base, ErrorValue):
+        return f"the error {base}"
+    if base is None:
+        return "blank"
+    return f"“{one_line(str(base), 40)}”, no number"
+
+
+def output_sentences(output: OutputFigures) -> str:
+    """An output in words: centre, spread, place of the base case, thresholds."""
+    summary = output.summary
+    if summary is None:
+        return f"{output.title}: no draw gave a number."
+    low, middle, high = central_range(summary)
+    scale = output.scale
+    if low == high == summary.moments.minimum == summary.moments.maximum:
+        words = [f"{output.title}: {scale.text(middle)} in every draw."]
+    else:
+        words = [
+            f"{output.title}: the median is {scale.text(middle)} and the mean {scale.text(summary.moments.mean)}; "
+            f"80 % of the draws lie between {scale.text(low)} and {scale.text(high)}."
+        ]
+    words.append(_base_sentence(output))
+    words += [
+        _threshold_sentence(output, threshold.text, about)
+        for threshold, about in zip(output.record.thresholds, output.thresholds, strict=True)
+        if about is not None
+    ]
+    return " ".join(words)
+
+
+def _base_sentence(output: OutputFigures) -> str:
+    about = output.at_base
+    if about is None:
+        return f"The base case is {base_text(output.record.base, output)}."
+    equal = f", {counted(about.equal, 'draw is', 'draws are')} equal to it" if about.equal else ""
+    return (
+        f"The base case is {output.scale.text(about.value)}: {share_text(about.below)} of the draws lie below it"
+        f"{equal} and {share_text(about.above)} above."
+    )
+
+
+def _threshold_sentence(output: OutputFigures, text: str, about: Exceedance) -> str:
+    shown = output.scale.text(about.value)
+    origin = f" ({one_line(text, 40)})" if text.startswith("=") else ""
+    return f"{share_text(about.above)} of the draws lie above {shown}{origin}."
+
+
+def cautions(results: RunResults, figures: Figures) -> list[str]:
+    """What a reader should be careful of, most serious first; empty if nothing stands out."""
+    found = [
+        *_failure_cautions(results, figures),
+        *_check_cautions(results.check),
+        *_precision_cautions(figures),
+        *_base_cautions(figures),
+        *[c for item in figures.inputs if (c := _input_caution(item)) is not None],
+    ]
+    return found
+
+
+def _failure_cautions(results: RunResults, figures: Figures) -> list[str]:
+    failed = results.failures.draws
+    if not failed:
+        return []
+    worst = max(
+        figures.outputs,
+        key=lambda output: output.summary.failed if output.summary else results.record.draws,
+    )
+    share = failed / max(results.record.draws, 1)
+    amount = "less than 0.1 %" if share < 0.0005 else f"{share * 100:.1f} %"
+    return [
+        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: an output was an error or not finite there. The figures "
+        f"are those of the other draws and say nothing about these. Most failures: {worst.title}. See Failed draws."
+    ]
+
+
+def _check_cautions(check: ModelCheck) -> list[str]:
+    found = []
+    if check.disagreements:
+        roots = sum(d.root for d in check.disagreements)
+        found.append(
+            f"The model check found {counted(len(check.disagreements), 'formula', 'formulas')} whose recalculated value "
+            f"differs from the stored one; {counted(roots, 'of them is', 'of them are')} where a difference starts. "
+            "See Model check."
+        )
+    if check.unsupported:
+        names = ", ".join(one_line(name, 30) for name, _, _ in check.unsupported[:_MOST_NAMED])
+        found.append(f"Not every function of the model is calculated: {names}. See Model check.")
+    if check.without_value:
+        found.append(
+            f"{counted(check.without_value, 'formula has', 'formulas have')} no stored value to compare with, so the model "
+            "check is silent about them."
+        )
+    return found
+
+
+def _precision_cautions(figures: Figures) -> list[str]:
+    thin = []
+    for output in figures.outputs:
+        summary = output.summary
+        if summary is None or summary.moments.minimum == summary.moments.maximum:
+            continue
+        low, _, high = central_range(summary)
+        error = summary.moments.mean_se
+        few = summary.moments.count < _FEW_DRAWS
+        wide = error is None or error * 4 > _WIDE * (high - low) > 0
+        loose = any(
+            t is not None and t.above.upper - t.above.lower > _WIDE for t in output.thresholds
+        )
+        if few or wide or loose:
+            thin.append(output)
+    if not thin:
+        return []
+    return [
+        f"Thin precision for {_named([output.title for output in thin])}: too few draws for the last digits shown. The "
+        "intervals on Quantiles say how far to trust them; more draws narrow them."
+    ]
+
+
+def _base_cautions(figures: Figures) -> list[str]:
+    found = []
+    for output in figures.outputs:
+        about, summary = output.at_base, output.summary
+        if about is None or summary is None or summary.moments.minimum == summary.moments.maximum:
+            continue
+        if about.below.share > 0.95 or about.above.share > 0.95:
+            side = "above" if about.below.share > 0.95 else "below"
+            found.append(
+                f"The base case of {output.title} ({output.scale.text(about.value)}) lies {side} more than 95 % of its draws: "
+                "the model's own figure is an extreme one under these distributions."
+            )
+    return found[:_MOST_NAMED] + _rest(len(found), "base cases like this")
+
+
+def _input_caution(item: InputFigures) -> str | None:
+    share = item.record.base_percentile
+    if share is None or 0.05 <= share <= 0.95 or item.record.base is None:
+        return None
+    if item.record.discrete and share > 0.95:
+        return None  # the share at or below the largest of a few values is 1 in the ordinary case
+    side = "below its 5 %" if share < 0.05 else "above its 95 %"
+    return (
+        f"The model's own value of {item.title} ({item.scale.text(item.record.base)}) lies {side} quantile: the base case "
+        "and the distribution tell different stories."
+    )
+
+
+def _rest(count: int, what: str) -> list[str]:
+    left = count - _MOST_NAMED
+    return [f"And {left:,} more {what}."] if left > 0 else []
+
+
+def _named(names: list[str]) -> str:
+    if len(names) <= _MOST_NAMED:
+        return ", ".join(names)
+    return f"{', '.join(names[:_MOST_NAMED])} and {len(names) - _MOST_NAMED:,} more"
