@@ -14,7 +14,7 @@ FloatArray = npt.NDArray[np.float64]
 IntArray = npt.NDArray[np.int64]
 
 _STEPS = (10, 20, 25, 50, 100)
-_FEWEST, _MOST = 12, 40
+_FEWEST, _MOST = 12, 30
 _LONG_TAIL = 1.5
 _LARGEST_MULTIPLE = 1e12
 
