@@ -61,12 +61,12 @@ def _bins(page: Page, output: OutputFigures, found: Histogram, block: Block) -> 
 def bin_label(scale: Scale, lower: float, upper: float) -> str:
     """What a bin is called."""
     if lower == upper:
-        return scale.text(lower)
+        return scale.bare_text(lower)
     if math.isinf(lower):
-        return f"below {scale.text(upper)}"
+        return f"below {scale.bare_text(upper)}"
     if math.isinf(upper):
-        return f"above {scale.text(lower)}"
-    return f"{scale.text(lower)} to {scale.text(upper)}"
+        return f"above {scale.bare_text(lower)}"
+    return f"{scale.bare_text(lower)} to {scale.bare_text(upper)}"
 
 
 def _moments(page: Page, output: OutputFigures, block: Block) -> None:

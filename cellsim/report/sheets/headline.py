@@ -15,7 +15,7 @@ from cellsim.report.wording import CAUTION, output_sentence, question, warnings
 _TITLES = ("Output", "Base case", "Mean", "10 %", "Median", "90 %", "Draws below base case")
 _LAST = len(_TITLES) - 1
 _SENTENCES = 6
-_CHART_ROWS = 17
+_CHART_ROWS = 18
 
 
 def write_headline(book: Book) -> None:
@@ -37,7 +37,7 @@ def write_headline(book: Book) -> None:
     row += 2
     if book.figures.outputs[0].summary is not None:
         _charts(book, page, row)
-        row += 2 * _CHART_ROWS
+        row += 2 * _CHART_ROWS + 1
     for k, name in enumerate(book.sheet_names[1:]):
         page.link(row + k // 4, k % 4, name, f"To {name}")
 
