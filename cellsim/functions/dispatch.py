@@ -52,7 +52,8 @@ def call_function(
             parameter = function.parameter(position)
             argument = raw
             if parameter.kind in LIFTED:
-                argument = _single(raw, context, whole_arrays=whole_arrays)
+                single = _strictly_single if function.strict else _single
+                argument = single(raw, context, whole_arrays=whole_arrays)
                 if isinstance(argument, Array):
                     lifted.append(position)
                     prepared.append(argument)
@@ -101,6 +102,22 @@ def _single(argument: Argument, context: Context, *, whole_arrays: bool) -> Scal
     if isinstance(argument, LambdaValue):
         return ErrorValue.CALC
     return argument  # type: ignore[return-value]
+
+
+def _strictly_single(
+    argument: Argument, context: Context, *, whole_arrays: bool
+) -> Scalar | Array:
+    """A single value for a strict function.
+
+    Raises:
+        Fault: It is a logical or a range of several cells (#VALUE!).
+    """
+    if isinstance(argument, Reference) and (len(argument.areas) != 1 or argument.areas[0].size > 1):
+        raise Fault(ErrorValue.VALUE)
+    value = _single(argument, context, whole_arrays=whole_arrays)
+    if isinstance(value, bool):
+        raise Fault(ErrorValue.VALUE)
+    return value
 
 
 def _whole_number(value: Scalar, context: Context) -> int:

@@ -168,6 +168,7 @@ class FunctionRecord:
         volatile: Whether its value may change without a change of its arguments.
         gives_reference: Whether it may return a reference (OFFSET, INDEX and their like).
         group: For a variadic parameter, arguments come in groups of so many.
+        strict: Whether single values may be neither logicals nor ranges of several cells (#VALUE!).
         result: "number", "text" or "logical" where the kernel's annotation says so, else "any".
         documentation: The first line of the kernel's docstring.
         module: The family module that declares it.
@@ -182,6 +183,7 @@ class FunctionRecord:
     volatile: bool
     gives_reference: bool
     group: int
+    strict: bool
     result: str
     documentation: str
     module: str
@@ -207,6 +209,7 @@ def spreadsheet_function(
     volatile: bool = False,
     gives_reference: bool = False,
     group: int = 1,
+    strict: bool = False,
     least: int | None = None,
     most: int | None = None,
 ) -> Callable[[Kernel], Kernel]:
@@ -217,6 +220,8 @@ def spreadsheet_function(
         volatile: The value may change without a change of its arguments.
         gives_reference: The kernel may return a Reference.
         group: Arguments of the variadic parameter come in groups of so many.
+        strict: Arguments in places for single values may be neither logicals nor ranges of several
+            cells (#VALUE!), as in the functions that spreadsheet programs long kept in an add-in.
         least: Fewest arguments, where the signature does not say it.
         most: Most arguments, where the signature does not say it.
 
@@ -244,6 +249,7 @@ def spreadsheet_function(
                 volatile=volatile,
                 gives_reference=gives_reference,
                 group=group,
+                strict=strict,
                 result=result,
                 documentation=(inspect.getdoc(kernel) or "").split("\n")[0],
                 module=kernel.__module__.rpartition(".")[2],
