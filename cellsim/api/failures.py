@@ -54,7 +54,9 @@ def trace_failures(
             counts[key] = counts.get(key, 0) + len(places)
             for draw in places[:_EXAMPLES_A_KIND]:
                 if len(examples) < _EXAMPLES:
-                    examples.append(_replay(model, inputs, name, target, error, input_draws, int(draw)))
+                    examples.append(
+                        _replay(model, inputs, name, target, error, input_draws, int(draw))
+                    )
     return Failures(int(failed.any(axis=0).sum()), counts, tuple(examples))
 
 
@@ -80,7 +82,9 @@ def _replay(
         error=str(error),
         place=str(origin) if origin is not None else "",
         formula=text,
-        inputs={input_name: float(input_draws[k, draw]) for k, (input_name, _) in enumerate(inputs)},
+        inputs={
+            input_name: float(input_draws[k, draw]) for k, (input_name, _) in enumerate(inputs)
+        },
     )
 
 

@@ -39,7 +39,9 @@ class Model:
     def __init__(self, path: Path, workbook: Workbook, *, as_of: dt.datetime | None = None) -> None:
         self.path = path
         self.workbook = workbook
-        self.as_of = as_of or workbook.last_saved or dt.datetime.fromtimestamp(path.stat().st_mtime, dt.UTC)
+        self.as_of = (
+            as_of or workbook.last_saved or dt.datetime.fromtimestamp(path.stat().st_mtime, dt.UTC)
+        )
         self._sheets = {sheet.title: sheet for sheet in workbook.sheets}
 
     @cached_property
@@ -61,7 +63,8 @@ class Model:
         """
         calculation = self._calculated
         return {
-            formula.cell.key: calculation.cell_value(*formula.cell) for formula in self.graph.all_formulas()
+            formula.cell.key: calculation.cell_value(*formula.cell)
+            for formula in self.graph.all_formulas()
         }
 
     @cached_property
@@ -105,7 +108,10 @@ class Model:
             tree = self.parse(text)
         except FormulaSyntaxError as error:
             raise ModelError(
-                Problem("", f"{text!r} is no cell: expected an address such as Sheet!C6 or a defined name")
+                Problem(
+                    "",
+                    f"{text!r} is no cell: expected an address such as Sheet!C6 or a defined name",
+                )
             ) from error
         self._check_sheet(text, tree)
         frame = Frame(self.base, self.home)
@@ -125,12 +131,16 @@ class Model:
         prefix = getattr(tree, "prefix", None)
         if isinstance(tree, (CellReference, RangeReference)) and prefix is None:
             if len(self._sheets) > 1:
-                raise ModelError(Problem("", f"{text!r} does not say on which sheet it lies", "write Sheet!C6"))
+                raise ModelError(
+                    Problem("", f"{text!r} does not say on which sheet it lies", "write Sheet!C6")
+                )
             return
         if prefix is not None and self.graph.resolver.sheet(prefix.first) is None:
             near = difflib.get_close_matches(prefix.first, self._sheets, n=1, cutoff=0.4)
             hint = f"did you mean {near[0]!r}?" if near else f"sheets: {', '.join(self._sheets)}"
-            raise ModelError(Problem("", f"there is no sheet {prefix.first!r} in {self.path.name}", hint))
+            raise ModelError(
+                Problem("", f"there is no sheet {prefix.first!r} in {self.path.name}", hint)
+            )
 
     def _unknown(self, text: str, tree: Node) -> Problem:
         if isinstance(tree, NameReference):
@@ -179,4 +189,3 @@ def load(path: Path | str, *, as_of: dt.datetime | None = None) -> Model:
     """
     path = Path(path)
     return Model(path, read_workbook(path), as_of=as_of)
-

@@ -82,7 +82,9 @@ class Questions:
             for spec, cell in zip(sidecar.inputs, self._cells, strict=True)
             if (found := self._input(spec, cell)) is not None
         ]
-        self.outputs = [found for spec in sidecar.outputs if (found := self._output(spec)) is not None]
+        self.outputs = [
+            found for spec in sidecar.outputs if (found := self._output(spec)) is not None
+        ]
         self._raise()
 
     def _raise(self) -> None:
@@ -101,7 +103,11 @@ class Questions:
             return None
         if self._model.graph.source_of(cell) is not None and not spec.replace_formula:
             formula = self._model.graph.formula(cell)
-            text = "=" + formula.source.text[:60] if formula is not None else "part of an array formula"
+            text = (
+                "=" + formula.source.text[:60]
+                if formula is not None
+                else "part of an array formula"
+            )
             self._problems.append(
                 Problem(
                     place,
@@ -133,7 +139,10 @@ class Questions:
             if cell in first:
                 place = self._place(spec.lines, "cell", spec.line)
                 self._problems.append(
-                    Problem(place, f"the inputs {first[cell]!r} and {spec.name!r} are both the cell {cell}")
+                    Problem(
+                        place,
+                        f"the inputs {first[cell]!r} and {spec.name!r} are both the cell {cell}",
+                    )
                 )
             first.setdefault(cell, spec.name)
 
@@ -166,7 +175,9 @@ class Questions:
             return None if None in values else tuple(value for value in values if value is not None)
         return self._number(spec, cell, key, parameter)
 
-    def _number(self, spec: InputSpec, cell: CellRef, key: str, number: Number | None) -> float | None:
+    def _number(
+        self, spec: InputSpec, cell: CellRef, key: str, number: Number | None
+    ) -> float | None:
         if not isinstance(number, Formula):
             return number
         place = f"{self._sidecar.path.name}, line {number.line}"
@@ -191,8 +202,16 @@ class Questions:
             self._problems += [Problem(place, p.message, p.hint) for p in error.problems]
             return None
         if isinstance(value, bool) or not isinstance(value, float):
-            shown = "blank" if value is None else str(value) if isinstance(value, ErrorValue) else repr(value)
-            self._problems.append(Problem(place, f"the formula ={text} gives {shown}, expected a number"))
+            shown = (
+                "blank"
+                if value is None
+                else str(value)
+                if isinstance(value, ErrorValue)
+                else repr(value)
+            )
+            self._problems.append(
+                Problem(place, f"the formula ={text} gives {shown}, expected a number")
+            )
             return None
         return value
 
@@ -201,7 +220,9 @@ class Questions:
         areas = graph.areas_of(self._model.parse(text), self._model.home)
         if any(area.holds(*cell) for area in areas for cell in inputs):
             return True
-        sources = [source for area in areas for source in graph.formula_cells_in(graph.resolver.clip(area))]
+        sources = [
+            source for area in areas for source in graph.formula_cells_in(graph.resolver.clip(area))
+        ]
         affected = affected_cells(graph, inputs, sources, count_dynamic=False)
         return not affected.isdisjoint(sources)
 
@@ -222,7 +243,9 @@ class Questions:
             return None
         self._check_reached(spec, target)
         thresholds = tuple(
-            threshold for number in spec.thresholds if (threshold := self._threshold(spec, number)) is not None
+            threshold
+            for number in spec.thresholds
+            if (threshold := self._threshold(spec, number)) is not None
         )
         return FoundOutput(spec, target, base, thresholds)
 
@@ -233,7 +256,9 @@ class Questions:
             areas = graph.areas_of(target.tree, target.cell)
             if any(area.holds(*cell) for area in areas for cell in self._cells):
                 return
-            sources = [s for area in areas for s in graph.formula_cells_in(graph.resolver.clip(area))]
+            sources = [
+                s for area in areas for s in graph.formula_cells_in(graph.resolver.clip(area))
+            ]
             named = f"the formula of the output {spec.name!r}"
         else:
             if target in self._cells:

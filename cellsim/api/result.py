@@ -56,14 +56,22 @@ class Result:
         """
         wrong = [p for p in probabilities if not 0 <= p <= 1]
         if wrong:
-            raise UsageError(Problem("probabilities", f"expected numbers from 0 to 1, got {wrong[0]}"))
+            raise UsageError(
+                Problem("probabilities", f"expected numbers from 0 to 1, got {wrong[0]}")
+            )
         columns = {}
         for record, values in zip(self.records.outputs, self.records.output_draws, strict=True):
             kept = values[np.isfinite(values)]
-            columns[record.name] = np.quantile(kept, probabilities) if len(kept) else np.full(len(probabilities), np.nan)
+            columns[record.name] = (
+                np.quantile(kept, probabilities)
+                if len(kept)
+                else np.full(len(probabilities), np.nan)
+            )
         return pd.DataFrame(columns, index=pd.Index(probabilities, name="probability"))
 
-    def write(self, path: Path | str, *, overwrite: bool = False, draws_sheet: bool = False) -> None:
+    def write(
+        self, path: Path | str, *, overwrite: bool = False, draws_sheet: bool = False
+    ) -> None:
         """Write the results workbook.
 
         Args:

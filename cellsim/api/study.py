@@ -81,7 +81,9 @@ class Study:
         key = (threads, block)
         engine = self._engines.get(key)
         if engine is None:
-            engine = BlockEngine(self.compiled.program, self.model.base, threads=threads, block=block)
+            engine = BlockEngine(
+                self.compiled.program, self.model.base, threads=threads, block=block
+            )
             self._engines[key] = engine
         return engine
 
@@ -118,7 +120,10 @@ class Study:
     def _base_of(self, found: FoundInput) -> float:
         if found.base is None:
             raise UsageError(
-                Problem(found.spec.name, f"the cell {found.cell} holds no number, so its draws cannot be left out")
+                Problem(
+                    found.spec.name,
+                    f"the cell {found.cell} holds no number, so its draws cannot be left out",
+                )
             )
         return found.base
 
@@ -126,12 +131,16 @@ class Study:
         names = [found.spec.name for found in self.inputs]
         unknown = [name for name in draws if name not in names]
         if unknown:
-            raise UsageError(Problem(unknown[0], "is no input of the study", f"inputs: {', '.join(names)}"))
+            raise UsageError(
+                Problem(unknown[0], "is no input of the study", f"inputs: {', '.join(names)}")
+            )
         arrays = {name: np.asarray(values, dtype=np.float64) for name, values in draws.items()}
         shapes = {array.shape for array in arrays.values()}
         if len(shapes) != 1 or len(next(iter(shapes))) != 1 or next(iter(shapes))[0] == 0:
             shown = ", ".join(f"{name} {array.shape}" for name, array in arrays.items()) or "none"
-            raise UsageError(Problem("", f"expected arrays of one equal length by input name, got {shown}"))
+            raise UsageError(
+                Problem("", f"expected arrays of one equal length by input name, got {shown}")
+            )
         return arrays
 
     def run(
@@ -163,7 +172,9 @@ class Study:
         if count < 1:
             raise UsageError(Problem("draws", f"expected at least 1, got {count}"))
         if not 0 <= key < 2**64:
-            raise UsageError(Problem("seed", f"expected a whole number from 0 to 2^64 - 1, got {key}"))
+            raise UsageError(
+                Problem("seed", f"expected a whole number from 0 to 2^64 - 1, got {key}")
+            )
         report = progress or (lambda stage, done, whole: None)
         started = dt.datetime.now(dt.UTC)
         compiled = self.compiled
@@ -283,7 +294,8 @@ class Study:
             places = sorted(names.index(name) for name in section.inputs)
             pairs.update({(i, j): None for k, i in enumerate(places) for j in places[k + 1 :]})
         return tuple(
-            DependencePair(names[i], names[j], float(asked[i, j]), float(achieved[i, j])) for i, j in pairs
+            DependencePair(names[i], names[j], float(asked[i, j]), float(achieved[i, j]))
+            for i, j in pairs
         )
 
     def _record(
@@ -308,7 +320,11 @@ class Study:
             as_of=self.model.as_of,
             started=started,
             command=command,
-            versions={"cellsim": version.VERSION, "Python": platform.python_version(), "NumPy": np.__version__},
+            versions={
+                "cellsim": version.VERSION,
+                "Python": platform.python_version(),
+                "NumPy": np.__version__,
+            },
             engine={
                 "evaluator": "NumPy over blocks of draws",
                 "threads": str(engine.threads),
@@ -325,7 +341,8 @@ class Study:
                 "summarise": self._timings.get("trace", 0.0),
             },
             slow_cells=tuple(
-                (str(expression.cell), f"evaluated draw by draw: {expression.reason}") for expression in program.slow
+                (str(expression.cell), f"evaluated draw by draw: {expression.reason}")
+                for expression in program.slow
             ),
         )
 
@@ -352,7 +369,11 @@ def open_study(path: Path | str) -> Study:
     sidecar = load_sidecar(path)
     if not sidecar.workbook.exists():
         raise SidecarError(
-            Problem(f"{path.name}, [model]", f"the workbook {sidecar.workbook} is not there", _others(sidecar.workbook))
+            Problem(
+                f"{path.name}, [model]",
+                f"the workbook {sidecar.workbook} is not there",
+                _others(sidecar.workbook),
+            )
         )
     start = time.perf_counter()
     model = load(sidecar.workbook, as_of=as_datetime(sidecar.as_of))
@@ -367,5 +388,8 @@ def _others(path: Path) -> str:
     if not folder.is_dir():
         return f"there is no folder {folder}"
     books = sorted(p.name for p in folder.iterdir() if p.suffix in {".xlsx", ".xlsm"})
-    return f"workbooks there: {', '.join(books[:8])}" if books else "there is no workbook in that folder"
-
+    return (
+        f"workbooks there: {', '.join(books[:8])}"
+        if books
+        else "there is no workbook in that folder"
+    )

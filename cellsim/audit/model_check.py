@@ -95,7 +95,9 @@ def _disagreements(
         )
         root = not any(source in wrong and source != cell for source in reads)
         text = "=" + (
-            unparse(formula.tree, cell.row, cell.column) if formula.tree is not None else formula.source.text
+            unparse(formula.tree, cell.row, cell.column)
+            if formula.tree is not None
+            else formula.source.text
         )
         rows.append(Disagreement(str(cell), text, formula.stored, found, root))
     return sorted(rows, key=lambda row: not row.root)
@@ -110,7 +112,9 @@ def reason_for(name: str) -> str:
     """Why a function is not calculated, for the user."""
     if not name:
         return "the formula could not be read"
-    return unsupported_reason(name) or "no such function is known: a macro or an add-in may define it"
+    return (
+        unsupported_reason(name) or "no such function is known: a macro or an add-in may define it"
+    )
 
 
 def _notes(graph: Graph, calculation: Calculation) -> Iterable[str]:

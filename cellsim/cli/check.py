@@ -41,14 +41,18 @@ def _print(model: Path, outcome: ModelCheck, limit: int) -> None:
         f"({share:.3%})"
     )
     if outcome.volatile:
-        typer.echo(f"left out: {outcome.volatile:,} volatile formulas and those that depend on them")
+        typer.echo(
+            f"left out: {outcome.volatile:,} volatile formulas and those that depend on them"
+        )
     if outcome.without_value:
         typer.echo(f"left out: {outcome.without_value:,} formulas without a stored value")
     for note in outcome.notes:
         typer.echo(f"note: {note}")
     if outcome.unsupported:
         typer.echo("\nfunctions that are not calculated; the stored value stands in:")
-        print_table(("function", "cells", "reason"), [(n, f"{c:,}", r) for n, c, r in outcome.unsupported])
+        print_table(
+            ("function", "cells", "reason"), [(n, f"{c:,}", r) for n, c, r in outcome.unsupported]
+        )
     if outcome.disagreements:
         roots = sum(row.root for row in outcome.disagreements)
         typer.echo(
@@ -74,7 +78,8 @@ def as_plain(outcome: ModelCheck) -> dict[str, object]:
         "volatile": outcome.volatile,
         "without_value": outcome.without_value,
         "unsupported": [
-            {"function": name, "cells": count, "reason": reason} for name, count, reason in outcome.unsupported
+            {"function": name, "cells": count, "reason": reason}
+            for name, count, reason in outcome.unsupported
         ],
         "notes": list(outcome.notes),
         "disagreements": [

@@ -41,7 +41,9 @@ def _print_version(wanted: bool) -> None:
 def _options(
     version: Annotated[
         bool,
-        typer.Option("--version", callback=_print_version, is_eager=True, help="Print the version and stop."),
+        typer.Option(
+            "--version", callback=_print_version, is_eager=True, help="Print the version and stop."
+        ),
     ] = False,
 ) -> None:
     del version

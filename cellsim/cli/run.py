@@ -28,11 +28,15 @@ SHOWN_PROBABILITIES = (0.1, 0.5, 0.9)
 
 def run(
     study: Annotated[Path, typer.Argument(help="The side-car, a .toml file.")],
-    draws: Annotated[int | None, typer.Option(help="Number of draws, in place of the side-car's.")] = None,
+    draws: Annotated[
+        int | None, typer.Option(help="Number of draws, in place of the side-car's.")
+    ] = None,
     seed: Annotated[int | None, typer.Option(help="The seed, in place of the side-car's.")] = None,
     results: Annotated[Path | None, typer.Option(help="Where the results workbook goes.")] = None,
     overwrite: Annotated[bool, typer.Option(help="Replace an existing results workbook.")] = False,
-    draws_sheet: Annotated[bool, typer.Option(help="Write every draw into the workbook too.")] = False,
+    draws_sheet: Annotated[
+        bool, typer.Option(help="Write every draw into the workbook too.")
+    ] = False,
     threads: Annotated[int | None, typer.Option(min=1, help="How many threads work.")] = None,
     as_json: Annotated[bool, typer.Option("--json", help="Print for machines.")] = False,
     quiet: Annotated[bool, typer.Option(help="Print nothing but errors.")] = False,
@@ -70,7 +74,9 @@ def _check_target(target: Path, *, overwrite: bool) -> None:
     if target.suffix.lower() != ".xlsx":
         raise RunError(Problem(str(target), "the results workbook's name must end in .xlsx"))
     if target.exists() and not overwrite:
-        raise RunError(Problem(str(target), "exists already", "add --overwrite to replace it, or --results"))
+        raise RunError(
+            Problem(str(target), "exists already", "add --overwrite to replace it, or --results")
+        )
     if not target.parent.is_dir():
         raise RunError(Problem(str(target.parent), "there is no such folder"))
 
@@ -81,7 +87,12 @@ def _progress(*, enabled: bool) -> Iterator[Report]:
     if not enabled or not console.is_terminal:
         yield lambda stage, done, whole: None
         return
-    columns = (TextColumn("{task.description}"), BarColumn(), TextColumn("{task.percentage:>3.0f} %"), TimeRemainingColumn())
+    columns = (
+        TextColumn("{task.description}"),
+        BarColumn(),
+        TextColumn("{task.percentage:>3.0f} %"),
+        TimeRemainingColumn(),
+    )
     with Progress(*columns, console=console, transient=True) as bar:
         task = bar.add_task("reading", total=None)
 
@@ -98,9 +109,16 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
     for record, values in zip(records.outputs, records.output_draws, strict=True):
         kept = values[np.isfinite(values)]
         name = f"{record.name} ({record.unit})" if record.unit else record.name
-        base = shown_number(record.base) if isinstance(record.base, float) else shown_value(record.base)
+        base = (
+            shown_number(record.base)
+            if isinstance(record.base, float)
+            else shown_value(record.base)
+        )
         mean = shown_number(float(kept.mean())) if len(kept) else "-"
-        spread = [shown_number(float(quantiles[record.name].iloc[k])) for k in range(len(SHOWN_PROBABILITIES))]
+        spread = [
+            shown_number(float(quantiles[record.name].iloc[k]))
+            for k in range(len(SHOWN_PROBABILITIES))
+        ]
         rows.append((name, base, mean, *spread, f"{len(values) - len(kept):,}"))
     print_table(("output", "base case", "mean", "10 %", "median", "90 %", "failed draws"), rows)
     for record, values in zip(records.outputs, records.output_draws, strict=True):
@@ -108,9 +126,13 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
         for threshold in record.thresholds:
             if len(kept):
                 above = float((kept > threshold.value).mean())
-                typer.echo(f"{record.name} above {threshold.text} ({shown_number(threshold.value)}): {above:.2%} of draws")
+                typer.echo(
+                    f"{record.name} above {threshold.text} ({shown_number(threshold.value)}): {above:.2%} of draws"
+                )
     check = records.check
-    typer.echo(f"model check: {check.agreeing:,} of {check.compared:,} formulas agree with their stored values")
+    typer.echo(
+        f"model check: {check.agreeing:,} of {check.compared:,} formulas agree with their stored values"
+    )
     for place, reason in records.record.slow_cells[:5]:
         typer.echo(f"slow: {place}: {reason}")
     split = ", ".join(f"{stage} {value:.2f}" for stage, value in records.record.timings.items())
@@ -138,10 +160,13 @@ def _as_plain(outcome: Result, target: Path, writing: float) -> dict[str, object
                 "failed_draws": int(np.isnan(values).sum()),
                 "mean": _finite(np.nanmean(values)) if not np.isnan(values).all() else None,
                 "quantiles": {
-                    str(p): _finite(outcome.quantiles([p])[record.name].iloc[0]) for p in SHOWN_PROBABILITIES
+                    str(p): _finite(outcome.quantiles([p])[record.name].iloc[0])
+                    for p in SHOWN_PROBABILITIES
                 },
                 "above": {
-                    t.text: float((values[np.isfinite(values)] > t.value).mean()) if np.isfinite(values).any() else None
+                    t.text: float((values[np.isfinite(values)] > t.value).mean())
+                    if np.isfinite(values).any()
+                    else None
                     for t in record.thresholds
                 },
             }

@@ -35,7 +35,12 @@ class BlockEngine:
     """
 
     def __init__(
-        self, program: Program, base: Calculation, *, threads: int | None = None, block: int | None = None
+        self,
+        program: Program,
+        base: Calculation,
+        *,
+        threads: int | None = None,
+        block: int | None = None,
     ) -> None:
         self._program = program
         self._base = base

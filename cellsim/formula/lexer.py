@@ -25,7 +25,10 @@ class Token:
 _PATTERNS = (
     ("space", r"[ \t\r\n\u00a0]+"),
     ("text", r'"(?:[^"]|"")*"'),
-    ("error", r"#(?:NULL!|DIV/0!|VALUE!|REF!|NAME\?|NUM!|N/A|GETTING_DATA|SPILL!|CONNECT!|BLOCKED!|UNKNOWN!|FIELD!|CALC!|BUSY!)"),
+    (
+        "error",
+        r"#(?:NULL!|DIV/0!|VALUE!|REF!|NAME\?|NUM!|N/A|GETTING_DATA|SPILL!|CONNECT!|BLOCKED!|UNKNOWN!|FIELD!|CALC!|BUSY!)",
+    ),
     ("number", r"(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?(?![\w.])"),
     ("word", r"[$\w\\?.]+"),
     ("quoted", r"'(?:[^']|'')*'"),
@@ -37,7 +40,9 @@ _PATTERNS = (
     ("semicolon", r";"),
     ("bang", r"!"),
 )
-_TOKEN = re.compile("|".join(f"(?P<{name}>{pattern})" for name, pattern in _PATTERNS), re.IGNORECASE)
+_TOKEN = re.compile(
+    "|".join(f"(?P<{name}>{pattern})" for name, pattern in _PATTERNS), re.IGNORECASE
+)
 
 
 class LexicalError(Exception):

@@ -70,15 +70,20 @@ def parse_formula(text: str, row: int, column: int, place: str = "") -> Node:
     Raises:
         FormulaSyntaxError: It does not follow the grammar; the message marks the spot.
     """
-    body = text[1:] if text.startswith("=") else text
+    body = text.removeprefix("=")
     if len(body) > LONGEST_FORMULA:
         raise FormulaSyntaxError(
-            Problem(place, f"the formula has {len(body):,} characters; at most {LONGEST_FORMULA:,} are allowed")
+            Problem(
+                place,
+                f"the formula has {len(body):,} characters; at most {LONGEST_FORMULA:,} are allowed",
+            )
         )
     try:
         tokens = tokenize(body)
     except LexicalError as error:
-        raise _syntax_error(body, error.spot, place, "this begins nothing that a formula can hold") from None
+        raise _syntax_error(
+            body, error.spot, place, "this begins nothing that a formula can hold"
+        ) from None
     return _Parser(body, tokens, row, column, place).parse()
 
 
@@ -161,7 +166,11 @@ class _Parser:
             return token.text
         if token.kind == "comma" and not in_arguments:
             return ","
-        if spaced and self._is_reference(left) and token.kind in {"word", "quoted", "open", "bracket", "error"}:
+        if (
+            spaced
+            and self._is_reference(left)
+            and token.kind in {"word", "quoted", "open", "bracket", "error"}
+        ):
             return " "
         return ""
 
@@ -222,7 +231,11 @@ class _Parser:
             rows = self._whole_rows(None)
             if rows is not None:
                 return rows
-        if self._peek().text == ":" and self._peek(2).kind == "word" and self._peek(3).kind == "bang":
+        if (
+            self._peek().text == ":"
+            and self._peek(2).kind == "word"
+            and self._peek(3).kind == "bang"
+        ):
             return self._named()
         if self._peek().kind == "bang":
             return self._named()
@@ -233,7 +246,11 @@ class _Parser:
         token = self._token
         self._position += 1
         value = ERROR_BY_SPELLING[token.text.upper()]
-        if value is ErrorValue.REF and self._token.kind == "word" and parse_address(self._token.text):
+        if (
+            value is ErrorValue.REF
+            and self._token.kind == "word"
+            and parse_address(self._token.text)
+        ):
             self._position += 1  # what is left of a reference whose sheet is lost
         return ErrorLiteral(value)
 
@@ -334,7 +351,7 @@ class _Parser:
         if token.kind == "bracket":
             self._position += 1
             return self._structured(None, token)
-        if token.kind not in {"word"}:
+        if token.kind != "word":
             raise self._error("expected a reference or a name")
         following = self._peek()
         if following.kind == "open":
@@ -413,7 +430,12 @@ class _Parser:
         return self._reference(prefix, row, column, not match[3], not match[1])
 
     def _reference(
-        self, prefix: SheetPrefix | None, row: int, column: int, row_relative: bool, column_relative: bool
+        self,
+        prefix: SheetPrefix | None,
+        row: int,
+        column: int,
+        row_relative: bool,
+        column_relative: bool,
     ) -> CellReference:
         return CellReference(
             prefix,
@@ -443,7 +465,7 @@ class _Parser:
         if self._peek().text != ":" or first is None or last is None:
             return None
         rows = int(first[2]), int(last[2])
-        if not (1 <= min(rows) and max(rows) <= LAST_ROW):
+        if not (min(rows) >= 1 and max(rows) <= LAST_ROW):
             return None
         self._position += 3
         return RangeReference(
@@ -456,7 +478,9 @@ class _Parser:
     def _structured(self, table: str | None, bracket: Token) -> Node:
         node = parse_structured(table, bracket.text)
         if node is None:
-            raise _syntax_error(self._text, bracket.start, self._place, "this is no reference into a table")
+            raise _syntax_error(
+                self._text, bracket.start, self._place, "this is no reference into a table"
+            )
         return node
 
     def _call(self, token: Token, prefix: SheetPrefix | None) -> Node:

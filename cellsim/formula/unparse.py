@@ -63,7 +63,9 @@ def _atom(node: Node, row: int, column: int) -> str:
     if isinstance(node, StructuredReference):
         return _structured(node)
     if isinstance(node, ArrayLiteral):
-        return "{" + ";".join(",".join(_scalar(item) for item in items) for items in node.rows) + "}"
+        return (
+            "{" + ";".join(",".join(_scalar(item) for item in items) for items in node.rows) + "}"
+        )
     if isinstance(node, MissingArgument):
         return ""
     return _scalar(node.value)
@@ -77,7 +79,11 @@ def _scalar(value: Scalar) -> str:
     if isinstance(value, bool):
         return "TRUE" if value else "FALSE"
     if isinstance(value, float):
-        return f"{int(value)}" if value == int(value) and abs(value) < 1e15 else repr(value).upper().replace("E+", "E")
+        return (
+            f"{int(value)}"
+            if value == int(value) and abs(value) < 1e15
+            else repr(value).upper().replace("E+", "E")
+        )
     if isinstance(value, ErrorValue):
         return str(value)
     if value is None:
@@ -139,4 +145,3 @@ def _item(item: str) -> str:
 
 def _escape(heading: str) -> str:
     return "".join("'" + c if c in "[]#'@" else c for c in heading)
-

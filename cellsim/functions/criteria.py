@@ -86,7 +86,7 @@ def _is_empty(value: Scalar) -> bool:
 
 
 def _equality(operand: Scalar) -> Test:
-    if isinstance(operand, bool) or isinstance(operand, ErrorValue):
+    if isinstance(operand, (bool, ErrorValue)):
         return lambda value: value is operand
     if isinstance(operand, float):
         number = operand

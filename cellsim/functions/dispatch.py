@@ -104,9 +104,7 @@ def _single(argument: Argument, context: Context, *, whole_arrays: bool) -> Scal
     return argument  # type: ignore[return-value]
 
 
-def _strictly_single(
-    argument: Argument, context: Context, *, whole_arrays: bool
-) -> Scalar | Array:
+def _strictly_single(argument: Argument, context: Context, *, whole_arrays: bool) -> Scalar | Array:
     """A single value for a strict function.
 
     Raises:

@@ -41,7 +41,7 @@ class _Section:
     @property
     def is_date(self) -> bool:
         return any(
-            token[0].lower() in "ymdhs" or token[:1] == "[" and _ELAPSED.match(token)
+            token[0].lower() in "ymdhs" or (token[:1] == "[" and _ELAPSED.match(token))
             for token in self.tokens
             if _is_code(token)
         )
@@ -55,7 +55,7 @@ def _is_code(token: str) -> bool:
     if token[:1] in {'"', "\\", "_", "*"}:
         return False
     lowered = token.lower()
-    return lowered[0] in "ymdhs" and set(lowered) <= {lowered[0]} or bool(_ELAPSED.match(token))
+    return (lowered[0] in "ymdhs" and set(lowered) <= {lowered[0]}) or bool(_ELAPSED.match(token))
 
 
 @lru_cache(maxsize=2048)

@@ -9,6 +9,7 @@ method kept inside the interval. No sign change anywhere gives #NUM!.
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Callable, Sequence
 
@@ -98,7 +99,7 @@ def _sign_changes(flows: Sequence[float], times: Sequence[float]) -> int:
     ordered = [
         flow for _, flow in sorted(zip(times, flows, strict=True), key=lambda pair: pair[0]) if flow
     ]
-    return sum((a < 0) != (b < 0) for a, b in zip(ordered, ordered[1:], strict=False))
+    return sum((a < 0) != (b < 0) for a, b in itertools.pairwise(ordered))
 
 
 def _start(flows: Sequence[float], times: Sequence[float]) -> float:

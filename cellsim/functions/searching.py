@@ -90,8 +90,8 @@ def find_nearest(
             continue
         if (
             best is None
-            or (compare(item, items[best]) < 0) == larger
-            and compare(item, items[best]) != 0
+            or ((compare(item, items[best]) < 0) == larger
+            and compare(item, items[best]) != 0)
         ):
             best = place
     return best

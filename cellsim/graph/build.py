@@ -115,7 +115,8 @@ class Graph:
                     tree = parse(source.text, source.origin[0], source.origin[1], "")
                 except FormulaSyntaxError as error:
                     self.problems += [
-                        Problem(str(cell), problem.message, problem.hint) for problem in error.problems
+                        Problem(str(cell), problem.message, problem.hint)
+                        for problem in error.problems
                     ]
             area = source.data_table.area if source.data_table else source.array_area
             formulas[position] = Formula(
@@ -248,8 +249,20 @@ class Graph:
             return []
         area = table.area
         found = [
-            RangeRef(area.sheet, area.first_row - 1, area.first_column - 1, area.first_row - 1, area.last_column),
-            RangeRef(area.sheet, area.first_row, area.first_column - 1, area.last_row, area.first_column - 1),
+            RangeRef(
+                area.sheet,
+                area.first_row - 1,
+                area.first_column - 1,
+                area.first_row - 1,
+                area.last_column,
+            ),
+            RangeRef(
+                area.sheet,
+                area.first_row,
+                area.first_column - 1,
+                area.last_row,
+                area.first_column - 1,
+            ),
         ]
         found += [
             range_of(CellRef(area.sheet, *position))
@@ -261,7 +274,8 @@ class Graph:
     def is_dynamic(self, formula: Formula) -> bool:
         """Whether a formula reads cells that its references do not name, names followed."""
         return formula.data_table is not None or (
-            formula.tree is not None and self._any(formula.tree, formula.cell, lambda facts: facts.dynamic, 0)
+            formula.tree is not None
+            and self._any(formula.tree, formula.cell, lambda facts: facts.dynamic, 0)
         )
 
     def functions_of(self, formula: Formula) -> frozenset[str]:
@@ -286,7 +300,11 @@ class Graph:
         for name in facts.names:
             if isinstance(name, NameReference):
                 record = self.resolver.name(name.name, name.prefix, cell.sheet)
-                if record is not None and record.tree is not None and self._any(record.tree, cell, test, depth + 1):
+                if (
+                    record is not None
+                    and record.tree is not None
+                    and self._any(record.tree, cell, test, depth + 1)
+                ):
                     return True
         return False
 

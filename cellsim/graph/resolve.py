@@ -43,12 +43,15 @@ class Resolver:
             self._tables_by_sheet.setdefault(table.area.sheet, []).append(table)
         self._external = {link.number: link for link in workbook.external}
         self._external_titles = {
-            link.number: {title.casefold(): title for title in link.sheets} for link in workbook.external
+            link.number: {title.casefold(): title for title in link.sheets}
+            for link in workbook.external
         }
         self._names: dict[tuple[str | None, str], NameRecord] = {}
         for definition in workbook.names:
             scope = definition.scope.casefold() if definition.scope is not None else None
-            self._names[scope, definition.name.casefold()] = NameRecord(definition, _parse_name(definition, cache))
+            self._names[scope, definition.name.casefold()] = NameRecord(
+                definition, _parse_name(definition, cache)
+            )
         self.last_row = max((sheet.last_row for sheet in workbook.sheets), default=0) or 1
         self.last_column = max((sheet.last_column for sheet in workbook.sheets), default=0) or 1
 
@@ -164,7 +167,9 @@ _CLIP_ROWS = 60_000
 _CLIP_COLUMNS = 4_000
 
 
-def bounds_of(node: CellReference | RangeReference, row: int, column: int) -> tuple[int, int, int, int]:
+def bounds_of(
+    node: CellReference | RangeReference, row: int, column: int
+) -> tuple[int, int, int, int]:
     """First row, first column, last row, last column of a reference in a formula at a position.
 
     A relative reference that leaves the sheet comes in again on its other side.
@@ -206,7 +211,9 @@ def _table_columns(table: Table, node: StructuredReference) -> tuple[int, int] |
     return table.area.first_column + first, table.area.first_column + last
 
 
-def _table_rows(table: Table, items: tuple[str, ...], cell: CellRef) -> tuple[int, int] | ErrorValue:
+def _table_rows(
+    table: Table, items: tuple[str, ...], cell: CellRef
+) -> tuple[int, int] | ErrorValue:
     area = table.area
     data = area.first_row + table.header_rows, area.last_row - table.totals_rows
     if "#THIS ROW" in items:

@@ -111,7 +111,9 @@ class Buffers:
             return self.array(operand.number)
         array = self._constants.get(operand)
         if array is None:
-            array = self._constants[operand] = np.array(operand.bits, dtype=np.uint64).view(np.float64)
+            array = self._constants[operand] = np.array(operand.bits, dtype=np.uint64).view(
+                np.float64
+            )
         return array
 
 
@@ -121,5 +123,6 @@ def _aligned_rows(rows: int, block: int) -> list[npt.NDArray[np.float64]]:
     raw = np.zeros(rows * width + _ALIGNMENT, dtype=np.uint8)
     start = -raw.ctypes.data % _ALIGNMENT
     return [
-        raw[start + row * width : start + row * width + block * 8].view(np.float64) for row in range(rows)
+        raw[start + row * width : start + row * width + block * 8].view(np.float64)
+        for row in range(rows)
     ]

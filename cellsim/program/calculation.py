@@ -305,7 +305,10 @@ class Calculation:
         for row in range(area.rows):
             for column in range(area.columns):
                 position = (area.first_row + row, area.first_column + column)
-                if position == (cell.row, cell.column) or members.get(position) == (cell.row, cell.column):
+                if position == (cell.row, cell.column) or members.get(position) == (
+                    cell.row,
+                    cell.column,
+                ):
                     item = item_at(array, row, column)
                     values[position] = 0.0 if item is None else item
 
@@ -338,7 +341,9 @@ class Calculation:
         return Array(area.rows, area.columns, items)
 
     def _with_overrides(self, overrides: Mapping[CellRef, Scalar]) -> Calculation:
-        merged = {cell: self._values[cell.sheet].get((cell.row, cell.column)) for cell in self._overridden}
+        merged = {
+            cell: self._values[cell.sheet].get((cell.row, cell.column)) for cell in self._overridden
+        }
         merged.update(overrides)
         return Calculation(self._graph, as_of=self._as_of, overrides=merged, seed=self._seed)
 
@@ -358,7 +363,10 @@ class Calculation:
                 if precedent not in inside:
                     self.cell_value(*precedent)
         passes, settled = self._iterate(formulas, from_stored=False)
-        if any(isinstance(self._values[f.cell.sheet][f.cell.row, f.cell.column], ErrorValue) for f in formulas):
+        if any(
+            isinstance(self._values[f.cell.sheet][f.cell.row, f.cell.column], ErrorValue)
+            for f in formulas
+        ):
             stored = {f.cell: f.stored for f in formulas}
             if not any(isinstance(value, ErrorValue) for value in stored.values()):
                 passes, settled = self._iterate(formulas, from_stored=True)

@@ -30,7 +30,9 @@ _NUM = encode_error(ErrorValue.NUM)
 _NA_CODE = np.array(encode_error(ErrorValue.NA)).view(np.uint64) & np.uint64(0xFF)
 
 
-def careful_step(instruction: Instruction, buffers: Buffers, base: Calculation, poison: Poison) -> Step:
+def careful_step(
+    instruction: Instruction, buffers: Buffers, base: Calculation, poison: Poison
+) -> Step:
     """The careful step of an instruction, bound to its buffers.
 
     Args:

@@ -38,6 +38,8 @@ def run_deeply(work: Callable[[], None]) -> None:
             threading.stack_size(size)
             sys.setrecursionlimit(limit)
     if raised and isinstance(raised[0], RecursionError):
-        raise ModelError("formulas depend on each other through computed references too deeply to be followed")
+        raise ModelError(
+            "formulas depend on each other through computed references too deeply to be followed"
+        )
     if raised:
         raise raised[0]

@@ -100,7 +100,9 @@ class ExpressionEvaluator:
         self._cells = [cell for cell, _, _ in expression.reads]
         self._kinds = [kind for _, _, kind in expression.reads]
 
-    def evaluate(self, columns: Sequence[npt.NDArray[np.generic] | float], draws: int) -> list[Scalar]:
+    def evaluate(
+        self, columns: Sequence[npt.NDArray[np.generic] | float], draws: int
+    ) -> list[Scalar]:
         """The value in each draw.
 
         Args:
@@ -163,7 +165,9 @@ def _distinct(
         return None, nothing
     if not arrays:
         return np.zeros(1, dtype=np.intp), np.zeros(draws, dtype=np.intp)
-    bits = np.stack([array.astype(np.float64, copy=False).view(np.uint64) for array in arrays], axis=1)
+    bits = np.stack(
+        [array.astype(np.float64, copy=False).view(np.uint64) for array in arrays], axis=1
+    )
     _, first, inverse = np.unique(bits, axis=0, return_index=True, return_inverse=True)
     if len(first) * 2 > draws:
         return None, nothing

@@ -5,8 +5,25 @@ from __future__ import annotations
 from cellsim.functions.coercion import to_logical, to_number
 from cellsim.functions.operators import binary_scalar
 from cellsim.program.ir import Builder, Constant, Kind, Op, Operand, Register, constant
-from cellsim.program.lowered import Block, Choice, Flagged, Known, Lowered, Numeric, UnlowerableError, Varied
-from cellsim.values import ErrorValue, Fault, LambdaValue, Reference, Scalar, decode_error, encode_error
+from cellsim.program.lowered import (
+    Block,
+    Choice,
+    Flagged,
+    Known,
+    Lowered,
+    Numeric,
+    UnlowerableError,
+    Varied,
+)
+from cellsim.values import (
+    ErrorValue,
+    Fault,
+    LambdaValue,
+    Reference,
+    Scalar,
+    decode_error,
+    encode_error,
+)
 
 ARITHMETIC_OPS = {
     "+": Op.ADD,
@@ -104,7 +121,9 @@ class Emitter:
         """An arithmetic operator on single values."""
         if isinstance(left, Known) and isinstance(right, Known):
             return self._fold(operator, left, right)
-        return self.as_lowered(self.arithmetic_operands(operator, self.number(left), self.number(right)))
+        return self.as_lowered(
+            self.arithmetic_operands(operator, self.number(left), self.number(right))
+        )
 
     def _fold(self, operator: str, left: Known, right: Known) -> Known:
         a, b = left.value, right.value
@@ -150,7 +169,9 @@ class Emitter:
         square = base
         while True:
             if n & 1:
-                result = square if result is None else self.builder.emit(Op.MULTIPLY, result, square)
+                result = (
+                    square if result is None else self.builder.emit(Op.MULTIPLY, result, square)
+                )
             n >>= 1
             if not n:
                 return base if result is None else result
@@ -171,7 +192,9 @@ class Emitter:
             return self._fold(operator, left, right)
         for value, other_first in ((left, False), (right, True)):
             if isinstance(value, Choice):
-                then = self._compare_in_order(operator, value.then, right if not other_first else left, other_first)
+                then = self._compare_in_order(
+                    operator, value.then, right if not other_first else left, other_first
+                )
                 otherwise = self._compare_in_order(
                     operator, value.otherwise, right if not other_first else left, other_first
                 )
@@ -181,16 +204,28 @@ class Emitter:
                 other = right if value is left else left
                 if value is left:
                     return value
-                return self.as_lowered(self._error_after(self.number(other), self._known_number(value)))
+                return self.as_lowered(
+                    self._error_after(self.number(other), self._known_number(value))
+                )
         types = _type_of(left, right), _type_of(right, left)
         if types[0] == types[1]:
-            return Flagged(self._comparison(COMPARISON_OPS[operator], self._ordered(left), self._ordered(right)))
+            return Flagged(
+                self._comparison(
+                    COMPARISON_OPS[operator], self._ordered(left), self._ordered(right)
+                )
+            )
         holds = _HOLDS[operator](types[0] - types[1])
         varying = left if not isinstance(left, Known) else right
         return Flagged(self._always(self.number(varying), holds=holds))
 
-    def _compare_in_order(self, operator: str, part: Lowered, other: Lowered, other_first: bool) -> Lowered:
-        return self.compare(operator, other, part) if other_first else self.compare(operator, part, other)
+    def _compare_in_order(
+        self, operator: str, part: Lowered, other: Lowered, other_first: bool
+    ) -> Lowered:
+        return (
+            self.compare(operator, other, part)
+            if other_first
+            else self.compare(operator, part, other)
+        )
 
     def _ordered(self, value: Lowered) -> Operand:
         return self.exact_number(value)
@@ -227,12 +262,17 @@ class Emitter:
         return Choice(flag, then, otherwise)
 
     def _select_blocks(self, flag: Operand, then: Lowered, otherwise: Lowered) -> Lowered:
-        if not (isinstance(then, Block) and isinstance(otherwise, Block)) or (then.rows, then.columns) != (
+        if not (isinstance(then, Block) and isinstance(otherwise, Block)) or (
+            then.rows,
+            then.columns,
+        ) != (
             otherwise.rows,
             otherwise.columns,
         ):
             raise UnlowerableError("arrays of different shapes")
-        items = tuple(self.select(flag, a, b) for a, b in zip(then.items, otherwise.items, strict=True))
+        items = tuple(
+            self.select(flag, a, b) for a, b in zip(then.items, otherwise.items, strict=True)
+        )
         return Block(then.rows, then.columns, items)
 
     def logical(self, op: Op, left: Operand, right: Operand) -> Operand:
@@ -298,7 +338,9 @@ def _is_numeric(value: Lowered) -> bool:
 
 
 def _is_logical(value: Lowered) -> bool:
-    return isinstance(value, Flagged) or (isinstance(value, Known) and isinstance(value.value, bool))
+    return isinstance(value, Flagged) or (
+        isinstance(value, Known) and isinstance(value.value, bool)
+    )
 
 
 def _depth(value: Lowered) -> int:

@@ -21,8 +21,8 @@ from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import compare_over_draws, settle_cancellation
 from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
-from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
 from cellsim.program.interpret import Frame
+from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
 from cellsim.values import Array, Fault, Scalar, Value, decode_error, encode_error
 
 Step = Callable[[], Any]
@@ -68,7 +68,8 @@ def fast_step(
     if ufunc is not None:
         return partial(ufunc, *operands, out=out)
     constant_error = any(
-        isinstance(operand, Constant) and operand.value != operand.value for operand in instruction.operands
+        isinstance(operand, Constant) and operand.value != operand.value
+        for operand in instruction.operands
     )
     if constant_error:
         return partial(_check_after, _OTHERS[op](operands, out), out, go_carefully)
@@ -110,7 +111,9 @@ def _select(operands: list[AnyArray], out: AnyArray) -> Step:
 
 
 def _select_flag(operands: list[AnyArray], out: AnyArray) -> Step:
-    flag, then, otherwise = (operand.astype(bool) if operand.dtype != bool else operand for operand in operands)
+    flag, then, otherwise = (
+        operand.astype(bool) if operand.dtype != bool else operand for operand in operands
+    )
 
     def step() -> None:
         out[:] = np.where(flag, then, otherwise)
@@ -165,7 +168,11 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
 
 
 def _call(
-    call: KernelCall, buffers: Buffers, base: Calculation, out: AnyArray, go_carefully: type[Exception]
+    call: KernelCall,
+    buffers: Buffers,
+    base: Calculation,
+    out: AnyArray,
+    go_carefully: type[Exception],
 ) -> Step:
     run = kernel_runner(call, buffers, base)
 
@@ -189,7 +196,9 @@ def kernel_runner(call: KernelCall, buffers: Buffers, base: Calculation) -> Call
         arguments = [argument() for argument in gather]
         with np.errstate(all="ignore"):
             result = kernel(*arguments)
-        return _one_by_one(call.function, arguments, buffers.block, base) if result is None else result
+        return (
+            _one_by_one(call.function, arguments, buffers.block, base) if result is None else result
+        )
 
     return run
 
@@ -202,7 +211,12 @@ def _one_by_one(name: str, arguments: list[Any], draws: int, base: Calculation) 
     frame = Frame(base, CellRef(base.graph.resolver.titles()[0], 1, 1))
     with base.lock:
         values = [
-            call_function(function, [_of_draw(argument, draw) for argument in arguments], frame, whole_arrays=True)
+            call_function(
+                function,
+                [_of_draw(argument, draw) for argument in arguments],
+                frame,
+                whole_arrays=True,
+            )
             for draw in range(draws)
         ]
     return as_numbers([value.items[0] if isinstance(value, Array) else value for value in values])  # type: ignore[misc]
@@ -210,7 +224,9 @@ def _one_by_one(name: str, arguments: list[Any], draws: int, base: Calculation) 
 
 def _of_draw(argument: Any, draw: int) -> Value:
     if isinstance(argument, Stack):
-        return Array(argument.rows, argument.columns, [number_of(x) for x in argument.data[:, draw]])
+        return Array(
+            argument.rows, argument.columns, [number_of(x) for x in argument.data[:, draw]]
+        )
     if isinstance(argument, float):
         return number_of(argument)
     if argument.ndim == 2:

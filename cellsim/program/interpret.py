@@ -145,7 +145,10 @@ class Frame:
             row = area.first_row
         if area.first_column == area.last_column:
             column = area.first_column
-        if not (area.first_row <= row <= area.last_row and area.first_column <= column <= area.last_column):
+        if not (
+            area.first_row <= row <= area.last_row
+            and area.first_column <= column <= area.last_column
+        ):
             return ErrorValue.VALUE
         return self.calculation.cell_value(area.sheet, row, column)
 
@@ -155,9 +158,9 @@ class Frame:
             node = self.calculation.graph.cache.parse(text, self.cell.row, self.cell.column, "")
         except FormulaSyntaxError:
             return ErrorValue.REF
-        if isinstance(node, (CellReference, RangeReference, NameReference, StructuredReference)) or (
-            isinstance(node, Binary) and node.operator in REFERENCE_OPERATORS
-        ):
+        if isinstance(
+            node, (CellReference, RangeReference, NameReference, StructuredReference)
+        ) or (isinstance(node, Binary) and node.operator in REFERENCE_OPERATORS):
             value = evaluate(node, self, whole=True)
             return ErrorValue.REF if value is ErrorValue.NAME else value
         return ErrorValue.REF
@@ -186,7 +189,9 @@ class Frame:
         formula = self.calculation.graph.formula(CellRef(sheet, row, column))
         if formula is None or formula.tree is None:
             return False
-        return not self.calculation.graph.facts(formula.tree).functions.isdisjoint({"SUBTOTAL", "AGGREGATE"})
+        return not self.calculation.graph.facts(formula.tree).functions.isdisjoint(
+            {"SUBTOTAL", "AGGREGATE"}
+        )
 
     def sheet_titles(self) -> Sequence[str]:
         """The titles of all sheets in order."""
@@ -289,7 +294,9 @@ def _name(node: NameReference, frame: Frame, _whole: bool) -> Value:
             return ErrorValue.NAME
         if frame.depth >= _MOST_NESTED_CALLS:
             return ErrorValue.NAME
-        return evaluate(record.tree, Frame(frame.calculation, frame.cell, None, frame.depth + 1), whole=True)
+        return evaluate(
+            record.tree, Frame(frame.calculation, frame.cell, None, frame.depth + 1), whole=True
+        )
     table = resolver.table(node.name)
     if table is not None:
         return resolver.structured(StructuredReference(node.name, (), None, None), frame.cell)
@@ -339,7 +346,11 @@ def _postfix(node: Postfix, frame: Frame, whole: bool) -> Value:
 def _binary(node: Binary, frame: Frame, whole: bool) -> Value:
     operator = node.operator
     if operator in REFERENCE_OPERATORS:
-        return combine_references(operator, evaluate(node.left, frame, whole=True), evaluate(node.right, frame, whole=True))
+        return combine_references(
+            operator,
+            evaluate(node.left, frame, whole=True),
+            evaluate(node.right, frame, whole=True),
+        )
     left = operand(node.left, frame, whole=whole)
     right = operand(node.right, frame, whole=whole)
     if isinstance(left, Array) or isinstance(right, Array):
@@ -391,7 +402,9 @@ def _call(node: Call, frame: Frame, whole: bool) -> Value:
     return call_function(function, arguments, frame, whole_arrays=whole)
 
 
-def _argument(node: Node, function: FunctionRecord, position: int, frame: Frame, whole: bool) -> Argument:
+def _argument(
+    node: Node, function: FunctionRecord, position: int, frame: Frame, whole: bool
+) -> Argument:
     if not function.parameters:
         return None
     kind = function.parameter(position).kind
@@ -414,7 +427,9 @@ def _built_in_as_value(node: NameReference, frame: Frame) -> LambdaValue | None:
     for prefix in ("_XLETA.", "_XLFN."):
         name = name.removeprefix(prefix)
     function = find_function(name)
-    if function is None or frame.calculation.graph.resolver.name(node.name, node.prefix, frame.cell.sheet):
+    if function is None or frame.calculation.graph.resolver.name(
+        node.name, node.prefix, frame.cell.sheet
+    ):
         return None
     return LambdaValue(
         function.least,

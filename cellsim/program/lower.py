@@ -104,7 +104,12 @@ class _ModelLowering:
     """Lowers cells on demand; what `NodeLowering` sees as the model's cells."""
 
     def __init__(
-        self, base: Calculation, inputs: Sequence[CellRef], outputs: Sequence[Target], *, iterate: bool
+        self,
+        base: Calculation,
+        inputs: Sequence[CellRef],
+        outputs: Sequence[Target],
+        *,
+        iterate: bool,
     ) -> None:
         self.base = base
         self.graph: Graph = base.graph
@@ -153,7 +158,11 @@ class _ModelLowering:
     def _recalculated(self, target: Target, reason: str) -> Operand:
         """An output for which the whole model is calculated again in every draw."""
         cell = target if isinstance(target, CellRef) else target.cell
-        tree = CellReference(None, cell.row, cell.column, False, False) if isinstance(target, CellRef) else target.tree
+        tree = (
+            CellReference(None, cell.row, cell.column, False, False)
+            if isinstance(target, CellRef)
+            else target.tree
+        )
         reads = tuple((c, self._input_register(c), Kind.NUMBER) for c in self.builder.inputs)
         expression = Expression(tree, cell, False, reads, reason, (0, 0), recalculate=True)
         return self.builder.emit_expression(expression, Kind.NUMBER)
@@ -188,7 +197,9 @@ class _ModelLowering:
         return [
             cell
             for cell in self._varying
-            if cell != reader and (self.graph.source_of(cell) or cell) not in dependents and cell not in self._active
+            if cell != reader
+            and (self.graph.source_of(cell) or cell) not in dependents
+            and cell not in self._active
         ]
 
     def area_block(self, area: RangeRef) -> Block:
@@ -314,7 +325,12 @@ class _ModelLowering:
         if area is None:
             return [(formula.cell, _shown(value.items[0]))]
         return [
-            (place, _shown(_spread(value, place.row - area.first_row, place.column - area.first_column)))
+            (
+                place,
+                _shown(
+                    _spread(value, place.row - area.first_row, place.column - area.first_column)
+                ),
+            )
             for place in places
         ]
 
@@ -332,7 +348,7 @@ class _ModelLowering:
                     "switch on iterative calculation in the workbook, or add `iterate = true` under [model]",
                 )
             )
-        if self._in_loop or len(chain) < 2 and start not in chain:
+        if self._in_loop or (len(chain) < 2 and start not in chain):
             raise UnlowerableError("a circular chain through computed references")
         formulas = [formula for cell in chain if (formula := self.graph.formula(cell)) is not None]
         inside = {formula.cell for formula in formulas}
@@ -391,7 +407,9 @@ class _ModelLowering:
         return list(early)
 
     def _loop_result(self, value: Lowered) -> Operand:
-        if isinstance(value, Numeric) or (isinstance(value, Known) and isinstance(value.value, float)):
+        if isinstance(value, Numeric) or (
+            isinstance(value, Known) and isinstance(value.value, float)
+        ):
             return self.emitter.exact_number(value)
         raise UnlowerableError("a circular chain through text or logicals")
 
@@ -410,7 +428,8 @@ class _ModelLowering:
                 varying.update(
                     member
                     for member in formula.area.cells()
-                    if members.get((member.row, member.column)) == position and member not in self._inputs
+                    if members.get((member.row, member.column)) == position
+                    and member not in self._inputs
                 )
         return frozenset(varying)
 
@@ -488,6 +507,6 @@ def _read_from_outside(loop: Loop) -> tuple[Operand, ...]:
 def instruction_count(instructions: Sequence[Instruction]) -> int:
     """How many instructions a program has, those inside loops included."""
     return sum(
-        1 + (len(instruction.detail.body) if instruction.op is Op.LOOP else 0) for instruction in instructions
+        1 + (len(instruction.detail.body) if instruction.op is Op.LOOP else 0)
+        for instruction in instructions
     )
-

@@ -93,7 +93,9 @@ class Arguments:
     def is_range(self, position: int) -> bool:
         """Whether an argument is a range or array and not a single value."""
         value = self.values[position]
-        return isinstance(value, Block) or (isinstance(value, Known) and isinstance(value.value, Reference))
+        return isinstance(value, Block) or (
+            isinstance(value, Known) and isinstance(value.value, Reference)
+        )
 
     def all_static(self) -> bool:
         """Whether every argument is the same in all draws."""
@@ -240,9 +242,7 @@ def _stack_argument(given: Arguments, position: int, _value: Lowered) -> StackOp
     return StackOperand(block.rows, block.columns, tuple(operands), plain=False)
 
 
-_PREPARATIONS: dict[
-    ArgumentKind, Callable[[Arguments, int, Lowered], Operand | StackOperand]
-] = {
+_PREPARATIONS: dict[ArgumentKind, Callable[[Arguments, int, Lowered], Operand | StackOperand]] = {
     ArgumentKind.NUMBER: _number_argument,
     ArgumentKind.WHOLE: _number_argument,
     ArgumentKind.SCALAR: _scalar_argument,
@@ -253,4 +253,3 @@ _PREPARATIONS: dict[
     ArgumentKind.MATRIX: _stack_argument,
     ArgumentKind.OPERAND: _stack_argument,
 }
-

@@ -12,6 +12,7 @@ from collections.abc import Callable, Iterable
 from cellsim.formula.tree import Call, Node
 from cellsim.functions.dispatch import call_function
 from cellsim.functions.registry import find_function
+from cellsim.program.emit import is_error
 from cellsim.program.ir import Constant, Op, Operand, constant
 from cellsim.program.lower_calls import (
     Arguments,
@@ -20,7 +21,6 @@ from cellsim.program.lower_calls import (
     item_operands,
     static_argument,
 )
-from cellsim.program.emit import is_error
 from cellsim.program.lowered import (
     Block,
     Choice,
@@ -65,9 +65,15 @@ def _if(lowering: Lowering, node: Call, whole: bool) -> Lowered:
             return Known(decode_error(condition.value))
         if condition.value:
             return lowering.lower(node.arguments[1], whole=whole)
-        return lowering.lower(node.arguments[2], whole=whole) if len(node.arguments) > 2 else Known(False)
+        return (
+            lowering.lower(node.arguments[2], whole=whole)
+            if len(node.arguments) > 2
+            else Known(False)
+        )
     then = _branch(lowering, node.arguments[1], whole)
-    otherwise = _branch(lowering, node.arguments[2], whole) if len(node.arguments) > 2 else Known(False)
+    otherwise = (
+        _branch(lowering, node.arguments[2], whole) if len(node.arguments) > 2 else Known(False)
+    )
     if isinstance(condition, Block):
         return _if_by_item(lowering, condition, then, otherwise)
     return lowering.emitter.select(condition, then, otherwise)
@@ -75,7 +81,10 @@ def _if(lowering: Lowering, node: Call, whole: bool) -> Lowered:
 
 def _if_by_item(lowering: Lowering, condition: Block, then: Lowered, otherwise: Lowered) -> Block:
     emitter = lowering.emitter
-    parts = [condition, *(v if isinstance(v, Block) else Block(1, 1, (v,)) for v in (then, otherwise))]
+    parts = [
+        condition,
+        *(v if isinstance(v, Block) else Block(1, 1, (v,)) for v in (then, otherwise)),
+    ]
     rows, columns = max(p.rows for p in parts), max(p.columns for p in parts)
     items: list[Lowered] = []
     for row in range(rows):
@@ -177,8 +186,15 @@ def is_error_flag(lowering: Lowering, value: Lowered) -> Operand:
     if isinstance(value, Flagged):
         return emitter.builder.emit(Op.IS_ERROR, emitter.number(value))
     if isinstance(value, Choice):
-        flag_fails = is_error_flag(lowering, Flagged(value.flag)) if not isinstance(value.flag, Constant) else _ZERO  # type: ignore[arg-type]
-        then, otherwise = is_error_flag(lowering, value.then), is_error_flag(lowering, value.otherwise)
+        flag_fails = (
+            is_error_flag(lowering, Flagged(value.flag))
+            if not isinstance(value.flag, Constant)
+            else _ZERO
+        )  # type: ignore[arg-type]
+        then, otherwise = (
+            is_error_flag(lowering, value.then),
+            is_error_flag(lowering, value.otherwise),
+        )
         chosen = emitter.builder.emit(Op.SELECT_FLAG, value.flag, then, otherwise)
         return emitter.builder.emit(Op.SELECT_FLAG, flag_fails, constant(1.0), chosen)
     raise UnlowerableError("a test for errors on text or an array that varies")
@@ -203,7 +219,9 @@ def _if_failing(lowering: Lowering, node: Call, whole: bool, *, only_na: bool) -
     if isinstance(value, Block):
         stands = instead if isinstance(instead, Block) else Block(1, 1, (instead,))
         items = [
-            _instead(lowering, _item(value, row, column), _item(stands, row, column), only_na=only_na)
+            _instead(
+                lowering, _item(value, row, column), _item(stands, row, column), only_na=only_na
+            )
             for row in range(value.rows)
             for column in range(value.columns)
         ]
@@ -251,7 +269,11 @@ def _summed(emitter_arguments: Arguments) -> list[Operand]:
             operands.append(given.emitter.number(value))
             continue
         for item in _items(given, position):
-            operands += [_summand(given, item)] if isinstance(item, Choice) else item_operands(given.emitter, item)
+            operands += (
+                [_summand(given, item)]
+                if isinstance(item, Choice)
+                else item_operands(given.emitter, item)
+            )
     return operands
 
 
@@ -290,13 +312,19 @@ def _sum(given: Arguments) -> Lowered:
 
 
 def _average(given: Arguments) -> Lowered | None:
-    if any(isinstance(item, Choice) for p in range(len(given.values)) for item in _range_items(given, p)):
+    if any(
+        isinstance(item, Choice)
+        for p in range(len(given.values))
+        for item in _range_items(given, p)
+    ):
         return None
     operands = _summed(given)
     if not operands:
         return Known(ErrorValue.DIV0)
     count = constant(float(len(operands)))
-    return given.emitter.as_lowered(given.emitter.arithmetic_operands("/", add_up(given, operands), count))
+    return given.emitter.as_lowered(
+        given.emitter.arithmetic_operands("/", add_up(given, operands), count)
+    )
 
 
 def _range_items(given: Arguments, position: int) -> Iterable[Lowered]:
@@ -305,7 +333,11 @@ def _range_items(given: Arguments, position: int) -> Iterable[Lowered]:
 
 def _extreme(op: Op) -> Rule:
     def rule(given: Arguments) -> Lowered | None:
-        if any(isinstance(item, Choice) for p in range(len(given.values)) for item in _range_items(given, p)):
+        if any(
+            isinstance(item, Choice)
+            for p in range(len(given.values))
+            for item in _range_items(given, p)
+        ):
             return None
         operands = _summed(given)
         if not operands:
@@ -316,7 +348,9 @@ def _extreme(op: Op) -> Rule:
         if failing:
             return Known(decode_error(failing[0].value)) if not varying else None
         pick = min if op is Op.MINIMUM else max
-        result: Operand | None = constant(pick(operand.value for operand in fixed)) if fixed else None
+        result: Operand | None = (
+            constant(pick(operand.value for operand in fixed)) if fixed else None
+        )
         for operand in varying:
             result = operand if result is None else given.emitter.builder.emit(op, result, operand)
         return given.emitter.as_lowered(result or _ZERO)
@@ -343,17 +377,27 @@ def _sum_of_products(given: Arguments) -> Lowered | None:
         product: Operand | None = None
         for item in items:
             factor = _summand(given, item)
-            product = factor if product is None else given.emitter.arithmetic_operands("*", product, factor)
+            product = (
+                factor
+                if product is None
+                else given.emitter.arithmetic_operands("*", product, factor)
+            )
         products.append(product or _ZERO)
     return given.emitter.as_lowered(add_up(given, products))
 
 
 def _product(given: Arguments) -> Lowered | None:
-    if any(isinstance(item, Choice) for p in range(len(given.values)) for item in _range_items(given, p)):
+    if any(
+        isinstance(item, Choice)
+        for p in range(len(given.values))
+        for item in _range_items(given, p)
+    ):
         return None
     result: Operand | None = None
     for operand in _summed(given):
-        result = operand if result is None else given.emitter.arithmetic_operands("*", result, operand)
+        result = (
+            operand if result is None else given.emitter.arithmetic_operands("*", result, operand)
+        )
     return given.emitter.as_lowered(result or _ZERO)
 
 
@@ -389,7 +433,9 @@ def _conjunction(op: Op) -> Rule:
             for item in _items(given, position):
                 if isinstance(item, (Choice, Varied)):
                     return None
-                if isinstance(item, Known) and not isinstance(item.value, (bool, float, ErrorValue)):
+                if isinstance(item, Known) and not isinstance(
+                    item.value, (bool, float, ErrorValue)
+                ):
                     continue
                 flags.append(emitter.flag(item))
         if not flags:
@@ -403,7 +449,9 @@ def _conjunction(op: Op) -> Rule:
 
 
 def _not(given: Arguments) -> Lowered:
-    return given.emitter.flag_as_lowered(given.emitter.opposite(given.emitter.flag(given.values[0])))
+    return given.emitter.flag_as_lowered(
+        given.emitter.opposite(given.emitter.flag(given.values[0]))
+    )
 
 
 def _is_error(given: Arguments) -> Lowered:
@@ -437,7 +485,9 @@ def _as_number(given: Arguments) -> Lowered | None:
 def _operation(op: Op, exact: bool = False) -> Rule:
     def rule(given: Arguments) -> Lowered | None:
         emitter = given.emitter
-        operand = emitter.exact_number(given.values[0]) if exact else emitter.number(given.values[0])
+        operand = (
+            emitter.exact_number(given.values[0]) if exact else emitter.number(given.values[0])
+        )
         if isinstance(operand, Constant):
             return None
         return Numeric(emitter.builder.emit(op, operand))
@@ -493,7 +543,9 @@ def _index(given: Arguments) -> Lowered | None:
 def _transpose(given: Arguments) -> Lowered:
     block = given.block(0)
     items = tuple(
-        block.items[row * block.columns + column] for column in range(block.columns) for row in range(block.rows)
+        block.items[row * block.columns + column]
+        for column in range(block.columns)
+        for row in range(block.rows)
     )
     return Block(block.columns, block.rows, items)
 
@@ -518,11 +570,20 @@ def _table_lookup(*, by_column: bool) -> Rule:
         table = given.block(1)
         place = given.values[2]
         approximate: Lowered = given.values[3] if len(given.values) > 3 else Known(True)
-        if not isinstance(place, Known) or not isinstance(approximate, Known) or table.rows * table.columns == 0:
+        if (
+            not isinstance(place, Known)
+            or not isinstance(approximate, Known)
+            or table.rows * table.columns == 0
+        ):
             return None
         line = given.emitter.number(place)
         mode = given.emitter.flag(approximate)
-        if not isinstance(line, Constant) or not isinstance(mode, Constant) or is_error(line) or is_error(mode):
+        if (
+            not isinstance(line, Constant)
+            or not isinstance(mode, Constant)
+            or is_error(line)
+            or is_error(mode)
+        ):
             return None
         keys = _column(table, 0) if by_column else _row(table, 0)
         found = _match_place(given, given.values[0], keys, 1.0 if mode.value else 0.0)
@@ -549,9 +610,14 @@ def _xlookup(given: Arguments) -> Lowered | None:
     xmatch = find_function("XMATCH")
     keys, results = given.block(1), given.block(2)
     static = [
-        static_argument(given.lowering, value) for value in (given.values[0], keys, *given.values[4:])
+        static_argument(given.lowering, value)
+        for value in (given.values[0], keys, *given.values[4:])
     ]
-    if xmatch is None or any(value is None for value in static) or len(results.items) != len(keys.items):
+    if (
+        xmatch is None
+        or any(value is None for value in static)
+        or len(results.items) != len(keys.items)
+    ):
         return None
     frame = given.lowering.cells.frame(given.lowering.cell)
     found = call_function(xmatch, [None if value == () else value for value in static], frame)  # type: ignore[misc]
@@ -615,4 +681,3 @@ RULES: dict[str, Rule] = {
     "XLOOKUP": _xlookup,
     "LOOKUP": _lookup,
 }
-

@@ -23,7 +23,13 @@ from cellsim.formula.tree import (
     TextLiteral,
     Unary,
 )
-from cellsim.functions.registry import LIFTED, WHOLE_ARRAY, ArgumentKind, FunctionRecord, find_function
+from cellsim.functions.registry import (
+    LIFTED,
+    WHOLE_ARRAY,
+    ArgumentKind,
+    FunctionRecord,
+    find_function,
+)
 from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
@@ -32,7 +38,6 @@ from cellsim.program.lower_calls import call_over_draws
 from cellsim.program.lower_functions import LAZY_RULES, RULES, Arguments
 from cellsim.program.lowered import (
     Block,
-    Choice,
     Flagged,
     Known,
     Lowered,
@@ -40,7 +45,7 @@ from cellsim.program.lowered import (
     UnlowerableError,
     Varied,
 )
-from cellsim.values import Array, ErrorValue, LambdaValue, Reference, Value
+from cellsim.values import Array, ErrorValue, Reference, Value
 
 _LARGEST_BLOCK = 2_000_000
 _MOST_NESTED_NAMES = 64
@@ -87,7 +92,11 @@ class NodeLowering:
     """
 
     def __init__(
-        self, cells: Cells, cell: CellRef, scope: Mapping[str, Lowered] | None = None, depth: int = 0
+        self,
+        cells: Cells,
+        cell: CellRef,
+        scope: Mapping[str, Lowered] | None = None,
+        depth: int = 0,
     ) -> None:
         self.cells = cells
         self.cell = cell
@@ -159,7 +168,9 @@ class NodeLowering:
             if reference.prefix is not None and reference.prefix.workbook is not None:
                 continue
             found = resolver.area(reference, self.cell)
-            if isinstance(found, Reference) and any(self.cells.varying_in(area) for area in found.areas):
+            if isinstance(found, Reference) and any(
+                self.cells.varying_in(area) for area in found.areas
+            ):
                 return False
         return all(self._static_name(name) for name in facts.names)
 
@@ -178,7 +189,9 @@ class NodeLowering:
             if table is None:
                 return True
             found = Reference((table.area,))
-        return not isinstance(found, Reference) or not any(self.cells.varying_in(a) for a in found.areas)
+        return not isinstance(found, Reference) or not any(
+            self.cells.varying_in(a) for a in found.areas
+        )
 
     def static_value(self, node: Node, *, whole: bool) -> Lowered:
         """The value of a static expression, from the base case."""
@@ -383,7 +396,11 @@ class NodeLowering:
             for column in range(columns):
                 for position, block in zip(lifted, blocks, strict=True):
                     arguments[position] = block_item(block, row, column)
-                items.append(self.dereference(self._call_with(node, function, list(arguments), whole), whole=True))
+                items.append(
+                    self.dereference(
+                        self._call_with(node, function, list(arguments), whole), whole=True
+                    )
+                )
         if any(isinstance(item, Block) for item in items):
             raise UnlowerableError("arrays inside an array")
         return Block(rows, columns, tuple(items))
@@ -404,9 +421,7 @@ class NodeLowering:
         return inner.lower(arguments[-1], whole=whole)
 
 
-def by_item(
-    apply: Callable[[Lowered, Lowered], Lowered], left: Lowered, right: Lowered
-) -> Block:
+def by_item(apply: Callable[[Lowered, Lowered], Lowered], left: Lowered, right: Lowered) -> Block:
     """An operation on two values of which at least one is a block, item by item."""
     a = left if isinstance(left, Block) else Block(1, 1, (left,))
     b = right if isinstance(right, Block) else Block(1, 1, (right,))

@@ -59,7 +59,10 @@ class BlockEvaluator:
         self._steps = self._build(program.instructions)
         self._inputs = [self._buffers.array(number) for number in range(len(program.inputs))]
         self._outputs = [
-            (self._buffers.operand(operand), operand.number if isinstance(operand, Register) else -1)
+            (
+                self._buffers.operand(operand),
+                operand.number if isinstance(operand, Register) else -1,
+            )
             for operand, _ in program.outputs
         ]
 

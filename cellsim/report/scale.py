@@ -37,10 +37,6 @@ class Scale:
         """A value with its unit, for a sentence."""
         return self._worded(value, self.code, self.unit)
 
-    def bare_text(self, value: float) -> str:
-        """A value without its unit, for a label beside others."""
-        return self._worded(value, self.code, "")
-
     def spread_text(self, value: float | None) -> str:
         """A difference between values with its unit, for a sentence."""
         code = self.spread_code if value is None else finer_code(self.spread_code, value)

@@ -1,106 +1,228 @@
-"""Sentences made from the figures."""
+"""Sentences about a run, made from its figures."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
-from cellsim.report.book import Book
-from cellsim.report.figures import OutputFigures, central_range
-from cellsim.values import ErrorValue
+from cellsim.analysis.shares import Exceedance, Share
+from cellsim.report.figures import Figures, InputFigures, OutputFigures, central_range
+from cellsim.report.plain_text import one_line
+from cellsim.results import ModelCheck, RunResults
+from cellsim.values import ErrorValue, Scalar
 
 CAUTION = (
-    "The figures describe the model and the distributions that it was given; they are no advice to buy, sell or "
-    "lend. A licensed professional and local rules come first."
+    "The figures describe the model and the distributions that it was given. They are no advice to buy, sell or "
+    "lend; a licensed professional and local rules come first."
 )
-_RARE, _COMMON = 0.05, 0.95
-_THIN = 0.02
+_SAMPLING = {
+    "random": "independent random draws",
+    "latin-hypercube": "Latin hypercube draws",
+}
+_FEW_DRAWS = 1000
+_WIDE = 0.1
+_MOST_NAMED = 3
 
 
-def percent(share: float) -> str:
-    """A share in per cent, near its ends with a decimal."""
-    if 0 < share < 0.01 or 0.99 < share < 1:
-        return f"{share:.1%}"
-    return f"{share:.0%}"
+def counted(count: int, one: str, many: str) -> str:
+    """A count with its noun: `1 draw`, `1,000 draws`."""
+    return f"{count:,} {one if count == 1 else many}"
 
 
-def question(book: Book) -> str:
-    """What was asked, in one sentence."""
-    record, results = book.results.record, book.results
-    outputs = ", ".join(output.title for output in book.figures.outputs[:4])
-    more = f" and {len(results.outputs) - 4} more" if len(results.outputs) > 4 else ""
-    inputs = f"{len(results.inputs)} input{'s' if len(results.inputs) != 1 else ''}"
+def share_text(share: Share) -> str:
+    """A share as per cent that never claims more than was counted."""
+    if share.hits == 0:
+        return "0 %"
+    if share.hits == share.count:
+        return "100 %"
+    if share.share < 0.0005:
+        return "less than 0.1 %"
+    if share.share > 0.9995:
+        return "more than 99.9 %"
+    return f"{share.share * 100:.1f} %"
+
+
+def sampling_words(sampling: str) -> str:
+    """How the draws were made."""
+    return _SAMPLING.get(sampling, f"{one_line(sampling, 40)} draws")
+
+
+def precision_note(sampling: str) -> str:
+    """What the standard errors and intervals mean for the way of sampling."""
+    note = "Standard errors and 95 % intervals show the precision of the draws, not how well the model fits the world."
+    if sampling == "random":
+        return note
     return (
-        f"How sure is {outputs}{more} in {record.model}, when {inputs} vary as the side-car "
-        f"{record.sidecar} says? {record.draws:,} draws, seed {record.seed}, {record.sampling} sampling."
+        f"{note} They are worked out as for independent draws. With {sampling_words(sampling)} that is an upper bound "
+        "for the standard error of the mean, but for a factor n/(n - 1) in its square; quantiles and shares are "
+        "usually more precise than shown as well."
     )
 
 
-def output_sentence(output: OutputFigures) -> str:
-    """What came out for one output."""
+def asked(results: RunResults) -> str:
+    """What was asked, in one paragraph."""
+    record = results.record
+    return (
+        f"{one_line(record.model, 100)} was evaluated on {counted(record.draws, 'draw', 'draws')} "
+        f"({sampling_words(record.sampling)}, seed {record.seed}) of "
+        f"{counted(len(results.inputs), 'uncertain input', 'uncertain inputs')}, as {one_line(record.sidecar, 100)} "
+        f"describes, for {counted(len(results.outputs), 'output', 'outputs')}. Everything else stays as the model has it."
+    )
+
+
+def base_text(base: Scalar, output: OutputFigures) -> str:
+    """A base case as words: a number with its unit, or what it is instead."""
+    if output.base is not None:
+        return output.scale.text(output.base)
+    if isinstance(base, ErrorValue):
+        return f"the error {base}"
+    if base is None:
+        return "blank"
+    return f"“{one_line(str(base), 40)}”, no number"
+
+
+def output_sentences(output: OutputFigures) -> str:
+    """An output in words: centre, spread, place of the base case, thresholds."""
     summary = output.summary
     if summary is None:
-        return f"{output.title}: every draw failed, so nothing can be said about it."
+        return f"{output.title}: no draw gave a number."
     low, middle, high = central_range(summary)
     scale = output.scale
-    text = (
-        f"{output.title}: half of the draws lie below {scale.text(middle)}, and eight in ten between "
-        f"{scale.text(low)} and {scale.text(high)}; the mean is {scale.text(summary.moments.mean)}."
+    if low == high == summary.moments.minimum == summary.moments.maximum:
+        words = [f"{output.title}: {scale.text(middle)} in every draw."]
+    else:
+        words = [
+            f"{output.title}: the median is {scale.text(middle)} and the mean {scale.text(summary.moments.mean)}; "
+            f"80 % of the draws lie between {scale.text(low)} and {scale.text(high)}."
+        ]
+    words.append(_base_sentence(output))
+    words += [
+        _threshold_sentence(output, threshold.text, about)
+        for threshold, about in zip(output.record.thresholds, output.thresholds, strict=True)
+        if about is not None
+    ]
+    return " ".join(words)
+
+
+def _base_sentence(output: OutputFigures) -> str:
+    about = output.at_base
+    if about is None:
+        return f"The base case is {base_text(output.record.base, output)}."
+    equal = f", {counted(about.equal, 'draw is', 'draws are')} equal to it" if about.equal else ""
+    return (
+        f"The base case is {output.scale.text(about.value)}: {share_text(about.below)} of the draws lie below it"
+        f"{equal} and {share_text(about.above)} above."
     )
-    if output.base is not None and output.at_base is not None:
-        text += f" The base case, {scale.text(output.base)}, is exceeded in {percent(output.at_base.above.share)} of them."
-    elif isinstance(output.record.base, ErrorValue):
-        text += f" In the base case it is the error {output.record.base}."
-    for threshold, found in zip(output.record.thresholds, output.thresholds, strict=True):
-        if found is not None:
-            text += f" It is above {scale.text(threshold.value)} in {percent(found.above.share)}."
-    return text
 
 
-def warnings(book: Book) -> Iterator[str]:
-    """What a reader should be careful of."""
-    results = book.results
-    draws = results.record.draws
-    if results.failures.draws:
-        share = results.failures.draws / draws
-        yield (
-            f"{results.failures.draws:,} of {draws:,} draws ({percent(share)}) failed and are left out of all figures; "
-            "see Failed draws."
+def _threshold_sentence(output: OutputFigures, text: str, about: Exceedance) -> str:
+    shown = output.scale.text(about.value)
+    origin = f" ({one_line(text, 40)})" if text.startswith("=") else ""
+    return f"{share_text(about.above)} of the draws lie above {shown}{origin}."
+
+
+def cautions(results: RunResults, figures: Figures) -> list[str]:
+    """What a reader should be careful of, most serious first; empty if nothing stands out."""
+    found = [
+        *_failure_cautions(results, figures),
+        *_check_cautions(results.check),
+        *_precision_cautions(figures),
+        *_base_cautions(figures),
+        *[c for item in figures.inputs if (c := _input_caution(item)) is not None],
+    ]
+    return found
+
+
+def _failure_cautions(results: RunResults, figures: Figures) -> list[str]:
+    failed = results.failures.draws
+    if not failed:
+        return []
+    worst = max(
+        figures.outputs,
+        key=lambda output: output.summary.failed if output.summary else results.record.draws,
+    )
+    share = failed / max(results.record.draws, 1)
+    amount = "less than 0.1 %" if share < 0.0005 else f"{share * 100:.1f} %"
+    return [
+        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: an output was an error or not finite there. The figures "
+        f"are those of the other draws and say nothing about these. Most failures: {worst.title}. See Failed draws."
+    ]
+
+
+def _check_cautions(check: ModelCheck) -> list[str]:
+    found = []
+    if check.disagreements:
+        roots = sum(d.root for d in check.disagreements)
+        found.append(
+            f"The model check found {counted(len(check.disagreements), 'formula', 'formulas')} whose recalculated value "
+            f"differs from the stored one; {counted(roots, 'of them is', 'of them are')} where a difference starts. "
+            "See Model check."
         )
-    check = results.check
-    if check.compared > check.agreeing:
-        yield (
-            f"{check.compared - check.agreeing:,} of {check.compared:,} formulas of the model were not recalculated to "
-            "the value stored in the file; see Model check."
+    if check.unsupported:
+        names = ", ".join(one_line(name, 30) for name, _, _ in check.unsupported[:_MOST_NAMED])
+        found.append(f"Not every function of the model is calculated: {names}. See Model check.")
+    if check.without_value:
+        found.append(
+            f"{counted(check.without_value, 'formula has', 'formulas have')} no stored value to compare with, so the model "
+            "check is silent about them."
         )
-    for record in results.inputs:
-        place = record.base_percentile
-        if place is not None and not record.discrete and not _RARE <= place <= _COMMON:
-            yield (
-                f"The base value of {record.label or record.name} lies at the {place:.1%} point of its distribution: the "
-                "base case is no middle case."
-            )
-    for output in book.figures.outputs:
+    return found
+
+
+def _precision_cautions(figures: Figures) -> list[str]:
+    thin = []
+    for output in figures.outputs:
         summary = output.summary
-        if summary is None or not summary.moments.sd or summary.moments.mean_se is None:
+        if summary is None or summary.moments.minimum == summary.moments.maximum:
             continue
-        if summary.moments.mean_se > _THIN * summary.moments.sd:
-            yield (
-                f"With {summary.moments.count:,} draws the mean of {output.title} is known to about "
-                f"{output.scale.spread_text(2 * summary.moments.mean_se)} only; more draws would narrow it."
-            )
-    if results.record.slow_cells:
-        yield f"{len(results.record.slow_cells)} expressions were evaluated draw by draw; see Model check."
-
-
-def interval_note(book: Book) -> str:
-    """How the intervals are meant."""
-    text = (
-        "Intervals have 95 % confidence. Those of quantiles are distribution-free (binomial order statistics); those of "
-        "shares are Wilson's."
-    )
-    if book.results.record.sampling == "latin-hypercube":
-        text += (
-            " They hold for independent draws; with Latin hypercube sampling the error of a mean is at most slightly "
-            "larger and usually smaller."
+        low, _, high = central_range(summary)
+        error = summary.moments.mean_se
+        few = summary.moments.count < _FEW_DRAWS
+        wide = error is None or error * 4 > _WIDE * (high - low) > 0
+        loose = any(
+            t is not None and t.above.upper - t.above.lower > _WIDE for t in output.thresholds
         )
-    return text
+        if few or wide or loose:
+            thin.append(output)
+    if not thin:
+        return []
+    return [
+        f"Thin precision for {_named([output.title for output in thin])}: too few draws for the last digits shown. The "
+        "intervals on Quantiles say how far to trust them; more draws narrow them."
+    ]
+
+
+def _base_cautions(figures: Figures) -> list[str]:
+    found = []
+    for output in figures.outputs:
+        about, summary = output.at_base, output.summary
+        if about is None or summary is None or summary.moments.minimum == summary.moments.maximum:
+            continue
+        if about.below.share > 0.95 or about.above.share > 0.95:
+            side = "above" if about.below.share > 0.95 else "below"
+            found.append(
+                f"The base case of {output.title} ({output.scale.text(about.value)}) lies {side} more than 95 % of its draws: "
+                "the model's own figure is an extreme one under these distributions."
+            )
+    return found[:_MOST_NAMED] + _rest(len(found), "base cases like this")
+
+
+def _input_caution(item: InputFigures) -> str | None:
+    share = item.record.base_percentile
+    if share is None or 0.05 <= share <= 0.95 or item.record.base is None:
+        return None
+    if item.record.discrete and share > 0.95:
+        return None  # the share at or below the largest of a few values is 1 in the ordinary case
+    side = "below its 5 %" if share < 0.05 else "above its 95 %"
+    return (
+        f"The model's own value of {item.title} ({item.scale.text(item.record.base)}) lies {side} quantile: the base case "
+        "and the distribution tell different stories."
+    )
+
+
+def _rest(count: int, what: str) -> list[str]:
+    left = count - _MOST_NAMED
+    return [f"And {left:,} more {what}."] if left > 0 else []
+
+
+def _named(names: list[str]) -> str:
+    if len(names) <= _MOST_NAMED:
+        return ", ".join(names)
+    return f"{', '.join(names[:_MOST_NAMED])} and {len(names) - _MOST_NAMED:,} more"

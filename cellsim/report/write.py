@@ -1,48 +1,68 @@
-"""Writing the results workbook: whole or not at all."""
+"""Writing the results workbook."""
 
 from __future__ import annotations
 
+import contextlib
 import os
-import secrets
+import tempfile
 from collections.abc import Callable
+from dataclasses import dataclass
 from pathlib import Path
 
 from xlsxwriter import Workbook
+from xlsxwriter.exceptions import XlsxWriterException
 
 from cellsim.errors import Problem, RunError
 from cellsim.report.book import Book
 from cellsim.report.figures import work_out
-from cellsim.report.places import (
-    DEPENDENCE,
-    DISTRIBUTION,
-    DRAWS,
-    FAILED_DRAWS,
-    HEADLINE,
-    INPUTS,
-    MODEL_CHECK,
-    QUANTILES,
-    RUN_RECORD,
+from cellsim.report.plain_text import one_line
+from cellsim.report.sheets import (
+    dependence,
+    distribution,
+    draws,
+    failed_draws,
+    headline,
+    inputs,
+    model_check,
+    quantiles,
+    run_record,
 )
-from cellsim.report.sheets.checks import (
-    write_dependence,
-    write_failed_draws,
-    write_model_check,
-    write_run_record,
-)
-from cellsim.report.sheets.distribution import write_distribution
-from cellsim.report.sheets.draws import write_draws
-from cellsim.report.sheets.headline import write_headline
-from cellsim.report.sheets.inputs import write_inputs
-from cellsim.report.sheets.quantiles import write_quantiles
-from cellsim.report.styles import Styles
+from cellsim.report.styles import FONT, Styles
 from cellsim.report.wording import CAUTION
 from cellsim.results import RunResults
+
+
+@dataclass(frozen=True, slots=True)
+class _Sheet:
+    """A sheet of the workbook: its name, when it is there, how it is written."""
+
+    name: str
+    is_needed: Callable[[Book], bool]
+    write: Callable[[Book], None]
+
+
+_SHEETS = tuple(
+    _Sheet(module.NAME, module.is_needed, module.write)
+    for module in (
+        headline,
+        quantiles,
+        distribution,
+        inputs,
+        dependence,
+        failed_draws,
+        model_check,
+        run_record,
+    )
+)
+_DRAWS = _Sheet(draws.NAME, draws.is_needed, draws.write)
 
 
 def write_report(
     results: RunResults, path: Path, *, overwrite: bool = False, draws_sheet: bool = False
 ) -> None:
-    """Write the results workbook to a temporary file beside its place, then rename it.
+    """Write the results workbook, whole or not at all.
+
+    It is written to a temporary file in the same folder, flushed to disk and renamed.
 
     Args:
         results: The run.
@@ -51,63 +71,92 @@ def write_report(
         draws_sheet: Whether every draw is written too.
 
     Raises:
-        RunError: The file exists, or its folder cannot be written to.
+        RunError: The file exists already, or it cannot be written.
     """
     if path.exists() and not overwrite:
         raise RunError(
             Problem(
-                str(path), "exists already", "ask for it to be overwritten, or choose another name"
+                str(path), "exists already", "choose another name, or ask for it to be replaced"
             )
         )
-    temporary = path.with_name(f".{path.name}.{secrets.token_hex(4)}.part")
     try:
-        _write(results, temporary, draws_sheet=draws_sheet)
-        with temporary.open("rb+") as file:
-            os.fsync(file.fileno())
-        temporary.replace(path)
-    except OSError as error:
+        _write_whole(results, path, draws_sheet=draws_sheet)
+    except (OSError, XlsxWriterException) as error:
+        reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
         raise RunError(
-            Problem(str(path), f"cannot be written: {error.strerror or error}")
+            Problem(str(path), f"the results workbook cannot be written: {reason}")
         ) from error
-    finally:
-        temporary.unlink(missing_ok=True)
 
 
-def _write(results: RunResults, path: Path, *, draws_sheet: bool) -> None:
-    sheets = _sheets(results, draws_sheet=draws_sheet)
-    with (
-        path.open("wb") as file,
-        Workbook(file, {"in_memory": False, "strings_to_urls": False}) as workbook,
-    ):
-        workbook.set_properties(
-            {
-                "title": f"Results for {results.record.model}"[:250],
-                "subject": "Distribution of a model's outputs",
-                "comments": CAUTION,
-            }
-        )
-        book = Book(
-            workbook,
-            Styles(workbook),
-            results,
-            work_out(results),
-            tuple(name for name, _ in sheets),
-        )
-        for _, write_sheet in sheets:
-            write_sheet(book)
+def _write_whole(results: RunResults, path: Path, *, draws_sheet: bool) -> None:
+    handle, name = tempfile.mkstemp(prefix=f".{path.stem[:40]}.", suffix=".part", dir=path.parent)
+    temporary = Path(name)
+    try:
+        with (
+            os.fdopen(handle, "wb") as stream,
+            tempfile.TemporaryDirectory(prefix="cellsim-") as folder,
+        ):
+            _write_book(results, stream, folder, draws_sheet=draws_sheet)
+            stream.flush()
+            os.fsync(stream.fileno())
+        temporary.chmod(0o666 & ~_umask())
+        temporary.replace(path)
+    except BaseException:
+        with contextlib.suppress(FileNotFoundError):
+            temporary.unlink()
+        raise
+    _sync_folder(path.parent)
 
 
-def _sheets(results: RunResults, *, draws_sheet: bool) -> list[tuple[str, Callable[[Book], None]]]:
-    """The sheets that have something to say, in order."""
-    wanted: list[tuple[str, Callable[[Book], None], bool]] = [
-        (HEADLINE, write_headline, True),
-        (QUANTILES, write_quantiles, True),
-        (DISTRIBUTION, write_distribution, True),
-        (INPUTS, write_inputs, True),
-        (DEPENDENCE, write_dependence, bool(results.dependence)),
-        (FAILED_DRAWS, write_failed_draws, bool(results.failures.draws)),
-        (MODEL_CHECK, write_model_check, True),
-        (RUN_RECORD, write_run_record, True),
-        (DRAWS, write_draws, draws_sheet),
+def _umask() -> int:
+    """The process's mask for new files, which can only be read by setting it."""
+    mask = os.umask(0o077)
+    os.umask(mask)
+    return mask
+
+
+def _sync_folder(folder: Path) -> None:
+    """Make the rename itself last, where the system lets folders be opened."""
+    with contextlib.suppress(OSError):
+        descriptor = os.open(folder, os.O_RDONLY)
+        try:
+            os.fsync(descriptor)
+        finally:
+            os.close(descriptor)
+
+
+def _write_book(results: RunResults, stream: object, folder: str, *, draws_sheet: bool) -> None:
+    options = {
+        "tmpdir": folder,
+        "strings_to_formulas": False,
+        "strings_to_urls": False,
+        "strings_to_numbers": False,
+        "default_format_properties": FONT,
+    }
+    workbook = Workbook(stream, options)
+    workbook.use_zip64()
+    _describe(workbook, results)
+    figures = work_out(results)
+    asking = Book(workbook, Styles(workbook), results, figures, ())
+    sheets = [
+        sheet for sheet in (*_SHEETS, *([_DRAWS] if draws_sheet else [])) if sheet.is_needed(asking)
     ]
-    return [(name, write_sheet) for name, write_sheet, there in wanted if there]
+    book = Book(workbook, asking.styles, results, figures, tuple(sheet.name for sheet in sheets))
+    for sheet in sheets:
+        sheet.write(book)
+    workbook.worksheets()[0].activate()
+    workbook.close()
+
+
+def _describe(workbook: Workbook, results: RunResults) -> None:
+    record = results.record
+    version = one_line(record.versions.get("cellsim", ""), 20)
+    workbook.set_properties(
+        {
+            "title": f"Results: {one_line(record.model, 100)}",
+            "subject": f"{record.draws:,} draws of {one_line(record.sidecar, 100)}",
+            "author": f"cellsim {version}".strip(),
+            "comments": CAUTION,
+            "created": record.started,
+        }
+    )

@@ -90,7 +90,9 @@ def _parse(content: bytes, reader: Any, file: str, part: str) -> None:
     try:
         parser.Parse(content, True)
     except expat.ExpatError as error:
-        raise ModelError(Problem(file, f"the part {part} is not well-formed XML: {error}")) from error
+        raise ModelError(
+            Problem(file, f"the part {part} is not well-formed XML: {error}")
+        ) from error
     except _Refused as error:
         raise refused(file, part) from error
 
@@ -266,7 +268,9 @@ class _SheetReader:
         if kind == "dataTable":
             table = self._data_table(formula)
             if table is not None:
-                self.cells.formulas[position] = FormulaCell("", position, value, None, False, table, has_value)
+                self.cells.formulas[position] = FormulaCell(
+                    "", position, value, None, False, table, has_value
+                )
                 return
         if kind == "shared" and shared is not None:
             if text.strip():
@@ -282,7 +286,9 @@ class _SheetReader:
         if kind == "array" and area is None:
             area = RangeRef(self._title, *position, *position)
         dynamic = kind == "array" and "cm" in attributes
-        self.cells.formulas[position] = FormulaCell(text, position, value, area, dynamic, None, has_value)
+        self.cells.formulas[position] = FormulaCell(
+            text, position, value, area, dynamic, None, has_value
+        )
 
     def _area(self, text: str | None) -> RangeRef | None:
         if not text:
@@ -302,7 +308,11 @@ class _SheetReader:
             return None
         if is_on(formula.get("dt2D")):
             return DataTable(area, first, second)
-        return DataTable(area, first, None) if is_on(formula.get("dtr")) else DataTable(area, None, first)
+        return (
+            DataTable(area, first, None)
+            if is_on(formula.get("dtr"))
+            else DataTable(area, None, first)
+        )
 
     def finish(self) -> None:
         """Give the members of shared formulas their master's text."""
@@ -313,4 +323,6 @@ class _SheetReader:
                     self.cells.constants[position] = value
                 continue
             text, origin = master
-            self.cells.formulas[position] = FormulaCell(text, origin, value, None, False, None, has_value)
+            self.cells.formulas[position] = FormulaCell(
+                text, origin, value, None, False, None, has_value
+            )

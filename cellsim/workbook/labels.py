@@ -41,7 +41,7 @@ def _text(sheet: Sheet, row: int, column: int) -> str:
 
 def unit_of(number_format: str) -> str:
     """The unit that a number format shows, such as `%`, `EUR` or `x`, or ""."""
-    section = number_format.split(";")[0]
+    section = number_format.split(";", maxsplit=1)[0]
     literals = [next(part for part in match if part is not None) for match in _groups(section)]
     words = [word.strip() for word in literals if word.strip(" ()-+_,./:*")]
     if words:
@@ -53,4 +53,8 @@ def unit_of(number_format: str) -> str:
 
 
 def _groups(section: str) -> list[tuple[str | None, ...]]:
-    return [tuple(g for g in match.groups() if g is not None) for match in _LITERAL.finditer(section) if any(match.groups())]
+    return [
+        tuple(g for g in match.groups() if g is not None)
+        for match in _LITERAL.finditer(section)
+        if any(match.groups())
+    ]

@@ -33,16 +33,25 @@ class Package:
             self._zip = zipfile.ZipFile(path)
         except zipfile.BadZipFile as error:
             raise ModelError(
-                Problem(path.name, "the file is cut off or damaged: its list of parts cannot be read", "get it again from its source")
+                Problem(
+                    path.name,
+                    "the file is cut off or damaged: its list of parts cannot be read",
+                    "get it again from its source",
+                )
             ) from error
-        self._names = {name.lstrip("/").replace("\\", "/").casefold(): name for name in self._zip.namelist()}
+        self._names = {
+            name.lstrip("/").replace("\\", "/").casefold(): name for name in self._zip.namelist()
+        }
         self._check_sizes()
 
     def __enter__(self) -> Package:
         return self
 
     def __exit__(
-        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
     ) -> None:
         self._zip.close()
 
@@ -68,13 +77,21 @@ class Package:
                     chunks.append(chunk)
                     size += len(chunk)
                     if size > info.file_size or size > MOST_BYTES_A_PART:
-                        raise ModelError(Problem(self.path.name, f"the part {part} unpacks to more than it says"))
+                        raise ModelError(
+                            Problem(self.path.name, f"the part {part} unpacks to more than it says")
+                        )
         except (zipfile.BadZipFile, zlib.error, EOFError, OSError) as error:
             raise ModelError(
-                Problem(self.path.name, f"the part {part} is damaged", "get the file again from its source")
+                Problem(
+                    self.path.name,
+                    f"the part {part} is damaged",
+                    "get the file again from its source",
+                )
             ) from error
         except (RuntimeError, NotImplementedError) as error:
-            raise ModelError(Problem(self.path.name, f"the part {part} cannot be unpacked: {error}")) from error
+            raise ModelError(
+                Problem(self.path.name, f"the part {part} cannot be unpacked: {error}")
+            ) from error
         return b"".join(chunks)
 
     def _check_sizes(self) -> None:
@@ -94,7 +111,10 @@ class Package:
                 )
         if total > MOST_BYTES:
             raise ModelError(
-                Problem(self.path.name, f"its parts would unpack to {total:,} bytes, more than {MOST_BYTES:,}")
+                Problem(
+                    self.path.name,
+                    f"its parts would unpack to {total:,} bytes, more than {MOST_BYTES:,}",
+                )
             )
 
 
@@ -113,19 +133,25 @@ def _check_kind(path: Path) -> None:
         with path.open("rb") as file:
             head = file.read(4096)
     except OSError as error:
-        raise ModelError(Problem(str(path), f"the file cannot be read: {error.strerror}")) from error
+        raise ModelError(
+            Problem(str(path), f"the file cannot be read: {error.strerror}")
+        ) from error
     if not head:
         raise ModelError(Problem(name, "the file is empty"))
     if head.startswith(_COMPOUND_FILE):
         raise ModelError(_compound_file(path))
     if not head.startswith((b"PK\x03\x04", b"PK\x05\x06")):
-        raise ModelError(Problem(name, "this is no workbook: it is not a zip package", _text_hint(path, head)))
+        raise ModelError(
+            Problem(name, "this is no workbook: it is not a zip package", _text_hint(path, head))
+        )
 
 
 def _compound_file(path: Path) -> Problem:
     content = path.read_bytes()
     if _ENCRYPTED in content:
-        return Problem(path.name, "the workbook is encrypted", "save a copy without a password to open it")
+        return Problem(
+            path.name, "the workbook is encrypted", "save a copy without a password to open it"
+        )
     if any(mark in content for mark in _LEGACY):
         return Problem(path.name, "this is a workbook in the old .xls format", "save it as .xlsx")
     return Problem(path.name, "this is an older office document, not an .xlsx workbook")
@@ -133,7 +159,9 @@ def _compound_file(path: Path) -> Problem:
 
 def _text_hint(path: Path, head: bytes) -> str:
     if path.suffix.lower() == ".csv" or (b"\0" not in head and b"," in head):
-        return "it looks like text with commas; open it in a spreadsheet program and save it as .xlsx"
+        return (
+            "it looks like text with commas; open it in a spreadsheet program and save it as .xlsx"
+        )
     return "expected an .xlsx or .xlsm file"
 
 
@@ -141,4 +169,8 @@ def _nearby(path: Path) -> str:
     if not path.parent.is_dir():
         return f"there is no folder {path.parent}"
     books = sorted(p.name for p in path.parent.iterdir() if p.suffix.lower() in {".xlsx", ".xlsm"})
-    return f"workbooks there: {', '.join(books[:8])}" if books else "there is no workbook in that folder"
+    return (
+        f"workbooks there: {', '.join(books[:8])}"
+        if books
+        else "there is no workbook in that folder"
+    )

@@ -24,7 +24,15 @@ from cellsim.workbook.model import (
     Workbook,
 )
 from cellsim.workbook.package import Package
-from cellsim.workbook.xml_parts import attribute, child, children, is_on, local, parse_part, unescape
+from cellsim.workbook.xml_parts import (
+    attribute,
+    child,
+    children,
+    is_on,
+    local,
+    parse_part,
+    unescape,
+)
 
 GENERAL = "General"
 
@@ -63,7 +71,9 @@ class _Reader:
             kind, target = links.get(attribute(element, "id") or "", ("", ""))
             if kind != "worksheet" or not self._package.has(target):
                 continue
-            sheets.append(self._sheet(title, element, target, strings, formats, date_1904=date_1904))
+            sheets.append(
+                self._sheet(title, element, target, strings, formats, date_1904=date_1904)
+            )
             tables += self._tables(title, target)
         if not sheets:
             raise ModelError(Problem(self._file, "the workbook holds no worksheet"))
@@ -90,11 +100,17 @@ class _Reader:
                 if kind == "officeDocument":
                     if target.endswith(".bin"):
                         raise ModelError(
-                            Problem(self._file, "this is a workbook in the binary .xlsb format", "save it as .xlsx")
+                            Problem(
+                                self._file,
+                                "this is a workbook in the binary .xlsb format",
+                                "save it as .xlsx",
+                            )
                         )
                     return target
         if self._package.has("content.xml"):
-            raise ModelError(Problem(self._file, "this is an OpenDocument file", "save it as .xlsx"))
+            raise ModelError(
+                Problem(self._file, "this is an OpenDocument file", "save it as .xlsx")
+            )
         raise ModelError(Problem(self._file, "this is a zip package, but it holds no workbook"))
 
     def _links(self, part: str) -> dict[str, tuple[str, str]]:
@@ -107,7 +123,11 @@ class _Reader:
         for element in self._root(relations):
             target = attribute(element, "Target") or ""
             if attribute(element, "TargetMode") != "External":
-                target = target.lstrip("/") if target.startswith("/") else posixpath.normpath(posixpath.join(folder, target))
+                target = (
+                    target.lstrip("/")
+                    if target.startswith("/")
+                    else posixpath.normpath(posixpath.join(folder, target))
+                )
             kind = (attribute(element, "Type") or "").rpartition("/")[2]
             links[attribute(element, "Id") or ""] = (kind, target)
         return links
@@ -132,7 +152,9 @@ class _Reader:
             codes: dict[int, str] = dict(BUILTIN_FORMATS)
             custom = child(root, "numFmts")
             for element in children(custom, "numFmt") if custom is not None else ():
-                codes[int(attribute(element, "numFmtId") or 0)] = attribute(element, "formatCode") or GENERAL
+                codes[int(attribute(element, "numFmtId") or 0)] = (
+                    attribute(element, "formatCode") or GENERAL
+                )
             formats = child(root, "cellXfs")
             return [
                 codes.get(int(attribute(element, "numFmtId") or 0), GENERAL)
@@ -151,12 +173,16 @@ class _Reader:
         date_1904: bool,
     ) -> Sheet:
         content = self._package.read(target)
-        cells = read_cells(content, title, strings, date_1904=date_1904, file=self._file, part=target)
+        cells = read_cells(
+            content, title, strings, date_1904=date_1904, file=self._file, part=target
+        )
         positions = [*cells.constants, *cells.formulas]
         filtered: frozenset[int] = frozenset()
         area = _area(title, cells.filter_area)
         if area is not None:
-            filtered = frozenset(row for row in cells.hidden_rows if area.first_row < row <= area.last_row)
+            filtered = frozenset(
+                row for row in cells.hidden_rows if area.first_row < row <= area.last_row
+            )
         codes = {
             position: formats[style]
             for position, style in cells.styles.items()
@@ -214,7 +240,9 @@ class _Reader:
             )
         return tuple(names)
 
-    def _external(self, root: Element, links: Mapping[str, tuple[str, str]]) -> tuple[ExternalWorkbook, ...]:
+    def _external(
+        self, root: Element, links: Mapping[str, tuple[str, str]]
+    ) -> tuple[ExternalWorkbook, ...]:
         holder = child(root, "externalReferences")
         found: list[ExternalWorkbook] = []
         references = list(children(holder, "externalReference")) if holder is not None else []
@@ -236,7 +264,7 @@ class _Reader:
         for element in self._root(part):
             if local(element.tag) == "modified" and element.text:
                 try:
-                    moment = dt.datetime.fromisoformat(element.text.strip().replace("Z", "+00:00"))
+                    moment = dt.datetime.fromisoformat(element.text.strip())
                 except ValueError:
                     return None
                 return moment if moment.tzinfo else moment.replace(tzinfo=dt.UTC)
@@ -274,8 +302,14 @@ def _area(title: str, text: str) -> RangeRef | None:
 
 def _external_book(number: int, target: str, book: Element) -> ExternalWorkbook:
     holder = child(book, "sheetNames")
-    titles = [attribute(e, "val") or "" for e in children(holder, "sheetName")] if holder is not None else []
-    sheets: dict[str, dict[Position, Scalar]] = {}  # sheets whose values the file does not keep are left out
+    titles = (
+        [attribute(e, "val") or "" for e in children(holder, "sheetName")]
+        if holder is not None
+        else []
+    )
+    sheets: dict[
+        str, dict[Position, Scalar]
+    ] = {}  # sheets whose values the file does not keep are left out
     data = child(book, "sheetDataSet")
     for sheet in children(data, "sheetData") if data is not None else ():
         place = int(attribute(sheet, "sheetId") or -1)
@@ -287,7 +321,9 @@ def _external_book(number: int, target: str, book: Element) -> ExternalWorkbook:
                 position = parse_address(attribute(cell, "r") or "")
                 value = child(cell, "v")
                 if position is not None and value is not None:
-                    values[position] = _external_value(attribute(cell, "t") or "n", value.text or "")
+                    values[position] = _external_value(
+                        attribute(cell, "t") or "n", value.text or ""
+                    )
     names = child(book, "definedNames")
     texts = {
         attribute(e, "name") or "": attribute(e, "refersTo") or ""

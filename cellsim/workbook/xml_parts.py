@@ -23,7 +23,9 @@ def parse_part(content: bytes, file: str, part: str) -> Element:
     try:
         root: Element = fromstring(content, forbid_dtd=True)
     except ParseError as error:
-        raise ModelError(Problem(file, f"the part {part} is not well-formed XML: {error}")) from error
+        raise ModelError(
+            Problem(file, f"the part {part} is not well-formed XML: {error}")
+        ) from error
     except DefusedXmlException as error:
         raise refused(file, part) from error
     return root
@@ -31,7 +33,12 @@ def parse_part(content: bytes, file: str, part: str) -> Element:
 
 def refused(file: str, part: str) -> ModelError:
     """What is said of a part that declares a document type or entities."""
-    return ModelError(Problem(file, f"the part {part} declares a document type, which no workbook needs; it is refused"))
+    return ModelError(
+        Problem(
+            file,
+            f"the part {part} declares a document type, which no workbook needs; it is refused",
+        )
+    )
 
 
 def local(name: str) -> str:

@@ -130,7 +130,7 @@ def square_root_times_pi(number: Number) -> float | ErrorValue:
 
 @spreadsheet_function("EXP")
 def exponential(number: Number) -> float:
-    """e to a power."""
+    """E to a power."""
     return math.exp(number)
 
 

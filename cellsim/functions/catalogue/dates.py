@@ -147,7 +147,7 @@ def day_of_week(date: Number, kind: Whole = 1) -> float | ErrorValue:
     if date < 0 or date > LAST_SERIAL:
         return ErrorValue.NUM
     sunday_first = (int(date) - 1) % 7  # Sunday is 0
-    if kind == 1 or kind == 17:
+    if kind in {1, 17}:
         return float(sunday_first + 1)
     monday_first = (sunday_first - 1) % 7
     if kind == 2:

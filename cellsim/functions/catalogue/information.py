@@ -194,7 +194,7 @@ def cell_information(context: Context, kind: Text, where: Operand | None = None)
 
 
 def _format_code(number_format: str) -> str:
-    code = number_format.split(";")[0]
+    code = number_format.split(";", maxsplit=1)[0]
     if code == "General":
         return "G"
     decimals = (

@@ -1,113 +1,142 @@
-"""The sheet Distribution: a histogram of each output with its cumulative line, and its moments."""
+"""Histogram, cumulative line and moments of every output."""
 
 from __future__ import annotations
 
 import math
 
-from xlsxwriter.chart import Chart
+import numpy as np
 
 from cellsim.analysis.histogram import Histogram
+from cellsim.analysis.summarize import Summary
 from cellsim.report.book import Book
-from cellsim.report.charts import bin_chart
 from cellsim.report.figures import OutputFigures
+from cellsim.report.number_formats import finer_code
+from cellsim.report.output_charts import histogram_alt_text, histogram_chart
 from cellsim.report.page import Page
 from cellsim.report.places import DISTRIBUTION, Block, base_bin, distribution_blocks
 from cellsim.report.scale import Scale
+from cellsim.report.wording import precision_note
 
-_TITLES = ("Values", "Draws", "Share", "Share in the base case's bin", "Cumulative share")
+NAME = DISTRIBUTION
+_WIDTHS = (25, 13, 13, 10, 10, 11, 11, 3, 30, 17, 17, 17)
+_LAST = len(_WIDTHS) - 1
+_SIDE = 8
+_CHART_ROW = 15
 
 
-def write_distribution(book: Book) -> None:
+def is_needed(book: Book) -> bool:
+    """Always."""
+    return bool(book.figures.outputs)
+
+
+def write(book: Book) -> None:
     """Write the sheet."""
-    page = book.add_page(DISTRIBUTION, (26, 11, 11, 13, 12, 3, 30, 18), landscape=True)
-    page.title(
-        "Distribution",
-        "How the draws of each output spread. The bin that holds the base case is hatched. Bins that take a long tail "
-        "are marked with 'below' or 'above'.",
-        7,
+    page = book.add_page(NAME, _WIDTHS, landscape=True)
+    lead = (
+        "How the draws of each output spread. A bin takes its lower edge in and leaves its upper edge out. Where a tail is "
+        "long, what lies beyond the last edges is counted in one open bin. Failed draws are left out. "
+        + precision_note(book.results.record.sampling)
     )
-    for number, (output, block) in enumerate(
-        zip(book.figures.outputs, distribution_blocks(book.figures), strict=True)
-    ):
-        page.heading(block.top, f"{output.title}{output.scale.title}", 7)
-        if output.summary is None:
-            page.text(block.first, 0, "Every draw failed.")
-            continue
-        _bins(page, output, output.summary.histogram, block)
-        _moments(page, output, block)
-        chart = histogram_chart(book, number)
-        if chart is not None:
-            chart.set_size({"width": 560, "height": 360})
-            page.chart(
-                block.first + 14, 6, chart, f"Histogram of {output.title} with its cumulative share"
-            )
+    page.title("Distribution", lead, _LAST)
+    page.worksheet.freeze_panes(3, 0)
+    page.worksheet.repeat_rows(0)
+    blocks = distribution_blocks(book.figures)
+    for output, block in zip(book.figures.outputs, blocks, strict=True):
+        _write_block(book, page, output, block)
+    page.worksheet.set_h_pagebreaks([block.top for block in blocks[1:]])
 
 
-def _bins(page: Page, output: OutputFigures, found: Histogram, block: Block) -> None:
-    page.header(block.top + 2, _TITLES)
-    total = int(found.counts.sum())
-    own = base_bin(output)
-    done = 0
-    for k, count in enumerate(found.counts):
-        row = block.first + k
-        done += int(count)
-        page.text(row, 0, bin_label(output.scale, float(found.lower[k]), float(found.upper[k])))
-        page.count(row, 1, int(count))
-        page.share(row, 2, 0.0 if k == own else count / total)
-        page.share(row, 3, count / total if k == own else 0.0)
-        page.share(row, 4, done / total)
-
-
-def bin_label(scale: Scale, lower: float, upper: float) -> str:
-    """What a bin is called."""
-    if lower == upper:
-        return scale.bare_text(lower)
-    if math.isinf(lower):
-        return f"below {scale.bare_text(upper)}"
-    if math.isinf(upper):
-        return f"above {scale.bare_text(lower)}"
-    return f"{scale.bare_text(lower)} to {scale.bare_text(upper)}"
-
-
-def _moments(page: Page, output: OutputFigures, block: Block) -> None:
+def _write_block(book: Book, page: Page, output: OutputFigures, block: Block) -> None:
+    unit = f" ({output.scale.unit})" if output.scale.unit else ""
+    page.heading(block.top, f"{output.title}{unit} — {output.record.place}", _LAST)
     if output.summary is None:
+        page.text(block.first, 0, "No draw gave a number.", "plain")
         return
-    m, scale = output.summary.moments, output.scale
-    rows = (
-        ("Draws", float(m.count), "#,##0"),
-        ("Failed draws", float(output.summary.failed), "#,##0"),
-        ("Mean", m.mean, scale.code),
-        ("Standard error of the mean", m.mean_se, scale.spread_code),
-        ("Standard deviation", m.sd, scale.spread_code),
-        ("Standard error of that", m.sd_se, scale.spread_code),
-        ("Skewness", m.skewness, "0.00"),
-        ("Excess kurtosis", m.excess_kurtosis, "0.00"),
-        ("Smallest", m.minimum, scale.code),
-        ("Largest", m.maximum, scale.code),
+    _write_bins(page, output, output.summary.histogram, block)
+    _write_moments(page, output, output.summary, block)
+    chart = histogram_chart(book.workbook, output, block)
+    chart.set_size({"width": 580, "height": 430})
+    page.chart(block.first + _CHART_ROW, _SIDE, chart, histogram_alt_text(output))
+
+
+def _write_bins(page: Page, output: OutputFigures, bins: Histogram, block: Block) -> None:
+    titles = (
+        "Value" if bins.separate else "Bin",
+        "From",
+        "To below",
+        "Draws",
+        "Share",
+        "Cumulative share",
+        "Bin with base case",
     )
-    page.header(block.top + 2, ("Figure", "Value"), first=6)
-    for k, (title, value, code) in enumerate(rows):
-        page.text(block.first + k, 6, title)
-        page.number(block.first + k, 7, value, code)
-    page.text(block.first + len(rows), 6, "Base case")
-    page.scalar(block.first + len(rows), 7, output.record.base, scale.code)
+    page.header(block.first - 1, titles)
+    total = int(bins.counts.sum())
+    running = np.cumsum(bins.counts).tolist()
+    marked = base_bin(output)
+    edges = zip(bins.lower.tolist(), bins.upper.tolist(), strict=True)
+    code = bin_code(bins, output.scale)
+    for k, (lower, upper) in enumerate(edges):
+        row = block.first + k
+        page.text(row, 0, bin_label(lower, upper, Scale(code, code, "")))
+        page.number(row, 1, lower, code)
+        page.number(row, 2, upper, code)
+        page.count(row, 3, int(bins.counts[k]))
+        share = int(bins.counts[k]) / total
+        page.share(
+            row, 4, share if k != marked else 0.0, '0.0%;-0.0%;"–"' if k == marked else "0.0%"
+        )
+        page.share(row, 5, running[k] / total)
+        if k == marked:
+            page.share(row, 6, share)
 
 
-def histogram_chart(book: Book, number: int) -> Chart | None:
-    """The chart of an output's histogram; None if all its draws failed."""
-    output = book.figures.outputs[number]
-    block = distribution_blocks(book.figures)[number]
-    if output.summary is None:
-        return None
+def bin_code(bins: Histogram, scale: Scale) -> str:
+    """The number format with decimals enough to tell the edges apart."""
+    finite = bins.lower[np.isfinite(bins.lower)]
+    if scale.is_date or bins.separate or len(finite) < 2:
+        return scale.code
+    step = float(np.diff(finite).min())
+    short = float(f"{step:.2g}")
+    return finer_code(scale.code, short * 10 if float(f"{step:.1g}") == short else short)
 
-    def span(column: int) -> tuple[str, int, int, int, int]:
-        return DISTRIBUTION, block.first, column, block.last, column
 
-    return bin_chart(
-        book.workbook,
-        f"{output.title}: share of draws by value",
-        span(0),
-        (("Share of draws", span(2)), ("The base case's bin", span(3))),
-        span(4),
-        {"name": f"{output.title}{output.scale.title}"},
+def bin_label(lower: float, upper: float, scale: Scale) -> str:
+    """A bin in words: `12.0 to 14.0`, `below 3.0`, `80.0 and above`, or the value."""
+    if lower == upper:
+        return scale.text(lower)
+    if math.isinf(lower):
+        return f"below {scale.text(upper)}"
+    if math.isinf(upper):
+        return f"{scale.text(lower)} and above"
+    return f"{scale.text(lower)} to {scale.text(upper)}"
+
+
+def _write_moments(page: Page, output: OutputFigures, summary: Summary, block: Block) -> None:
+    page.header(block.first - 1, ("Figure", "Value", "Standard error", ""), first=_SIDE)
+    found, code, spread = summary.moments, output.scale.code, output.scale.spread_code
+    row = block.first
+    page.text(row, _SIDE, "Base case")
+    page.scalar(row, _SIDE + 1, output.record.base, code)
+    page.text(row + 1, _SIDE, "Mean")
+    page.number(row + 1, _SIDE + 1, found.mean, code)
+    page.number(row + 1, _SIDE + 2, found.mean_se, finer_code(spread, found.mean_se or 0.0))
+    page.text(row + 2, _SIDE, "Standard deviation")
+    page.number(row + 2, _SIDE + 1, found.sd, finer_code(spread, found.sd or 0.0))
+    page.number(row + 2, _SIDE + 2, found.sd_se, finer_code(spread, found.sd_se or 0.0))
+    plain = (
+        ("Median", float(summary.quantiles.values[52]), code),
+        ("Smallest", found.minimum, code),
+        ("Largest", found.maximum, code),
+        ("Skewness", found.skewness, "0.00"),
+        ("Excess kurtosis", found.excess_kurtosis, "0.00"),
     )
+    for k, (name, value, shown) in enumerate(plain, start=3):
+        page.text(row + k, _SIDE, name)
+        page.number(row + k, _SIDE + 1, value, shown)
+    row += 3 + len(plain)
+    page.text(row, _SIDE, "Draws with a number")
+    page.count(row, _SIDE + 1, found.count)
+    page.text(row + 1, _SIDE, "Failed draws")
+    page.count(row + 1, _SIDE + 1, summary.failed)
+    page.text(row + 2, _SIDE, "Draws below the base case")
+    page.share(row + 2, _SIDE + 1, output.at_base.below.share if output.at_base else None)

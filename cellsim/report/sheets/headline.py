@@ -1,118 +1,188 @@
-"""The sheet Headline: one page for someone who has never heard of this program."""
+"""The first sheet: one printed page with what most readers want to know."""
 
 from __future__ import annotations
 
 from cellsim.report.book import Book
-from cellsim.report.charts import Line, curve_chart
-from cellsim.report.figures import central_range
-from cellsim.report.number_formats import PERCENT
+from cellsim.report.figures import OutputFigures, central_range
+from cellsim.report.output_charts import (
+    cumulative_alt_text,
+    cumulative_chart,
+    histogram_alt_text,
+    histogram_chart,
+)
 from cellsim.report.page import Page
-from cellsim.report.palette import BASE_LINE, CURVE
-from cellsim.report.places import HEADLINE, QUANTILES, quantile_blocks
-from cellsim.report.sheets.distribution import histogram_chart
-from cellsim.report.wording import CAUTION, output_sentence, question, warnings
+from cellsim.report.places import (
+    HEADLINE,
+    QUANTILES,
+    distribution_blocks,
+    quantile_blocks,
+)
+from cellsim.report.plain_text import one_line
+from cellsim.report.wording import CAUTION, asked, cautions, output_sentences
 
-_TITLES = ("Output", "Base case", "Mean", "10 %", "Median", "90 %", "Draws below base case")
-_LAST = len(_TITLES) - 1
-_SENTENCES = 6
-_CHART_ROWS = 18
+NAME = HEADLINE
+_WIDTHS = (34, 9, 16, 16, 16, 16, 16, 13)
+_LAST = len(_WIDTHS) - 1
+_MOST_ON_ONE_PAGE = 8
+_MOST_WORDED = 6
+_MOST_CAUTIONS = 8
+_CHART_ROWS = 17
 
 
-def write_headline(book: Book) -> None:
+def is_needed(book: Book) -> bool:  # noqa: ARG001  (every sheet is asked)
+    """Always."""
+    return True
+
+
+def write(book: Book) -> None:
     """Write the sheet."""
-    page = book.add_page(HEADLINE, (30, 14, 14, 14, 14, 14, 14))
-    page.worksheet.fit_to_pages(1, 1)
-    row = page.title("What the draws say", question(book), _LAST)
-    page.paragraph(2, CAUTION, _LAST, kind="caution")
-    for output in book.figures.outputs[:_SENTENCES]:
-        page.paragraph(row, output_sentence(output), _LAST)
-        row += 1
-    row = _table(book, page, row + 1)
-    row = _thresholds(book, page, row)
-    notes = list(warnings(book))
-    page.heading(row, "What to be careful of", _LAST)
-    for note in notes or ["Nothing out of the ordinary was found."]:
-        row += 1
-        page.paragraph(row, note, _LAST)
-    row += 2
-    if book.figures.outputs[0].summary is not None:
-        _charts(book, page, row)
-        row += 2 * _CHART_ROWS + 1
-    for k, name in enumerate(book.sheet_names[1:]):
-        page.link(row + k // 4, k % 4, name, f"To {name}")
-
-
-def _table(book: Book, page: Page, row: int) -> int:
-    page.header(row, _TITLES)
-    for output in book.figures.outputs:
-        row += 1
-        unit = f" ({output.scale.unit})" if output.scale.unit else ""
-        page.text(row, 0, output.title + unit, "strong")
-        page.fit_row(row, [(output.title + unit, page.widths[0])])
-        page.scalar(row, 1, output.record.base, output.scale.code)
-        if output.summary is None:
-            continue
-        low, middle, high = central_range(output.summary)
-        for column, value in enumerate((output.summary.moments.mean, low, middle, high), start=2):
-            page.number(row, column, value, output.scale.code)
-        page.share(row, 6, output.at_base.below.share if output.at_base is not None else None)
-    return row + 2
-
-
-def _thresholds(book: Book, page: Page, row: int) -> int:
-    pairs = [
-        (output, threshold, found)
-        for output in book.figures.outputs
-        for threshold, found in zip(output.record.thresholds, output.thresholds, strict=True)
-    ]
-    if not pairs:
-        return row
-    page.header(
-        row,
-        ("Threshold", "Asked as", "Value", "Share above", "95 % from", "95 % to", "Share below"),
-    )
-    for output, threshold, found in pairs:
-        row += 1
-        page.text(row, 0, output.title, "strong")
-        page.text(row, 1, threshold.text, "number")
-        page.number(row, 2, threshold.value, output.scale.code)
-        if found is not None:
-            shares = (found.above.share, found.above.lower, found.above.upper, found.below.share)
-            for column, share in enumerate(shares, start=3):
-                page.share(row, column, share, PERCENT)
-    return row + 2
-
-
-def _charts(book: Book, page: Page, row: int) -> None:
-    output = book.figures.outputs[0]
-    block = quantile_blocks(book.figures)[0]
-    span = (QUANTILES, block.first, 1, block.last, 1)
-    lines = [
-        Line("Share of draws at or below", span, (QUANTILES, block.first, 0, block.last, 0), CURVE)
-    ]
-    if output.base is not None:
-        page.worksheet.write_row(row, 9, (output.base, 0))
-        page.worksheet.write_row(row + 1, 9, (output.base, 1))
-        page.worksheet.set_column(9, 10, None, None, {"hidden": True})
-        lines.append(
-            Line(
-                "Base case",
-                (HEADLINE, row, 9, row + 1, 9),
-                (HEADLINE, row, 10, row + 1, 10),
-                BASE_LINE,
-            )
+    page = book.add_page(NAME, _WIDTHS)
+    row = (
+        page.title(
+            f"Results: {one_line(book.results.record.model, 60)}", asked(book.results), _LAST
         )
-    chart = curve_chart(
-        book.workbook,
-        f"{output.title}: cumulative share of draws",
-        lines,
-        {"name": f"{output.title}{output.scale.title}", "num_format": output.scale.code},
-        {"name": "Share of draws", "num_format": "0%", "min": 0, "max": 1},
+        - 1
     )
-    chart.show_hidden_data()
-    chart.set_size({"width": 800, "height": 310})
-    page.chart(row, 0, chart, f"Cumulative share of draws of {output.title}")
-    bars = histogram_chart(book, 0)
-    if bars is not None:
-        bars.set_size({"width": 800, "height": 310})
-        page.chart(row + _CHART_ROWS, 0, bars, f"Histogram of {output.title}")
+    row = _write_outputs(book, page, row + 1)
+    row = _write_thresholds(book, page, row)
+    row = _write_charts(book, page, row)
+    row = _write_words(book, page, row)
+    row = _write_cautions(book, page, row)
+    page.paragraph(row, CAUTION, _LAST, kind="caution")
+    _write_links(book, page, row + 2)
+    if len(book.figures.outputs) <= _MOST_ON_ONE_PAGE:
+        page.worksheet.fit_to_pages(1, 1)
+
+
+def _write_outputs(book: Book, page: Page, row: int) -> int:
+    page.heading(row, "Outputs", _LAST)
+    titles = (
+        "Output",
+        "Unit",
+        "Base case",
+        "Mean",
+        "Median",
+        "80 % of draws from",
+        "80 % of draws to",
+        "Draws below base case",
+    )
+    page.header(row + 1, titles, numbers_from=2)
+    row += 2
+    blocks = quantile_blocks(book.figures)
+    for output, block in zip(book.figures.outputs, blocks, strict=True):
+        _write_output(page, row, output, block.top)
+        row += 1
+    return row + 1
+
+
+def _write_output(page: Page, row: int, output: OutputFigures, top: int) -> None:
+    code = output.scale.code
+    page.link(row, 0, QUANTILES, output.title, f"A{top + 1}")
+    page.fit_row(row, [(output.title, page.widths[0])])
+    page.text(row, 1, output.scale.unit, "wrapped")
+    page.scalar(row, 2, output.record.base, code)
+    summary = output.summary
+    low, middle, high = central_range(summary) if summary is not None else (None, None, None)
+    page.number(row, 3, summary.moments.mean if summary is not None else None, code)
+    page.number(row, 4, middle, code)
+    page.number(row, 5, low, code)
+    page.number(row, 6, high, code)
+    page.share(row, 7, output.at_base.below.share if output.at_base is not None else None)
+
+
+def _write_thresholds(book: Book, page: Page, row: int) -> int:
+    rows = [
+        (output, threshold, about)
+        for output in book.figures.outputs
+        for threshold, about in zip(output.record.thresholds, output.thresholds, strict=True)
+    ]
+    if not rows:
+        return row
+    page.heading(row, "Thresholds", _LAST)
+    titles = (
+        "Output",
+        "Unit",
+        "Threshold",
+        "Set by",
+        "Draws above",
+        "95 % from",
+        "95 % to",
+        "Draws at or below",
+    )
+    page.header(row + 1, titles, numbers_from=2)
+    row += 2
+    for output, threshold, about in rows:
+        page.text(row, 0, output.title, "wrapped")
+        page.fit_row(row, [(output.title, page.widths[0]), (threshold.text, page.widths[3])])
+        page.text(row, 1, output.scale.unit, "wrapped")
+        page.number(row, 2, threshold.value, output.scale.code)
+        page.text(
+            row, 3, threshold.text if threshold.text.startswith("=") else "side-car", "wrapped"
+        )
+        page.share(row, 4, about.above.share if about else None)
+        page.share(row, 5, about.above.lower if about else None)
+        page.share(row, 6, about.above.upper if about else None)
+        page.share(row, 7, 1 - about.above.share if about else None)
+        row += 1
+    return row + 1
+
+
+def _write_charts(book: Book, page: Page, row: int) -> int:
+    places = zip(
+        book.figures.outputs,
+        quantile_blocks(book.figures),
+        distribution_blocks(book.figures),
+        strict=True,
+    )
+    found = next((place for place in places if place[0].summary is not None), None)
+    if found is None:
+        return row
+    output, quantiles, bins = found
+    size = {"width": 488, "height": 330}
+    curve = cumulative_chart(book.workbook, output, quantiles)
+    curve.set_size(size)
+    page.chart(row, 0, curve, cumulative_alt_text(output))
+    columns = histogram_chart(book.workbook, output, bins)
+    columns.set_size({**size, "x_offset": 20})
+    page.chart(row, 4, columns, histogram_alt_text(output))
+    return row + _CHART_ROWS
+
+
+def _write_words(book: Book, page: Page, row: int) -> int:
+    page.heading(row, "In words", _LAST)
+    row += 1
+    outputs = book.figures.outputs
+    for output in outputs[:_MOST_WORDED]:
+        page.paragraph(row, output_sentences(output), _LAST)
+        row += 1
+    if len(outputs) > _MOST_WORDED:
+        page.paragraph(
+            row, f"{len(outputs) - _MOST_WORDED:,} more outputs are in the table above.", _LAST
+        )
+        row += 1
+    return row + 1
+
+
+def _write_cautions(book: Book, page: Page, row: int) -> int:
+    page.heading(row, "To be careful of", _LAST)
+    row += 1
+    found = cautions(book.results, book.figures)
+    for text in found[:_MOST_CAUTIONS] or [
+        "Nothing stood out in the draws, the inputs or the model check."
+    ]:
+        page.paragraph(row, text, _LAST)
+        row += 1
+    if len(found) > _MOST_CAUTIONS:
+        page.paragraph(
+            row,
+            f"{len(found) - _MOST_CAUTIONS:,} more remarks like these; see the other sheets.",
+            _LAST,
+        )
+        row += 1
+    return row + 1
+
+
+def _write_links(book: Book, page: Page, row: int) -> None:
+    page.text(row, 0, "In this workbook", "strong")
+    for k, name in enumerate(book.sheet_names[1:]):
+        page.link(row + 1 + k // (_LAST + 1), k % (_LAST + 1), name, name)

@@ -1,92 +1,166 @@
-"""The sheet Inputs: what was put in, asked and as drawn."""
+"""Every input as it was asked for and as it was drawn."""
 
 from __future__ import annotations
 
+import math
+
+from xlsxwriter.chart import Chart
+
+from cellsim.analysis.histogram import Histogram
 from cellsim.report.book import Book
-from cellsim.report.charts import bin_chart
+from cellsim.report.charts import Line, curve_chart
 from cellsim.report.figures import InputFigures
+from cellsim.report.number_formats import finer_code
 from cellsim.report.page import Page
+from cellsim.report.palette import BASE_LINE, CURVE
 from cellsim.report.places import INPUTS
-from cellsim.report.sheets.distribution import bin_label
+from cellsim.report.plain_text import one_line
 
-_ROWS = 22
-_TOP = 4
+NAME = INPUTS
+_WIDTHS = (24, 15, 9, 34, 13, 10, 13, 13, 13, 13, 13, 13, 13, 13, 13, 30, 24)
+_TITLES = (
+    "Input", "Place", "Unit", "Distribution", "Base value", "Base at percentile", "Mean asked", "Mean drawn",
+    "Standard deviation asked", "Standard deviation drawn", "Smallest drawn", "5 % drawn", "50 % drawn", "95 % drawn",
+    "Largest drawn", "Why", "Source",
+)  # fmt: skip
+_LAST = len(_WIDTHS) - 1
+_ACROSS = (0, 4, 9)
+_CHART_ROWS = 15
+_CHART_SIZE = {"width": 480, "height": 270}
+_P5, _P50, _P95 = 7, 52, 97
 
 
-def write_inputs(book: Book) -> None:
+def is_needed(book: Book) -> bool:
+    """When there are inputs."""
+    return bool(book.figures.inputs)
+
+
+def write(book: Book) -> None:
     """Write the sheet."""
-    page = book.add_page(INPUTS, (26, 16, 16, 3, 24, 11, 11))
-    page.title("Inputs", "Each uncertain input: what was asked of it and what was drawn.", 6)
-    for number, found in enumerate(book.figures.inputs):
-        bins = len(found.summary.histogram.counts) if found.summary is not None else 0
-        top = _TOP + sum(
-            max(_ROWS + 16, 3 + (len(f.summary.histogram.counts) if f.summary else 0)) + 2
-            for f in book.figures.inputs[:number]
-        )
-        _input(book, page, found, top, bins)
-
-
-def _input(book: Book, page: Page, found: InputFigures, top: int, bins: int) -> None:
-    record, scale, summary = found.record, found.scale, found.summary
-    page.heading(top, f"{found.title}{scale.title}", 6)
-    row = top + 1
-    for title, text in (
-        ("Name", record.name),
-        ("Cell", record.place),
-        ("Distribution", record.distribution),
-        ("Why", record.note),
-        ("Source", record.source),
-    ):
-        if text:
-            page.text(row, 0, title)
-            page.worksheet.merge_range(row, 1, row, 2, "", book.styles.get("wrapped"))
-            page.text(row, 1, text, "wrapped")
-            page.fit_row(row, [(text, page.widths[1] + page.widths[2])])
-            row += 1
-    page.header(row, ("", "Asked", "Drawn"))
-    moments = summary.moments if summary is not None else None
-    page.text(row + 1, 0, "Mean")
-    page.number(row + 1, 1, record.mean, scale.code)
-    page.number(row + 1, 2, moments.mean if moments else None, scale.code)
-    page.text(row + 2, 0, "Standard deviation")
-    page.number(row + 2, 1, record.sd, scale.spread_code)
-    page.number(row + 2, 2, moments.sd if moments else None, scale.spread_code)
-    page.text(row + 3, 0, "Lowest")
-    page.number(row + 3, 1, record.lower, scale.code)
-    page.number(row + 3, 2, moments.minimum if moments else None, scale.code)
-    page.text(row + 4, 0, "Highest")
-    page.number(row + 4, 1, record.upper, scale.code)
-    page.number(row + 4, 2, moments.maximum if moments else None, scale.code)
-    page.text(row + 5, 0, "Base value, and its percentile")
-    page.number(row + 5, 1, record.base, scale.code)
-    page.share(row + 5, 2, record.base_percentile)
-    if summary is not None:
-        for k, place in enumerate((7, 12, 27, 52, 77, 92, 97)):
-            share, value = summary.quantiles.probabilities[place], summary.quantiles.values[place]
-            page.text(row + 6 + k, 0, f"{share:.0%} of the draws lie below")
-            page.number(row + 6 + k, 2, float(value), scale.code)
-        _bins(book, page, found, top, bins)
-
-
-def _bins(book: Book, page: Page, found: InputFigures, top: int, bins: int) -> None:
-    if found.summary is None:
-        return
-    counts = found.summary.histogram
-    page.header(top + 1, ("Values", "Draws", "Share"), first=4)
-    total = int(counts.counts.sum())
-    for k, count in enumerate(counts.counts):
-        label = bin_label(found.scale, float(counts.lower[k]), float(counts.upper[k]))
-        page.text(top + 2 + k, 4, label)
-        page.count(top + 2 + k, 5, int(count))
-        page.share(top + 2 + k, 6, count / total)
-    first, last = top + 2, top + 1 + bins
-    chart = bin_chart(
-        book.workbook,
-        f"{found.title}: share of draws by value",
-        (INPUTS, first, 4, last, 4),
-        (("Share of draws", (INPUTS, first, 6, last, 6)),),
-        None,
-        {"name": f"{found.title}{found.scale.title}"},
+    page = book.add_page(NAME, _WIDTHS, landscape=True)
+    lead = (
+        "What is uncertain: the distribution asked for, the model's own value and where it lies in that distribution, and "
+        "what was drawn. Asked and drawn differ by chance only."
     )
-    chart.set_size({"width": 410, "height": 300})
-    page.chart(top + 20, 0, chart, f"How the draws of {found.title} spread")
+    row = page.title("Inputs", lead, _LAST)
+    page.header(row, _TITLES, numbers_from=4)
+    page.repeat(row, row)
+    row += 1
+    for item in book.figures.inputs:
+        _write_row(page, row, item)
+        row += 1
+    _write_charts(book, page, row + 1)
+
+
+def _write_row(page: Page, row: int, item: InputFigures) -> None:
+    record, code, spread = item.record, item.scale.code, item.scale.spread_code
+    name = (
+        record.name
+        if not record.label or record.label == record.name
+        else f"{record.label}\n({record.name})"
+    )
+    wrapped = {
+        0: name,
+        1: record.place,
+        2: item.scale.unit,
+        3: record.distribution,
+        15: record.note,
+        16: record.source,
+    }
+    for column, text in wrapped.items():
+        page.text(row, column, text, "wrapped")
+    page.fit_row(row, [(text, page.widths[column]) for column, text in wrapped.items()])
+    page.number(row, 4, record.base, code)
+    page.share(row, 5, record.base_percentile)
+    page.number(row, 6, record.mean, code)
+    page.number(row, 8, record.sd, finer_code(spread, record.sd))
+    found = item.summary
+    sd = found.moments.sd if found else None
+    page.number(row, 7, found.moments.mean if found else None, code)
+    page.number(row, 9, sd, finer_code(spread, sd or 0.0))
+    page.number(row, 10, found.moments.minimum if found else None, code)
+    for column, place in ((11, _P5), (12, _P50), (13, _P95)):
+        page.number(row, column, float(found.quantiles.values[place]) if found else None, code)
+    page.number(row, 14, found.moments.maximum if found else None, code)
+
+
+def _write_charts(book: Book, page: Page, row: int) -> None:
+    """Density charts in rows of three, and below them the table that they are drawn from."""
+    drawn = [item for item in book.figures.inputs if item.summary is not None]
+    if not drawn:
+        return
+    page.heading(row, "Densities of the draws", _LAST)
+    row += 1
+    rows_of_charts = math.ceil(len(drawn) / len(_ACROSS))
+    table = row + rows_of_charts * _CHART_ROWS + 1
+    page.heading(table, "What the charts are drawn from", _LAST)
+    page.header(table + 1, ("Input", "Value", "Density"), numbers_from=1)
+    place = table + 2
+    for k, item in enumerate(drawn):
+        place, chart = _write_density(book, page, place, item)
+        page.chart(
+            row + k // len(_ACROSS) * _CHART_ROWS,
+            _ACROSS[k % len(_ACROSS)],
+            chart,
+            f"Density of the draws of {item.title}; the base value is a dashed upright line.",
+        )
+
+
+def _write_density(book: Book, page: Page, row: int, item: InputFigures) -> tuple[int, Chart]:
+    """Write an input's outline and base line; the next free row and the chart are given back."""
+    if item.summary is None:
+        raise AssertionError("an input without draws has no density")
+    outline = density_outline(item.summary.histogram)
+    first = row
+    top = max(height for _, height in outline)
+    lines = [("Draws", outline)]
+    if item.record.base is not None and math.isfinite(item.record.base):
+        lines.append(("Base value", [(item.record.base, 0.0), (item.record.base, top)]))
+    made = []
+    for name, points in lines:
+        start = row
+        for x, height in points:
+            page.text(row, 0, item.title if row == first else "" if row > start else name)
+            page.number(row, 1, x, item.scale.code)
+            page.number(row, 2, height, "0.00E+00")
+            row += 1
+        style = CURVE if name == "Draws" else BASE_LINE
+        made.append(Line(name, (NAME, start, 1, row - 1, 1), (NAME, start, 2, row - 1, 2), style))
+    height_name = "Share of draws" if item.summary.histogram.separate else "Density of draws"
+    chart = curve_chart(
+        book.workbook,
+        f"Input: {one_line(item.title, 45)}",
+        made,
+        {
+            "name": f"Value{item.scale.title}",
+            "num_format": item.scale.code,
+            "label_position": "low",
+        },
+        {
+            "name": height_name,
+            "num_format": "General" if not item.summary.histogram.separate else "0%",
+            "min": 0,
+        },
+    )
+    chart.set_size(_CHART_SIZE)
+    return row, chart
+
+
+def density_outline(bins: Histogram) -> list[tuple[float, float]]:
+    """The outline of a histogram: steps of its density, or spikes at separate values.
+
+    Open bins of long tails have no width and so no density; they are left out of the outline.
+    """
+    total = float(bins.counts.sum())
+    points: list[tuple[float, float]] = []
+    for lower, upper, count in zip(
+        bins.lower.tolist(), bins.upper.tolist(), bins.counts.tolist(), strict=True
+    ):
+        if bins.separate:
+            points += [(lower, 0.0), (lower, count / total), (lower, 0.0)]
+        elif math.isfinite(lower) and math.isfinite(upper):
+            density = count / total / (upper - lower)
+            points += [(lower, density), (upper, density)]
+    if bins.separate:
+        return points
+    return [(points[0][0], 0.0), *points, (points[-1][0], 0.0)]
