@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -9,6 +10,7 @@ from typing import Any
 from xlsxwriter import Workbook
 from xlsxwriter.chart import Chart
 
+from cellsim.analysis.histogram import round_width
 from cellsim.report.palette import (
     AXIS_LINE,
     CLAY,
@@ -22,6 +24,8 @@ from cellsim.report.styles import FONT
 
 _NAME_FONT = {"name": FONT["font_name"], "size": 9, "bold": False, "color": INK}
 _TITLE_FONT = {"name": FONT["font_name"], "size": 11, "bold": True, "color": INK}
+
+_STEPS = 7
 
 Span = tuple[str, int, int, int, int]
 """Sheet name, first row, first column, last row, last column."""
@@ -151,6 +155,28 @@ def bin_chart(
     return chart
 
 
+def round_bounds(low: float, high: float) -> dict[str, Any]:
+    """Bounds and steps of an axis at round numbers; none where they would not be exact enough.
+
+    Args:
+        low: Smallest value to show.
+        high: Largest value to show.
+
+    Returns:
+        Axis properties.
+    """
+    span = high - low
+    if not math.isfinite(span) or span <= 0 or span < 1e-9 * max(abs(low), abs(high)):
+        return {}
+    step, power = round_width(span / _STEPS)
+    width = step * 10.0**power
+    if not 0 < width < math.inf:
+        return {}
+    ends = (math.floor(low / width) * step, math.ceil(high / width) * step)
+    first, last = (end * 10.0**power if power >= 0 else end / 10.0**-power for end in ends)
+    return {"min": first, "max": last, "major_unit": width}
+
+
 def _new(workbook: Workbook, options: dict[str, Any]) -> Chart:
     chart = workbook.add_chart(options)
     if chart is None:
@@ -170,8 +196,8 @@ def _axis(given: dict[str, Any], *, grid: bool = False, rotation: int = 0) -> di
 
 def _dress(chart: Chart, title: str, x_axis: dict[str, Any], y_axis: dict[str, Any]) -> None:
     chart.set_title({"name": title, "name_font": _TITLE_FONT, "overlay": False})
-    chart.set_x_axis(x_axis)
-    chart.set_y_axis(y_axis)
+    chart.set_x_axis({"crossing": "min", **x_axis})
+    chart.set_y_axis({"crossing": "min", **y_axis})
     chart.set_legend({"position": "bottom", "font": _NAME_FONT})
     chart.set_chartarea({"border": {"color": INK, "width": 0.5}, "fill": {"color": PAPER}})
     chart.set_plotarea({"fill": {"color": PAPER}})

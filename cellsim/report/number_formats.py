@@ -111,9 +111,11 @@ def is_date_code(code: str) -> bool:
     tokens = _tokens(code) or []
     return any(
         kind == "date"
-        or kind == "bracket"
-        and spelling[1].lower() in "hms"
-        and spelling[1:-1].lower() in {"h", "hh", "m", "mm", "s", "ss"}
+        or (
+            kind == "bracket"
+            and spelling[1].lower() in "hms"
+            and spelling[1:-1].lower() in {"h", "hh", "m", "mm", "s", "ss"}
+        )
         for kind, spelling in tokens
     )
 

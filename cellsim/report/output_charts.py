@@ -8,7 +8,7 @@ from typing import Any
 from xlsxwriter import Workbook
 from xlsxwriter.chart import Chart
 
-from cellsim.report.charts import Line, Span, bin_chart, curve_chart
+from cellsim.report.charts import Line, Span, bin_chart, curve_chart, round_bounds
 from cellsim.report.figures import OutputFigures
 from cellsim.report.palette import BASE_LINE, CURVE, THRESHOLD_LINE
 from cellsim.report.places import DISTRIBUTION, QUANTILES, Block, base_bin
@@ -69,24 +69,14 @@ def cumulative_chart(workbook: Workbook, output: OutputFigures, block: Block) ->
 
 
 def _bounds(output: OutputFigures) -> dict[str, Any]:
-    """Axis bounds about the body of the draws and the marks, at round numbers."""
+    """Axis bounds about the body of the draws and the marks that are not far from it."""
     summary = output.summary
     if summary is None:
         return {}
-    body = summary.quantiles.values[[1, -2]]
-    marks = [value for _, value in mark_values(output)]
-    low, high = (
-        min(float(body[0]), *marks, float(body[1])),
-        max(float(body[1]), *marks, float(body[0])),
-    )
-    span = high - low
-    if not math.isfinite(span) or span <= 0:
-        return {}
-    unit = 10.0 ** math.floor(math.log10(span / 2))
-    first, last = low / unit, high / unit
-    if not (math.isfinite(first) and math.isfinite(last)) or max(abs(first), abs(last)) > 1e9:
-        return {}
-    return {"min": math.floor(first) * unit, "max": math.ceil(last) * unit}
+    low, high = (float(value) for value in summary.quantiles.values[[1, -2]])
+    reach = 2 * (high - low)
+    near = [value for _, value in mark_values(output) if low - reach <= value <= high + reach]
+    return round_bounds(min(low, *near, high), max(low, *near, high))
 
 
 def cumulative_alt_text(output: OutputFigures) -> str:
@@ -104,9 +94,11 @@ def histogram_chart(workbook: Workbook, output: OutputFigures, block: Block) -> 
     if base_bin(output) is not None:
         columns.append(("Bin with the base case", _column(block, BASE_SHARE)))
     bins = block.last - block.first + 1
+    separate = output.summary is not None and output.summary.histogram.separate
+    edge = "Value" if separate else "Lower edge of bin"
     title = f"Distribution: {one_line(output.title, 50)}"
     x_axis = {
-        "name": f"Value{output.scale.title}",
+        "name": f"{edge}{output.scale.title}",
         "interval_unit": max(1, math.ceil(bins / _MOST_LABELS)),
     }
     return bin_chart(workbook, title, labels, columns, _column(block, CUMULATIVE), x_axis)

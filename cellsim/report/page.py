@@ -15,6 +15,7 @@ from cellsim.values import ErrorValue, Scalar
 
 NO_NUMBER = "–"
 _LINE_HEIGHT = 13.5
+_CHARACTER = 0.88  # width of a usual letter in those of a digit, on the safe side
 _A4 = 9
 
 
@@ -43,6 +44,8 @@ class Page:
         self.widths = tuple(widths)
         for column, width in enumerate(widths):
             worksheet.set_column(column, column, width, styles.get("plain"))
+        self._heights: dict[int, float] = {}
+        worksheet.set_default_row(_LINE_HEIGHT)
         worksheet.hide_gridlines(2)
         worksheet.set_paper(_A4)
         worksheet.set_margins(left=0.5, right=0.5, top=0.6, bottom=0.7)
@@ -110,14 +113,14 @@ class Page:
             ),
             default=1,
         )
-        self.worksheet.set_row(row, _LINE_HEIGHT * lines + 3)
+        self._heighten(row, _LINE_HEIGHT * lines + 3)
 
     def heading(self, row: int, text: str, last: int, first: int = 0) -> None:
         """Write a heading with a line under it, over several columns."""
         for column in range(first, last + 1):
             self.worksheet.write_blank(row, column, None, self._styles.get("heading"))
         self.text(row, first, text, "heading")
-        self.worksheet.set_row(row, 20)
+        self._heighten(row, 20)
 
     def paragraph(
         self, row: int, text: str, last: int, *, first: int = 0, kind: str = "lead"
@@ -133,14 +136,19 @@ class Page:
     def fit_row(self, row: int, texts: Sequence[tuple[str, float]]) -> None:
         """Make a row high enough for wrapped texts, each with the width that it has in characters."""
         lines = max((_lines(text, width) for text, width in texts), default=1)
-        self.worksheet.set_row(row, min(_LINE_HEIGHT * lines + 2, 400))
+        self._heighten(row, _LINE_HEIGHT * lines)
+
+    def _heighten(self, row: int, height: float) -> None:
+        """Make a row at least so high; a spreadsheet program takes 409 points at most."""
+        self._heights[row] = min(max(height, self._heights.get(row, _LINE_HEIGHT)), 400)
+        self.worksheet.set_row(row, self._heights[row])
 
     def title(self, text: str, lead: str, last: int) -> int:
         """Write the sheet's title and what it shows; the row for what follows is given back."""
         self.text(0, 0, text, "title")
-        self.worksheet.set_row(0, 24)
+        self._heighten(0, 24)
         self.paragraph(1, lead, last)
-        return 3
+        return 4
 
     def link(self, row: int, column: int, sheet: str, text: str, cell: str = "A1") -> None:
         """Write a link to a place in this workbook; sheet and text are this package's own words."""
@@ -148,10 +156,13 @@ class Page:
             row, column, f"internal:'{sheet}'!{cell}", self._styles.get("link"), storable(text)
         )
 
-    def chart(self, row: int, column: int, chart: Chart, alt_text: str) -> None:
+    def chart(self, row: int, column: int, chart: Chart, alt_text: str, x_offset: int = 0) -> None:
         """Place a chart, with words for those who cannot see it."""
         self.worksheet.insert_chart(
-            row, column, chart, {"description": storable(alt_text, 1000), "object_position": 1}
+            row,
+            column,
+            chart,
+            {"description": storable(alt_text, 1000), "object_position": 1, "x_offset": x_offset},
         )
 
     def repeat(self, first: int, last: int) -> None:
@@ -161,5 +172,7 @@ class Page:
 
 
 def _lines(text: str, width: float) -> int:
-    """How many lines wrapped text takes, a little on the safe side."""
-    return sum(max(1, math.ceil(len(line) * 1.04 / max(width, 1))) for line in text.split("\n"))
+    """How many lines wrapped text takes."""
+    return sum(
+        max(1, math.ceil(len(line) * _CHARACTER / max(width, 1))) for line in text.split("\n")
+    )

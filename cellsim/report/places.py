@@ -18,9 +18,9 @@ MODEL_CHECK = "Model check"
 RUN_RECORD = "Run record"
 DRAWS = "Draws"
 
-_BLOCKS_START = 5
+_BLOCKS_START = 6
 _EMPTY_BLOCK = 4
-_CHART_ROWS = 36
+_CHART_ROWS = 34
 
 
 @dataclass(frozen=True, slots=True)

@@ -30,7 +30,7 @@ KINDS: Mapping[str, Properties] = {
     "ask": {"font_color": INK, "align": "right", "bg_color": MIST, "border": 1, "border_color": SAND},
     "answer": {"font_color": INK, "bold": True, "align": "right", **_RULE},
     "code": {"font_color": INK, "font_name": "Courier New", "font_size": 9},
-    "link": {"font_color": TEAL, "underline": 1},
+    "link": {"font_color": TEAL, "underline": 1, "valign": "top", "text_wrap": True},
     "plain": {"font_color": INK},
 }  # fmt: skip
 

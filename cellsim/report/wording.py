@@ -13,8 +13,8 @@ CAUTION = (
     "lend; a licensed professional and local rules come first."
 )
 _SAMPLING = {
-    "random": "independent random draws",
-    "latin-hypercube": "Latin hypercube draws",
+    "random": "independent random sampling",
+    "latin-hypercube": "Latin hypercube sampling",
 }
 _FEW_DRAWS = 1000
 _WIDE = 0.1
@@ -41,7 +41,7 @@ def share_text(share: Share) -> str:
 
 def sampling_words(sampling: str) -> str:
     """How the draws were made."""
-    return _SAMPLING.get(sampling, f"{one_line(sampling, 40)} draws")
+    return _SAMPLING.get(sampling, f"{one_line(sampling, 40)} sampling")
 
 
 def precision_note(sampling: str) -> str:
@@ -167,26 +167,37 @@ def _check_cautions(check: ModelCheck) -> list[str]:
 
 
 def _precision_cautions(figures: Figures) -> list[str]:
-    thin = []
-    for output in figures.outputs:
-        summary = output.summary
-        if summary is None or summary.moments.minimum == summary.moments.maximum:
-            continue
-        low, _, high = central_range(summary)
-        error = summary.moments.mean_se
-        few = summary.moments.count < _FEW_DRAWS
-        wide = error is None or error * 4 > _WIDE * (high - low) > 0
-        loose = any(
-            t is not None and t.above.upper - t.above.lower > _WIDE for t in output.thresholds
+    found = [text for output in figures.outputs if (text := _precision_caution(output)) is not None]
+    return found[:_MOST_NAMED] + _rest(len(found), "outputs with thin precision")
+
+
+def _precision_caution(output: OutputFigures) -> str | None:
+    """What is known too roughly: everything, the mean, or a share beyond a threshold."""
+    summary = output.summary
+    if summary is None or summary.moments.minimum == summary.moments.maximum:
+        return None
+    found, scale = summary.moments, output.scale
+    if found.count < _FEW_DRAWS or found.mean_se is None:
+        draws = counted(found.count, "draw", "draws")
+        return (
+            f"Thin precision: {output.title} rests on {draws}; the intervals on Quantiles say how "
+            "far its figures can be trusted."
         )
-        if few or wide or loose:
-            thin.append(output)
-    if not thin:
-        return []
-    return [
-        f"Thin precision for {_named([output.title for output in thin])}: too few draws for the last digits shown. The "
-        "intervals on Quantiles say how far to trust them; more draws narrow them."
-    ]
+    low, _, high = central_range(summary)
+    if found.mean_se * 4 > _WIDE * (high - low) > 0:
+        return (
+            f"The mean of {output.title} is known only to about "
+            f"{scale.spread_text(2 * found.mean_se)} either way: a few extreme draws weigh much in "
+            "it. The median is the steadier figure."
+        )
+    shares = [about.above for about in output.thresholds if about is not None]
+    widest = max((share.upper - share.lower for share in shares), default=0.0)
+    if widest > _WIDE:
+        return (
+            f"The share of draws of {output.title} beyond a threshold is known only to about "
+            f"{widest / 2:.0%} either way."
+        )
+    return None
 
 
 def _base_cautions(figures: Figures) -> list[str]:
@@ -220,9 +231,3 @@ def _input_caution(item: InputFigures) -> str | None:
 def _rest(count: int, what: str) -> list[str]:
     left = count - _MOST_NAMED
     return [f"And {left:,} more {what}."] if left > 0 else []
-
-
-def _named(names: list[str]) -> str:
-    if len(names) <= _MOST_NAMED:
-        return ", ".join(names)
-    return f"{', '.join(names[:_MOST_NAMED])} and {len(names) - _MOST_NAMED:,} more"

@@ -21,7 +21,7 @@ NAME = DISTRIBUTION
 _WIDTHS = (25, 13, 13, 10, 10, 11, 11, 3, 30, 17, 17, 17)
 _LAST = len(_WIDTHS) - 1
 _SIDE = 8
-_CHART_ROW = 15
+_CHART_ROW = 12
 
 
 def is_needed(book: Book) -> bool:
@@ -33,12 +33,12 @@ def write(book: Book) -> None:
     """Write the sheet."""
     page = book.add_page(NAME, _WIDTHS, landscape=True)
     lead = (
-        "How the draws of each output spread. A bin takes its lower edge in and leaves its upper edge out. Where a tail is "
+        "How the draws of each output spread. A bin is named by its lower edge, which belongs to it; its upper edge does not. Where a tail is "
         "long, what lies beyond the last edges is counted in one open bin. Failed draws are left out. "
         + precision_note(book.results.record.sampling)
     )
     page.title("Distribution", lead, _LAST)
-    page.worksheet.freeze_panes(3, 0)
+    page.worksheet.freeze_panes(4, 0)
     page.worksheet.repeat_rows(0)
     blocks = distribution_blocks(book.figures)
     for output, block in zip(book.figures.outputs, blocks, strict=True):
@@ -55,13 +55,13 @@ def _write_block(book: Book, page: Page, output: OutputFigures, block: Block) ->
     _write_bins(page, output, output.summary.histogram, block)
     _write_moments(page, output, output.summary, block)
     chart = histogram_chart(book.workbook, output, block)
-    chart.set_size({"width": 580, "height": 430})
+    chart.set_size({"width": 580, "height": 380})
     page.chart(block.first + _CHART_ROW, _SIDE, chart, histogram_alt_text(output))
 
 
 def _write_bins(page: Page, output: OutputFigures, bins: Histogram, block: Block) -> None:
     titles = (
-        "Value" if bins.separate else "Bin",
+        "Value" if bins.separate else "Bin, by lower edge",
         "From",
         "To below",
         "Draws",
@@ -101,14 +101,12 @@ def bin_code(bins: Histogram, scale: Scale) -> str:
 
 
 def bin_label(lower: float, upper: float, scale: Scale) -> str:
-    """A bin in words: `12.0 to 14.0`, `below 3.0`, `80.0 and above`, or the value."""
-    if lower == upper:
-        return scale.text(lower)
+    """A bin's label under the chart: its lower edge or its value; open bins in words."""
     if math.isinf(lower):
         return f"below {scale.text(upper)}"
     if math.isinf(upper):
         return f"{scale.text(lower)} and above"
-    return f"{scale.text(lower)} to {scale.text(upper)}"
+    return scale.text(lower)
 
 
 def _write_moments(page: Page, output: OutputFigures, summary: Summary, block: Block) -> None:

@@ -21,12 +21,13 @@ from cellsim.report.plain_text import one_line
 from cellsim.report.wording import CAUTION, asked, cautions, output_sentences
 
 NAME = HEADLINE
-_WIDTHS = (34, 9, 16, 16, 16, 16, 16, 13)
+_WIDTHS = (27, 8, 14, 14, 14, 14, 14, 12)
 _LAST = len(_WIDTHS) - 1
+_LINKED = (0, 2, 3, 4, 5, 6, 7)
 _MOST_ON_ONE_PAGE = 8
 _MOST_WORDED = 6
 _MOST_CAUTIONS = 8
-_CHART_ROWS = 17
+_CHART_ROWS = 19
 
 
 def is_needed(book: Book) -> bool:  # noqa: ARG001  (every sheet is asked)
@@ -43,7 +44,7 @@ def write(book: Book) -> None:
         )
         - 1
     )
-    row = _write_outputs(book, page, row + 1)
+    row = _write_outputs(book, page, row)
     row = _write_thresholds(book, page, row)
     row = _write_charts(book, page, row)
     row = _write_words(book, page, row)
@@ -138,13 +139,13 @@ def _write_charts(book: Book, page: Page, row: int) -> int:
     if found is None:
         return row
     output, quantiles, bins = found
-    size = {"width": 488, "height": 330}
+    size = {"width": 425, "height": 320}
     curve = cumulative_chart(book.workbook, output, quantiles)
     curve.set_size(size)
     page.chart(row, 0, curve, cumulative_alt_text(output))
     columns = histogram_chart(book.workbook, output, bins)
-    columns.set_size({**size, "x_offset": 20})
-    page.chart(row, 4, columns, histogram_alt_text(output))
+    columns.set_size(size)
+    page.chart(row, 3, columns, histogram_alt_text(output), x_offset=78)
     return row + _CHART_ROWS
 
 
@@ -185,4 +186,4 @@ def _write_cautions(book: Book, page: Page, row: int) -> int:
 def _write_links(book: Book, page: Page, row: int) -> None:
     page.text(row, 0, "In this workbook", "strong")
     for k, name in enumerate(book.sheet_names[1:]):
-        page.link(row + 1 + k // (_LAST + 1), k % (_LAST + 1), name, name)
+        page.link(row + 1 + k // len(_LINKED), _LINKED[k % len(_LINKED)], name, name)
