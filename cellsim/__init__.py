@@ -12,7 +12,9 @@ from cellsim.errors import (
     UsageError,
 )
 from cellsim.values import ErrorValue
-from cellsim.version import VERSION as __version__
+from cellsim.version import VERSION
+
+__version__ = VERSION
 
 __all__ = [
     "CellsimError",

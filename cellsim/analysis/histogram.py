@@ -104,8 +104,9 @@ def _edges(ordered: FloatArray) -> FloatArray:
         and max(-first, last) < _LARGEST_MULTIPLE
     ):
         return np.linspace(low, high, _FEWEST + 1)
-    multiples = np.arange(math.floor(first), math.ceil(last) + 1) * float(step)
-    edges: FloatArray = multiples * 10.0**power if power >= 0 else multiples / 10.0**-power
+    multiples: FloatArray = np.arange(math.floor(first), math.ceil(last) + 1.0) * float(step)
+    scale = math.pow(10.0, abs(power))
+    edges: FloatArray = multiples * scale if power >= 0 else multiples / scale
     return edges
 
 

@@ -104,7 +104,7 @@ def _skewness(count: int, m2: float, m3: float) -> float | None:
     """G1 of Joanes and Gill (1998)."""
     if count < 3:
         return None
-    return m3 / m2**1.5 * math.sqrt(count * (count - 1)) / (count - 2)
+    return m3 / math.pow(m2, 1.5) * math.sqrt(count * (count - 1)) / (count - 2)
 
 
 def _excess_kurtosis(count: int, m2: float, m4: float) -> float | None:

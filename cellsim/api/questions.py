@@ -77,14 +77,12 @@ class Questions:
         self._check_overlap(cells)
         self._raise()
         self._cells = [cell for cell in cells if cell is not None]
-        self.inputs = [
-            found
-            for spec, cell in zip(sidecar.inputs, self._cells, strict=True)
-            if (found := self._input(spec, cell)) is not None
+        drawn = [
+            self._input(spec, cell) for spec, cell in zip(sidecar.inputs, self._cells, strict=True)
         ]
-        self.outputs = [
-            found for spec in sidecar.outputs if (found := self._output(spec)) is not None
-        ]
+        self.inputs = [found for found in drawn if found is not None]
+        asked = [self._output(spec) for spec in sidecar.outputs]
+        self.outputs = [found for found in asked if found is not None]
         self._raise()
 
     def _raise(self) -> None:
@@ -150,9 +148,9 @@ class Questions:
         numbers: dict[str, float | tuple[float, ...]] = {}
         before = len(self._problems)
         for key, parameter in spec.parameters.items():
-            value = self._parameter(spec, cell, key, parameter)
-            if value is not None:
-                numbers[key] = value
+            given = self._parameter(spec, cell, key, parameter)
+            if given is not None:
+                numbers[key] = given
         floor = self._number(spec, cell, "floor", spec.floor)
         cap = self._number(spec, cell, "cap", spec.cap)
         if len(self._problems) > before:
@@ -245,7 +243,7 @@ class Questions:
         thresholds = tuple(
             threshold
             for number in spec.thresholds
-            if (threshold := self._threshold(spec, number)) is not None
+            if (threshold := self._threshold(number)) is not None
         )
         return FoundOutput(spec, target, base, thresholds)
 
@@ -279,7 +277,7 @@ class Questions:
                 )
             )
 
-    def _threshold(self, spec: OutputSpec, number: Number) -> Threshold | None:
+    def _threshold(self, number: Number) -> Threshold | None:
         if not isinstance(number, Formula):
             return Threshold(f"{number:.15g}", number)
         value = self._formula_value(f"{self._sidecar.path.name}, line {number.line}", number.text)

@@ -175,7 +175,7 @@ class Study:
             raise UsageError(
                 Problem("seed", f"expected a whole number from 0 to 2^64 - 1, got {key}")
             )
-        report = progress or (lambda stage, done, whole: None)
+        report = progress or _silent
         started = dt.datetime.now(dt.UTC)
         compiled = self.compiled
         engine = self.engine(threads=threads, block=block)
@@ -232,10 +232,10 @@ class Study:
 
     def _noted(self, check: ModelCheck, engine: BlockEngine) -> ModelCheck:
         notes = list(check.notes)
-        for cells in self.compiled.loops:
-            notes.append(
-                f"The circular chain of {len(cells)} cells from {cells[0]} on is solved by iteration in every draw."
-            )
+        notes += [
+            f"The circular chain of {len(cells)} cells from {cells[0]} on is solved by iteration in every draw."
+            for cells in self.compiled.loops
+        ]
         if engine.unsettled:
             notes.append(f"In {engine.unsettled} draws a circular chain had not settled.")
         return ModelCheck(
@@ -345,6 +345,10 @@ class Study:
                 for expression in program.slow
             ),
         )
+
+
+def _silent(_stage: str, _done: int, _whole: int) -> None:
+    """No progress is reported."""
 
 
 def _sha256(path: Path) -> str:

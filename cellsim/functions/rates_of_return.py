@@ -220,7 +220,7 @@ def internal_rates(
     return rates
 
 
-def _columns(times: FloatArray | None, chosen: npt.NDArray[np.intp]) -> FloatArray | None:  # type: ignore[misc]
+def _columns(times: FloatArray | None, chosen: npt.NDArray[np.intp]) -> FloatArray | None:
     if times is None or times.shape[1] == 1:
         return times
     return times[:, chosen]

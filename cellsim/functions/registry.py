@@ -84,7 +84,7 @@ NumberItems = Annotated[list[float], ArgumentKind.NUMBER_ITEMS]
 Values = Annotated[Array, ArgumentKind.VALUES]
 ArrayValues = Annotated[Array, ArgumentKind.ARRAY_VALUES]
 Matrix = Annotated[npt.NDArray[np.float64], ArgumentKind.MATRIX]
-Operand = Annotated[Scalar | Array | Reference, ArgumentKind.OPERAND]
+Operand = Annotated[Value, ArgumentKind.OPERAND]
 CellArea = Annotated[Reference, ArgumentKind.CELL_AREA]
 Lazy = Annotated[Callable[[], Value], ArgumentKind.LAZY]
 Function = Annotated[LambdaValue, ArgumentKind.FUNCTION]
@@ -194,7 +194,7 @@ class FunctionRecord:
 
 
 FloatArray: TypeAlias = npt.NDArray[np.float64]
-DrawsKernel: TypeAlias = Callable[..., FloatArray]
+DrawsKernel: TypeAlias = Callable[..., FloatArray | None]
 
 _FUNCTIONS: dict[str, FunctionRecord] = {}
 _OVER_DRAWS: dict[str, DrawsKernel] = {}
@@ -202,6 +202,7 @@ _MOST_ARGUMENTS = 255
 _RESULTS: dict[object, str] = {float: "number", int: "number", str: "text", bool: "logical"}
 
 Kernel = TypeVar("Kernel", bound=Callable[..., Any])
+AnyDrawsKernel = TypeVar("AnyDrawsKernel", bound=DrawsKernel)
 
 
 def spreadsheet_function(
@@ -259,7 +260,7 @@ def spreadsheet_function(
     return register
 
 
-def over_draws(*names: str) -> Callable[[DrawsKernel], DrawsKernel]:
+def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     """Register the form of a function that works on all draws of a block at once.
 
     It takes the same arguments as the kernel does. `Number` and `Whole` arguments are float arrays
@@ -275,7 +276,7 @@ def over_draws(*names: str) -> Callable[[DrawsKernel], DrawsKernel]:
         ValueError: A name is registered twice.
     """
 
-    def register(kernel: DrawsKernel) -> DrawsKernel:
+    def register(kernel: AnyDrawsKernel) -> AnyDrawsKernel:
         for name in names:
             if name in _OVER_DRAWS:
                 raise ValueError(f"{name} has two kernels over draws")

@@ -88,10 +88,8 @@ def find_nearest(
         order = compare(item, key)
         if (order > 0) != larger or order == 0:
             continue
-        if (
-            best is None
-            or ((compare(item, items[best]) < 0) == larger
-            and compare(item, items[best]) != 0)
+        if best is None or (
+            (compare(item, items[best]) < 0) == larger and compare(item, items[best]) != 0
         ):
             best = place
     return best

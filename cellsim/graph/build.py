@@ -228,8 +228,8 @@ class Graph:
                 found.append(RangeRef(cell.sheet, *bounds_of(reference, cell.row, cell.column)))
             elif prefix.workbook is None:
                 bounds = bounds_of(reference, cell.row, cell.column)
-                for sheet in resolver.sheets_of(prefix, cell.sheet) or ():
-                    found.append(RangeRef(sheet, *bounds))
+                sheets = resolver.sheets_of(prefix, cell.sheet) or ()
+                found += [RangeRef(sheet, *bounds) for sheet in sheets]
         for name in facts.names:
             if isinstance(name, StructuredReference):
                 reference_value = resolver.structured(name, cell)

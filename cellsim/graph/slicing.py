@@ -41,7 +41,7 @@ def affected_cells(
     return frozenset(node for node in affected if isinstance(node, CellRef) and node not in wanted)
 
 
-def _readers(
+def _readers(  # noqa: C901  (one walk over the graph with its two kinds of node)
     graph: Graph, outputs: Iterable[CellRef], inputs: frozenset[CellRef]
 ) -> tuple[dict[_Node, list[_Node]], list[CellRef]]:
     """Who reads each cell and range upstream of the outputs, and the cells that read unnamed ones."""

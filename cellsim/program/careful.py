@@ -18,7 +18,7 @@ from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
 from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, numbers_from_objects
-from cellsim.program.ir import Constant, Instruction, Op, Operand, Register
+from cellsim.program.ir import Constant, Instruction, Op, Operand
 from cellsim.values import ErrorValue, encode_error
 
 Step = Callable[[], Any]
@@ -74,7 +74,7 @@ class _Bound:
         operand: Operand = self.registers[place]
         if isinstance(operand, Constant):
             return np.full(len(self.out), operand.value) if operand.value != operand.value else None
-        return self.poison.get(operand.number) if isinstance(operand, Register) else None
+        return self.poison.get(operand.number)
 
     def set_errors(self, errors: AnyArray | None) -> None:
         """Record the errors of the flag that the instruction writes."""
@@ -175,10 +175,10 @@ def _is_error(bound: _Bound) -> None:
     bound.set_errors(None)
 
 
-def is_na(values: AnyArray) -> AnyArray:
+def is_na(values: AnyArray) -> npt.NDArray[np.bool_]:
     """Where numbers over draws are the error #N/A."""
     codes = np.ascontiguousarray(values).view(np.uint64) & np.uint64(0xFF)
-    return np.isnan(values) & (codes == _NA_CODE)
+    return np.asarray(np.isnan(values) & (codes == _NA_CODE))
 
 
 def _is_na(bound: _Bound) -> None:

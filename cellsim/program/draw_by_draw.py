@@ -26,8 +26,6 @@ from cellsim.values import (
     Array,
     ErrorValue,
     Fault,
-    LambdaValue,
-    Reference,
     Scalar,
     Value,
     decode_error,
@@ -141,8 +139,6 @@ def _evaluate(expression: Expression, frame: Frame) -> Scalar:
     if isinstance(value, Array):
         row, column = expression.item
         return item_at(value, row, column)
-    if isinstance(value, (Reference, LambdaValue)):
-        return ErrorValue.VALUE
     return value
 
 

@@ -187,10 +187,10 @@ def is_error_flag(lowering: Lowering, value: Lowered) -> Operand:
         return emitter.builder.emit(Op.IS_ERROR, emitter.number(value))
     if isinstance(value, Choice):
         flag_fails = (
-            is_error_flag(lowering, Flagged(value.flag))
-            if not isinstance(value.flag, Constant)
-            else _ZERO
-        )  # type: ignore[arg-type]
+            _ZERO
+            if isinstance(value.flag, Constant)
+            else is_error_flag(lowering, Flagged(value.flag))
+        )
         then, otherwise = (
             is_error_flag(lowering, value.then),
             is_error_flag(lowering, value.otherwise),

@@ -34,8 +34,8 @@ from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
 from cellsim.program.ir import Expression, Kind
-from cellsim.program.lower_calls import call_over_draws
-from cellsim.program.lower_functions import LAZY_RULES, RULES, Arguments
+from cellsim.program.lower_calls import Arguments, call_over_draws
+from cellsim.program.lower_functions import LAZY_RULES, RULES
 from cellsim.program.lowered import (
     Block,
     Flagged,

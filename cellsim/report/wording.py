@@ -120,14 +120,13 @@ def _threshold_sentence(output: OutputFigures, text: str, about: Exceedance) -> 
 
 def cautions(results: RunResults, figures: Figures) -> list[str]:
     """What a reader should be careful of, most serious first; empty if nothing stands out."""
-    found = [
+    return [
         *_failure_cautions(results, figures),
         *_check_cautions(results.check),
         *_precision_cautions(figures),
         *_base_cautions(figures),
         *[c for item in figures.inputs if (c := _input_caution(item)) is not None],
     ]
-    return found
 
 
 def _failure_cautions(results: RunResults, figures: Figures) -> list[str]:

@@ -38,7 +38,7 @@ class SheetCells:
     filter_area: str = ""
 
 
-class _Refused(Exception):
+class _RefusedError(Exception):
     """The XML declares a document type."""
 
 
@@ -83,7 +83,7 @@ def _parse(content: bytes, reader: Any, file: str, part: str) -> None:
     parser.CharacterDataHandler = reader.text
 
     def refuse(*_: object) -> None:
-        raise _Refused
+        raise _RefusedError
 
     parser.StartDoctypeDeclHandler = refuse
     parser.EntityDeclHandler = refuse
@@ -93,7 +93,7 @@ def _parse(content: bytes, reader: Any, file: str, part: str) -> None:
         raise ModelError(
             Problem(file, f"the part {part} is not well-formed XML: {error}")
         ) from error
-    except _Refused as error:
+    except _RefusedError as error:
         raise refused(file, part) from error
 
 
@@ -150,7 +150,7 @@ class _SheetReader:
         self._sink: list[str] | None = None
         self._phonetic = 0
 
-    def start(self, name: str, attributes: dict[str, str]) -> None:
+    def start(self, name: str, attributes: dict[str, str]) -> None:  # noqa: C901  (the parser's hot spot)
         """An element begins."""
         tag = self._tags.get(name)
         if tag is None:

@@ -23,8 +23,8 @@ def _growth(rate: float, periods: float) -> float:
     if rate == -1 and periods < 0:
         raise Fault(ErrorValue.DIV0)
     try:
-        return (1 + rate) ** periods
-    except OverflowError:
+        return math.pow(1 + rate, periods)
+    except (OverflowError, ValueError):
         raise Fault(ErrorValue.NUM) from None
 
 
@@ -105,7 +105,7 @@ def periodic_rate(
         if abs(rate) < 1e-10:
             return present + paid * periods + future
         try:
-            growth = (1 + rate) ** periods
+            growth = math.pow(1 + rate, periods)
         except OverflowError:
             return math.nan
         return present * growth + paid * (1 + rate * due) * (growth - 1) / rate + future
@@ -114,7 +114,7 @@ def periodic_rate(
         """The same root with discounted amounts, which stay bounded at high rates."""
         if abs(rate) < 1e-10:
             return value(rate)
-        discount = (1 + rate) ** -periods
+        discount = math.pow(1 + rate, -periods)
         return present + paid * (1 + rate * due) * (1 - discount) / rate + future * discount
 
     def with_slope(rate: float) -> tuple[float, float]:
@@ -255,7 +255,7 @@ def equivalent_rate(periods: Number, present: Number, future: Number) -> float |
     """The rate at which an amount grows to another."""
     if periods <= 0 or present == 0 or future / present < 0:
         return ErrorValue.NUM
-    return (future / present) ** (1 / periods) - 1
+    return math.pow(future / present, 1 / periods) - 1
 
 
 @spreadsheet_function("DOLLARDE")
@@ -268,7 +268,9 @@ def decimal_price(price: Number, fraction: Whole) -> float | ErrorValue:
     whole = math.trunc(price)
     return (
         whole
-        + (price - whole) * 10 ** math.ceil(math.log10(fraction) if fraction > 1 else 0) / fraction
+        + (price - whole)
+        * 10.0 ** math.ceil(math.log10(fraction) if fraction > 1 else 0)
+        / fraction
     )
 
 
@@ -280,7 +282,7 @@ def fractional_price(price: Number, fraction: Whole) -> float | ErrorValue:
     if fraction == 0:
         return ErrorValue.DIV0
     whole = math.trunc(price)
-    return whole + (price - whole) * fraction / 10 ** math.ceil(
+    return whole + (price - whole) * fraction / 10.0 ** math.ceil(
         math.log10(fraction) if fraction > 1 else 0
     )
 

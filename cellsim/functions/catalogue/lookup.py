@@ -190,9 +190,7 @@ def _gather(
 
 
 @spreadsheet_function("LOOKUP")
-def lookup_in_vector(
-    key: ScalarValue, values: Values, results: Operand | None = None
-) -> Scalar | Reference:
+def lookup_in_vector(key: ScalarValue, values: Values, results: Operand | None = None) -> Value:
     """The value beside the last item not above a key."""
     by_column = values.rows >= values.columns
     if 1 in (values.rows, values.columns):

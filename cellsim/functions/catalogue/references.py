@@ -16,7 +16,7 @@ from cellsim.functions.registry import (
     Whole,
     spreadsheet_function,
 )
-from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Value
+from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value
 
 _R1C1 = re.compile(
     r"(?:(?P<sheet>'(?:[^']|'')+'|[^'!]+)!)?"
@@ -170,11 +170,11 @@ def count_areas(where: CellArea) -> float:
 @spreadsheet_function("TRANSPOSE")
 def transpose(values: Values) -> Array:
     """Rows as columns; blanks become 0."""
-    items = [
-        0.0 if (item := values.at(row, column)) is None else item
-        for column in range(values.columns)
-        for row in range(values.rows)
-    ]
+    items: list[Scalar] = []
+    for column in range(values.columns):
+        for row in range(values.rows):
+            item = values.at(row, column)
+            items.append(0.0 if item is None else item)
     return Array(values.columns, values.rows, items)
 
 
