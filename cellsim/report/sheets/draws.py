@@ -9,6 +9,7 @@ import numpy as np
 from xlsxwriter.worksheet import Worksheet
 
 from cellsim.report.book import Book
+from cellsim.report.figures import InputFigures, OutputFigures
 from cellsim.report.page import NO_NUMBER
 from cellsim.report.places import DRAWS
 from cellsim.report.plain_text import storable
@@ -40,7 +41,8 @@ def write(book: Book) -> None:
 
 
 def _write_part(book: Book, name: str, start: int, stop: int) -> None:
-    figures = [*book.figures.outputs, *book.figures.inputs][: _LAST_COLUMN - 1]
+    figures: list[OutputFigures | InputFigures] = [*book.figures.outputs, *book.figures.inputs]
+    figures = figures[: _LAST_COLUMN - 1]
     page = book.add_page(name, (), landscape=True)
     page.worksheet.set_column(0, 0, 10, book.styles.get("plain", "0"))
     for k, item in enumerate(figures, start=1):
@@ -62,7 +64,7 @@ def _write_part(book: Book, name: str, start: int, stop: int) -> None:
 
 def _write_slice(worksheet: Worksheet, row: int, number: int, block: FloatArray) -> None:
     write_number = worksheet.write_number
-    sound = np.isfinite(block).all(axis=1).tolist()
+    sound = np.logical_and.reduce(np.isfinite(block), axis=1).tolist()
     for k, values in enumerate(block.tolist()):
         write_number(row + k, 0, number + k)
         if sound[k]:
