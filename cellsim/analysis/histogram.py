@@ -103,10 +103,11 @@ def _edges(ordered: FloatArray) -> FloatArray:
         and math.isfinite(last)
         and max(-first, last) < _LARGEST_MULTIPLE
     ):
-        return np.linspace(low, high, _FEWEST + 1)
-    multiples: FloatArray = np.arange(math.floor(first), math.ceil(last) + 1.0) * float(step)
-    scale = math.pow(10.0, abs(power))
-    edges: FloatArray = multiples * scale if power >= 0 else multiples / scale
+        return np.unique(np.linspace(low, high, _FEWEST + 1, dtype=np.float64))
+    multiples = np.arange(math.floor(first), math.ceil(last) + 1, dtype=np.float64) * step
+    if power >= 0:
+        return multiples * 10.0**power
+    edges: FloatArray = multiples / 10.0**-power
     return edges
 
 

@@ -96,7 +96,7 @@ def _sd_error(count: int, sd: float, m4: float, unit: float) -> float | None:
     """From Var(s^2) = (mu4 - (n - 3) / (n - 1) sigma^4) / n and the delta method."""
     if count < 4:
         return None
-    variance = (m4 - (count - 3) / (count - 1) * sd**4) / count
+    variance = (m4 - (count - 3) / (count - 1) * (sd * sd) ** 2) / count
     return math.sqrt(max(variance, 0.0)) / (2 * sd) * unit
 
 
@@ -104,12 +104,13 @@ def _skewness(count: int, m2: float, m3: float) -> float | None:
     """G1 of Joanes and Gill (1998)."""
     if count < 3:
         return None
-    return m3 / math.pow(m2, 1.5) * math.sqrt(count * (count - 1)) / (count - 2)
+    return m3 / (m2 * math.sqrt(m2)) * math.sqrt(count * (count - 1)) / (count - 2)
 
 
 def _excess_kurtosis(count: int, m2: float, m4: float) -> float | None:
     """G2 of Joanes and Gill (1998)."""
     if count < 4:
         return None
-    plain = m4 / m2**2 - 3
-    return (count - 1) / ((count - 2) * (count - 3)) * ((count + 1) * plain + 6)
+    plain = m4 / (m2 * m2) - 3
+    factor = (count - 1) / ((count - 2) * (count - 3))
+    return factor * ((count + 1) * plain + 6)

@@ -72,8 +72,8 @@ def binomial_quantile(probability: float, count: int, shares: FloatArray) -> Int
             found = np.where(
                 bdtr(found, count, shares) < probability, np.minimum(found + 1, count), found
             )
-    ranks: IntArray = found.astype(np.int64)
-    return ranks
+    whole: IntArray = found.astype(np.int64)
+    return whole
 
 
 def interval_ranks(

@@ -134,4 +134,5 @@ def _scale(number_format: str, unit: str, summary: Summary | None, base: float |
         low, _, high = central_range(summary)
         largest = max(abs(low), abs(high)) or largest
         spread = (high - low) / 2.563 or summary.moments.sd or 0.0
-    return scale_of(number_format, unit, largest, spread)
+    separate = summary is not None and summary.histogram.separate
+    return scale_of(number_format, unit, largest, spread, separate=separate)

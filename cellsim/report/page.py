@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import textwrap
 from collections.abc import Sequence
 
 from xlsxwriter.chart import Chart
@@ -13,9 +14,11 @@ from cellsim.report.plain_text import storable
 from cellsim.report.styles import Styles
 from cellsim.values import ErrorValue, Scalar
 
-NO_NUMBER = "–"
+NO_NUMBER = "\N{EN DASH}"
 _LINE_HEIGHT = 13.5
 _CHARACTER = 0.88  # width of a usual letter in those of a digit, on the safe side
+_BOLD_CHARACTER = 1.02
+_MEASURED = 5000
 _A4 = 9
 
 
@@ -107,7 +110,7 @@ class Page:
             self.text(row, first + k, title, "header_right" if k >= numbers_from else "header")
         lines = max(
             (
-                _lines(title, self.widths[first + k] * 0.86)
+                _lines(title, self.widths[first + k] - 1, _BOLD_CHARACTER)
                 for k, title in enumerate(titles)
                 if title
             ),
@@ -171,8 +174,9 @@ class Page:
         self.worksheet.repeat_rows(first, last)
 
 
-def _lines(text: str, width: float) -> int:
+def _lines(text: str, width: float, character: float = _CHARACTER) -> int:
     """How many lines wrapped text takes."""
-    return sum(
-        max(1, math.ceil(len(line) * _CHARACTER / max(width, 1))) for line in text.split("\n")
-    )
+    letters = max(int(width / character), 1)
+    if len(text) > _MEASURED:
+        return math.ceil(len(text) / letters) + text.count("\n")
+    return sum(max(len(textwrap.wrap(line, letters)), 1) for line in text.split("\n"))

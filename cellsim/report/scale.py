@@ -25,17 +25,27 @@ class Scale:
 
     Attributes:
         code: Number format code of its values.
+        mean_code: Code of means: whole numbers can have a mean between them.
         spread_code: Code of differences between values: days for dates.
         unit: Its unit, or "".
+        grain: What estimates are rounded to in sentences, or 0.
     """
 
     code: str
+    mean_code: str
     spread_code: str
     unit: str
+    grain: float = 0.0
 
     def text(self, value: float | None) -> str:
-        """A value with its unit, for a sentence."""
+        """A value as it is, with its unit, for a sentence."""
         return self._worded(value, self.code, self.unit)
+
+    def estimate_text(self, value: float | None, code: str = "") -> str:
+        """An estimate, rounded to what the spread makes sense of, with its unit, for a sentence."""
+        if value is not None and self.grain > 0 and math.isfinite(value / self.grain):
+            value = round(value / self.grain) * self.grain
+        return self._worded(value, code or self.code, self.unit)
 
     def spread_text(self, value: float | None) -> str:
         """A difference between values with its unit, for a sentence."""
@@ -62,7 +72,9 @@ class Scale:
         return text if not unit or unit in text else f"{text} {unit}"
 
 
-def scale_of(number_format: str, unit: str, largest: float, spread: float) -> Scale:
+def scale_of(
+    number_format: str, unit: str, largest: float, spread: float, *, separate: bool = False
+) -> Scale:
     """The scale of a quantity.
 
     Args:
@@ -70,13 +82,17 @@ def scale_of(number_format: str, unit: str, largest: float, spread: float) -> Sc
         unit: Its unit, or "".
         largest: Largest usual size of its values.
         spread: Its standard deviation, or 0.
+        separate: Whether it takes a few separate values only.
 
     Returns:
-        The model's own code where it can be stored and shows numbers, else one that suits the values.
+        The model's own code where it can be stored and shows numbers, with decimals added where it
+        would hide the spread; else one that suits the values.
     """
     code = safe_code(number_format)
     if is_date_code(code):
-        return Scale(code, _DAYS, unit)
+        return Scale(code, code, _DAYS, unit)
     if code == GENERAL or not is_number_code(code):
         code = suited_code(largest, spread)
-    return Scale(code, code, unit)
+    finer = finer_code(code, spread)
+    grain = 10.0 ** (math.floor(math.log10(spread)) - 2) if spread > 0 else 0.0
+    return Scale(code if separate else finer, finer, finer, unit, grain)

@@ -88,10 +88,10 @@ def output_sentences(output: OutputFigures) -> str:
     if low == high == summary.moments.minimum == summary.moments.maximum:
         words = [f"{output.title}: {scale.text(middle)} in every draw."]
     else:
-        words = [
-            f"{output.title}: the median is {scale.text(middle)} and the mean {scale.text(summary.moments.mean)}; "
-            f"80 % of the draws lie between {scale.text(low)} and {scale.text(high)}."
-        ]
+        mean = scale.estimate_text(summary.moments.mean, scale.mean_code)
+        middle_words = f"the median is {scale.estimate_text(middle)} and the mean {mean}"
+        ends = f"{scale.estimate_text(low)} and {scale.estimate_text(high)}"
+        words = [f"{output.title}: {middle_words}; 80 % of the draws lie between {ends}."]
     words.append(_base_sentence(output))
     words += [
         _threshold_sentence(output, threshold.text, about)
@@ -139,10 +139,12 @@ def _failure_cautions(results: RunResults, figures: Figures) -> list[str]:
     )
     share = failed / max(results.record.draws, 1)
     amount = "less than 0.1 %" if share < 0.0005 else f"{share * 100:.1f} %"
-    return [
-        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: an output was an error or not finite there. The figures "
-        f"are those of the other draws and say nothing about these. Most failures: {worst.title}. See Failed draws."
-    ]
+    text = (
+        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: an output was an error or not finite "
+        "there. The figures are those of the other draws and say nothing about these. Most failures: "
+        f"{worst.title}. See Failed draws."
+    )
+    return [text]
 
 
 def _check_cautions(check: ModelCheck) -> list[str]:

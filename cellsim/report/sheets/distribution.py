@@ -12,7 +12,7 @@ from cellsim.report.book import Book
 from cellsim.report.figures import OutputFigures
 from cellsim.report.number_formats import finer_code
 from cellsim.report.output_charts import histogram_alt_text, histogram_chart
-from cellsim.report.page import Page
+from cellsim.report.page import NO_NUMBER, Page
 from cellsim.report.places import DISTRIBUTION, Block, base_bin, distribution_blocks
 from cellsim.report.scale import Scale
 from cellsim.report.wording import precision_note
@@ -21,6 +21,7 @@ NAME = DISTRIBUTION
 _WIDTHS = (25, 13, 13, 10, 10, 11, 11, 3, 30, 17, 17, 17)
 _LAST = len(_WIDTHS) - 1
 _SIDE = 8
+_DASH_FOR_ZERO = f'0.0%;-0.0%;"{NO_NUMBER}"'
 _CHART_ROW = 12
 
 
@@ -77,14 +78,12 @@ def _write_bins(page: Page, output: OutputFigures, bins: Histogram, block: Block
     code = bin_code(bins, output.scale)
     for k, (lower, upper) in enumerate(edges):
         row = block.first + k
-        page.text(row, 0, bin_label(lower, upper, Scale(code, code, "")))
+        page.text(row, 0, bin_label(lower, upper, Scale(code, code, code, "")))
         page.number(row, 1, lower, code)
         page.number(row, 2, upper, code)
         page.count(row, 3, int(bins.counts[k]))
         share = int(bins.counts[k]) / total
-        page.share(
-            row, 4, share if k != marked else 0.0, '0.0%;-0.0%;"–"' if k == marked else "0.0%"
-        )
+        page.share(row, 4, share if k != marked else 0.0, _DASH_FOR_ZERO if k == marked else "0.0%")
         page.share(row, 5, running[k] / total)
         if k == marked:
             page.share(row, 6, share)
@@ -116,7 +115,7 @@ def _write_moments(page: Page, output: OutputFigures, summary: Summary, block: B
     page.text(row, _SIDE, "Base case")
     page.scalar(row, _SIDE + 1, output.record.base, code)
     page.text(row + 1, _SIDE, "Mean")
-    page.number(row + 1, _SIDE + 1, found.mean, code)
+    page.number(row + 1, _SIDE + 1, found.mean, output.scale.mean_code)
     page.number(row + 1, _SIDE + 2, found.mean_se, finer_code(spread, found.mean_se or 0.0))
     page.text(row + 2, _SIDE, "Standard deviation")
     page.number(row + 2, _SIDE + 1, found.sd, finer_code(spread, found.sd or 0.0))

@@ -41,8 +41,8 @@ def write(book: Book) -> None:
 
 
 def _write_part(book: Book, name: str, start: int, stop: int) -> None:
-    everything: list[OutputFigures | InputFigures] = [*book.figures.outputs, *book.figures.inputs]
-    figures = everything[: _LAST_COLUMN - 1]
+    figures: list[OutputFigures | InputFigures] = [*book.figures.outputs, *book.figures.inputs]
+    figures = figures[: _LAST_COLUMN - 1]
     page = book.add_page(name, (), landscape=True)
     page.worksheet.set_column(0, 0, 10, book.styles.get("plain", "0"))
     for k, item in enumerate(figures, start=1):
@@ -64,7 +64,7 @@ def _write_part(book: Book, name: str, start: int, stop: int) -> None:
 
 def _write_slice(worksheet: Worksheet, row: int, number: int, block: FloatArray) -> None:
     write_number = worksheet.write_number
-    sound: list[bool] = np.all(np.isfinite(block), axis=1).tolist()
+    sound = np.logical_and.reduce(np.isfinite(block), axis=1).tolist()
     for k, values in enumerate(block.tolist()):
         write_number(row + k, 0, number + k)
         if sound[k]:

@@ -84,7 +84,9 @@ def _write_output(page: Page, row: int, output: OutputFigures, top: int) -> None
     page.scalar(row, 2, output.record.base, code)
     summary = output.summary
     low, middle, high = central_range(summary) if summary is not None else (None, None, None)
-    page.number(row, 3, summary.moments.mean if summary is not None else None, code)
+    page.number(
+        row, 3, summary.moments.mean if summary is not None else None, output.scale.mean_code
+    )
     page.number(row, 4, middle, code)
     page.number(row, 5, low, code)
     page.number(row, 6, high, code)
@@ -117,9 +119,8 @@ def _write_thresholds(book: Book, page: Page, row: int) -> int:
         page.fit_row(row, [(output.title, page.widths[0]), (threshold.text, page.widths[3])])
         page.text(row, 1, output.scale.unit, "wrapped")
         page.number(row, 2, threshold.value, output.scale.code)
-        page.text(
-            row, 3, threshold.text if threshold.text.startswith("=") else "side-car", "wrapped"
-        )
+        origin = threshold.text if threshold.text.startswith("=") else "side-car"
+        page.text(row, 3, origin, "wrapped_right")
         page.share(row, 4, about.above.share if about else None)
         page.share(row, 5, about.above.lower if about else None)
         page.share(row, 6, about.above.upper if about else None)

@@ -9,7 +9,7 @@ from xlsxwriter.chart import Chart
 
 from cellsim.analysis.histogram import Histogram
 from cellsim.report.book import Book
-from cellsim.report.charts import Line, curve_chart, round_bounds
+from cellsim.report.charts import Line, Span, bin_chart, curve_chart, round_bounds
 from cellsim.report.figures import InputFigures
 from cellsim.report.number_formats import finer_code
 from cellsim.report.page import Page
@@ -37,9 +37,9 @@ _DRAWN = (
     "Input", "Unit", "Mean asked", "Mean drawn", "Standard deviation asked", "Standard deviation drawn",
     "Smallest drawn", "5 % drawn", "50 % drawn", "95 % drawn", "Largest drawn",
 )  # fmt: skip
-_ACROSS = ((0, 0), (3, 0), (7, 30))
+_ACROSS = ((0, 0), (2, 63), (6, 80))
 _CHART_ROWS = 16
-_CHART_SIZE = {"width": 400, "height": 270}
+_CHART_SIZE = {"width": 398, "height": 270}
 _P5, _P50, _P95 = 7, 52, 97
 
 
@@ -98,11 +98,11 @@ def _write_figures(page: Page, row: int, item: InputFigures) -> None:
     page.text(row, 0, item.title, "wrapped")
     page.text(row, 1, item.scale.unit, "wrapped")
     page.fit_row(row, [(item.title, page.widths[0]), (item.scale.unit, page.widths[1])])
-    page.number(row, 2, record.mean, code)
+    page.number(row, 2, record.mean, item.scale.mean_code)
     page.number(row, 4, record.sd, finer_code(spread, record.sd))
     found = item.summary
     sd = found.moments.sd if found else None
-    page.number(row, 3, found.moments.mean if found else None, code)
+    page.number(row, 3, found.moments.mean if found else None, item.scale.mean_code)
     page.number(row, 5, sd, finer_code(spread, sd or 0.0))
     page.number(row, 6, found.moments.minimum if found else None, code)
     for column, place in ((7, _P5), (8, _P50), (9, _P95)):
@@ -120,11 +120,15 @@ def _write_charts(book: Book, page: Page, row: int) -> None:
     rows_of_charts = math.ceil(len(drawn) / len(_ACROSS))
     table = row + rows_of_charts * _CHART_ROWS + 1
     page.worksheet.print_area(0, 0, table - 1, _LAST)
-    page.heading(table, "What the charts are drawn from (not printed)", _LAST)
-    page.header(table + 1, ("Input", "Value", "Density"), numbers_from=1)
+    page.heading(
+        table,
+        "What the charts are drawn from (not printed; open bins of long tails have no density)",
+        _LAST,
+    )
+    page.header(table + 1, ("Input", "Value", "Density or share", "Share at base"), numbers_from=1)
     place = table + 2
     for k, item in enumerate(drawn):
-        place, chart = _write_density(book, page, place, item)
+        place, chart = _write_picture(book, page, place, item)
         page.chart(
             row + k // len(_ACROSS) * _CHART_ROWS,
             _ACROSS[k % len(_ACROSS)][0],
@@ -134,11 +138,21 @@ def _write_charts(book: Book, page: Page, row: int) -> None:
         )
 
 
-def _write_density(book: Book, page: Page, row: int, item: InputFigures) -> tuple[int, Chart]:
-    """Write an input's outline and base line; the next free row and the chart are given back."""
+def _write_picture(book: Book, page: Page, row: int, item: InputFigures) -> tuple[int, Chart]:
+    """Write what an input's chart is drawn from; the next free row and the chart are given back."""
     if item.summary is None:
-        raise AssertionError("an input without draws has no density")
+        raise AssertionError("an input without draws has no picture")
     bins = item.summary.histogram
+    draw = _write_values if bins.separate else _write_density
+    row, chart = draw(book, page, row, item, bins)
+    chart.set_size(_CHART_SIZE)
+    return row, chart
+
+
+def _write_density(
+    book: Book, page: Page, row: int, item: InputFigures, bins: Histogram
+) -> tuple[int, Chart]:
+    """The outline of a density, the base value as an upright line."""
     outline = density_outline(bins)
     lines = [_write_line(page, row, item, outline, "Draws")]
     row += len(outline)
@@ -150,18 +164,40 @@ def _write_density(book: Book, page: Page, row: int, item: InputFigures) -> tupl
         row += len(upright)
         low, high = min(low, base), max(high, base)
     x_axis = {"name": f"Value{item.scale.title}", "num_format": item.scale.code}
-    y_axis = {"name": "Density of draws", "num_format": "General", "min": 0}
-    if bins.separate:
-        y_axis |= {"name": "Share of draws", "num_format": "0%"}
     chart = curve_chart(
         book.workbook,
-        f"Input: {one_line(item.title, 45)}",
+        _title(item),
         lines,
         {**x_axis, "label_position": "low", **round_bounds(low, high)},
-        y_axis,
+        {"name": "Density of draws", "num_format": "General", "min": 0},
     )
-    chart.set_size(_CHART_SIZE)
     return row, chart
+
+
+def _write_values(
+    book: Book, page: Page, row: int, item: InputFigures, bins: Histogram
+) -> tuple[int, Chart]:
+    """A column for each of a few values, that of the base value hatched."""
+    marked = bins.bin_of(item.record.base) if item.record.base is not None else None
+    total = int(bins.counts.sum())
+    for k, value in enumerate(bins.lower.tolist()):
+        share = int(bins.counts[k]) / total
+        page.text(row + k, 0, f"{item.title}: draws")
+        page.text(row + k, 1, item.scale.text(value), "number")
+        page.share(row + k, 2, 0.0 if k == marked else share)
+        if k == marked:
+            page.share(row + k, 3, share)
+    last = row + len(bins.counts) - 1
+    columns: list[tuple[str, Span]] = [("Share of draws", (NAME, row, 2, last, 2))]
+    if marked is not None:
+        columns.append(("Base value", (NAME, row, 3, last, 3)))
+    x_axis = {"name": f"Value{item.scale.title}"}
+    labels = (NAME, row, 1, last, 1)
+    return last + 1, bin_chart(book.workbook, _title(item), labels, columns, None, x_axis)
+
+
+def _title(item: InputFigures) -> str:
+    return f"Input: {one_line(item.title, 45)}"
 
 
 def _write_line(
@@ -178,20 +214,21 @@ def _write_line(
 
 
 def density_outline(bins: Histogram) -> list[tuple[float, float]]:
-    """The outline of a histogram: steps of its density, or spikes at separate values.
+    """The outline of a histogram in steps of its density.
 
-    Open bins of long tails have no width and so no density; they are left out of the outline.
+    Open bins of long tails have no width and so no density; they are left out.
+
+    Args:
+        bins: A histogram of bins.
+
+    Returns:
+        Places and heights, from the axis up and back to it.
     """
     total = float(bins.counts.sum())
     points: list[tuple[float, float]] = []
-    for lower, upper, count in zip(
-        bins.lower.tolist(), bins.upper.tolist(), bins.counts.tolist(), strict=True
-    ):
-        if bins.separate:
-            points += [(lower, 0.0), (lower, count / total), (lower, 0.0)]
-        elif math.isfinite(lower) and math.isfinite(upper):
+    edges = zip(bins.lower.tolist(), bins.upper.tolist(), bins.counts.tolist(), strict=True)
+    for lower, upper, count in edges:
+        if math.isfinite(lower) and math.isfinite(upper):
             density = count / total / (upper - lower)
             points += [(lower, density), (upper, density)]
-    if bins.separate:
-        return points
     return [(points[0][0], 0.0), *points, (points[-1][0], 0.0)]

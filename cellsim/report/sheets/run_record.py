@@ -67,7 +67,7 @@ def _entries(record: RunRecord) -> Iterator[tuple[str, str]]:
 
 
 def sidecar_lines(text: str) -> Iterator[str]:
-    """The side-car's lines; one too long for a cell continues in the next, marked with a backslash before and after."""
+    r"""The side-car's lines; one too long for a cell continues in the next, marked with `\\` before and after."""
     for line in text.split("\n"):
         rest = storable(line.removesuffix("\r"), longest=len(line) * 2 + 16)
         size = LONGEST // 2
