@@ -22,8 +22,8 @@ _STEP = 512
 """Blocks are multiples of this, so that every draw is treated alike by vector instructions."""
 _SMALLEST_BLOCK = 512
 _LARGEST_BLOCK = 16_384
-_BUFFER_BYTES = 256 * 2**20
-"""What all buffers of all threads may take together."""
+_BUFFER_BYTES = 40 * 2**20
+"""What the buffers of one thread may take; larger ones fall out of the processor's caches."""
 
 
 class BlockEngine:
@@ -45,7 +45,7 @@ class BlockEngine:
         self._program = program
         self._base = base
         self.threads = max(1, threads if threads is not None else available_cores())
-        self.block = block_size(program, self.threads) if block is None else rounded_block(block)
+        self.block = block_size(program) if block is None else rounded_block(block)
         self._idle: list[BlockEvaluator] = []
         self._lock = threading.Lock()
         self.unsettled = 0
@@ -126,8 +126,8 @@ def rounded_block(draws: int) -> int:
     return max(_STEP, -(-draws // _STEP) * _STEP)
 
 
-def block_size(program: Program, threads: int) -> int:
+def block_size(program: Program) -> int:
     """Draws in a block such that all buffers stay within their share of memory."""
     rows = sum(plan_buffers(program).counts.values()) or 1
-    most = _BUFFER_BYTES // (rows * 8 * threads)
+    most = _BUFFER_BYTES // (rows * 8)
     return max(_SMALLEST_BLOCK, min(_LARGEST_BLOCK, most // _STEP * _STEP))

@@ -57,6 +57,13 @@ class BlockEvaluator:
         self.poison: dict[int, FloatArray | None] = {}
         self.unsettled = 0
         self._steps = self._build(program.instructions)
+        self._reads = [
+            frozenset(o.number for o in i.operands if isinstance(o, Register))
+            for i in program.instructions
+        ]
+        self._writes = [
+            (i.target, *(i.detail.carried if i.op is Op.LOOP else ())) for i in program.instructions
+        ]
         self._inputs = [self._buffers.array(number) for number in range(len(program.inputs))]
         self._outputs = [
             (
@@ -86,14 +93,26 @@ class BlockEvaluator:
     def _run(self) -> None:
         self.poison.clear()
         finite = all(np.isfinite(buffer).all() for buffer in self._inputs)
-        done = 0
-        if finite:
-            with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
-                done = _run_fast(self._steps.fast)
-        if done < len(self._steps.careful):
+        with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
+            done = _run_fast(self._steps.fast) if finite else 0
+            if done < len(self._steps.fast):
+                self._run_mixed(done, all_failing=not finite)
+
+    def _run_mixed(self, start: int, *, all_failing: bool) -> None:
+        """Go on from a step: carefully where an operand may hold an error, fast elsewhere."""
+        failing = set(range(len(self._inputs))) if all_failing else set()
+        instructions = self._program.instructions
+        for place in range(start, len(instructions)):
+            reads = self._reads[place]
+            if failing.isdisjoint(reads):
+                try:
+                    self._steps.fast[place]()
+                    continue
+                except (FloatingPointError, GoCarefully):
+                    pass  # this instruction is the first to fail on its own
             with np.errstate(all="ignore"):
-                for step in self._steps.careful[done:]:
-                    step()
+                self._steps.careful[place]()
+            failing.update(self._writes[place])
 
     def _build(self, instructions: Sequence[Instruction]) -> _Steps:
         fast: list[Step] = []
