@@ -32,10 +32,22 @@ class Book:
     figures: Figures
     sheet_names: tuple[str, ...]
 
-    def add_page(self, name: str, widths: Sequence[float], *, landscape: bool = False) -> Page:
-        """A new sheet, with a way back to the first."""
+    def add_page(
+        self, name: str, widths: Sequence[float], *, landscape: bool = False, way_back: bool = True
+    ) -> Page:
+        """A new sheet, with a way back to the first.
+
+        Args:
+            name: Its name.
+            widths: Column widths in characters.
+            landscape: Whether it prints sideways.
+            way_back: Whether the link to the first sheet is written at once, into the third row.
+
+        Returns:
+            The page to write on.
+        """
         worksheet = self.workbook.add_worksheet(name)
         page = Page(worksheet, self.styles, widths, landscape=landscape)
-        if name != HEADLINE:
+        if way_back and name != HEADLINE:
             page.link(2, 0, HEADLINE, "Back to Headline")
         return page

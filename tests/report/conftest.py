@@ -126,7 +126,7 @@ def _failures(outputs: Sequence[tuple[OutputRecord, Any]], draws: np.ndarray) ->
 def ferry_run() -> RunResults:
     """A full run: thresholds, failed draws, dependence, differing formulas, notes."""
     rng = np.random.default_rng(20260701)
-    count = 20_000
+    count = 5_000
     growth = rng.normal(0.03, 0.025, count)
     price = rng.lognormal(4.0, 0.3, count)
     berth = rng.choice([0.0, 1.0], count, p=[0.65, 0.35])

@@ -11,7 +11,7 @@ from xlsxwriter.worksheet import Worksheet
 from cellsim.report.book import Book
 from cellsim.report.figures import InputFigures, OutputFigures
 from cellsim.report.page import NO_NUMBER
-from cellsim.report.places import DRAWS
+from cellsim.report.places import DRAWS, HEADLINE
 from cellsim.report.plain_text import storable
 from cellsim.results import FloatArray
 from cellsim.values import decode_error
@@ -35,21 +35,25 @@ def write(book: Book) -> None:
     # XlsxWriter takes the mode of a sheet from its workbook at the time the sheet is added: only this
     # one goes to disk row by row, so that charts on the others keep their cached values.
     book.workbook.constant_memory = True
-    for part, start in enumerate(range(0, draws, room)):
-        name = NAME if part == 0 else f"{NAME} {part + 1}"
-        _write_part(book, name, start, min(start + room, draws))
+    try:
+        for part, start in enumerate(range(0, draws, room)):
+            name = NAME if part == 0 else f"{NAME} {part + 1}"
+            _write_part(book, name, start, min(start + room, draws))
+    finally:
+        book.workbook.constant_memory = False
 
 
 def _write_part(book: Book, name: str, start: int, stop: int) -> None:
     figures: list[OutputFigures | InputFigures] = [*book.figures.outputs, *book.figures.inputs]
     figures = figures[: _LAST_COLUMN - 1]
-    page = book.add_page(name, (), landscape=True)
+    page = book.add_page(name, (), landscape=True, way_back=False)  # rows must come in order
     page.worksheet.set_column(0, 0, 10, book.styles.get("plain", "0"))
     for k, item in enumerate(figures, start=1):
         page.worksheet.set_column(k, k, 16, book.styles.get("plain", item.scale.code))
     page.text(0, 0, "Draws", "title")
     lead = "One row a draw: outputs first, then inputs. A failed output shows its error as text."
     page.text(1, 0, lead, "plain")
+    page.link(2, 0, HEADLINE, "Back to Headline")
     page.text(_HEAD, 0, "Draw", "header")
     for k, item in enumerate(figures, start=1):
         kind = "output" if k <= len(book.figures.outputs) else "input"
