@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 
 from cellsim.functions.registry import FloatArray, Number, Whole, over_draws, spreadsheet_function
-from cellsim.functions.root_finding import bracket_outward, polish
+from cellsim.functions.root_finding import enclose, polish
 from cellsim.values import ErrorValue, Fault, encode_error
 
 
@@ -121,7 +121,7 @@ def periodic_rate(
         h = 1e-6 * max(abs(rate), 1e-3)
         return scaled(rate), (scaled(rate + h) - scaled(rate - h)) / (2 * h)
 
-    found = bracket_outward(lambda rate: _quiet(scaled, rate), guess, -0.999_999, 1e7)
+    found = enclose(lambda rate: _quiet(scaled, rate), guess)
     return ErrorValue.NUM if found is None else polish(with_slope, *found)
 
 

@@ -8,7 +8,8 @@ import numpy as np
 
 from cellsim.functions.coercion import first_error, numbers_in, to_number
 from cellsim.functions.dispatch import values_of
-from cellsim.functions.rates_of_return import internal_rate_of, internal_rates
+from cellsim.functions.rates_of_return import internal_rate_of
+from cellsim.functions.rates_of_return_over_draws import internal_rates
 from cellsim.functions.registry import (
     Context,
     FloatArray,
