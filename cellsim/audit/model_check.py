@@ -12,6 +12,7 @@ from cellsim.functions.registry import find_function
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.slicing import affected_cells
 from cellsim.program.calculation import Calculation
+from cellsim.program.interpret import UNKNOWN_LINK
 from cellsim.results import Disagreement, ModelCheck
 from cellsim.values import Scalar
 from cellsim.workbook.model import Workbook
@@ -112,6 +113,8 @@ def reason_for(name: str) -> str:
     """Why a function is not calculated, for the user."""
     if not name:
         return "the formula could not be read"
+    if name == UNKNOWN_LINK:
+        return "the file keeps no values of the linked workbook's sheet"
     return (
         unsupported_reason(name) or "no such function is known: a macro or an add-in may define it"
     )

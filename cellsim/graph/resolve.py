@@ -121,7 +121,10 @@ class Resolver:
         return Reference((RangeRef(table.area.sheet, rows[0], columns[0], rows[1], columns[1]),))
 
     def external(self, node: CellReference | RangeReference, cell: CellRef) -> Scalar | Array:
-        """The cached values of a reference into a linked workbook; #REF! where the file has none."""
+        """The cached values of a reference into a linked workbook; #REF! where the file has none.
+
+        Ask `keeps_values` first: where the file keeps no values of a sheet at all, nothing can be said.
+        """
         link = self.external_link(node.prefix)
         if link is None or node.prefix is None:
             return ErrorValue.REF
@@ -141,6 +144,11 @@ class Resolver:
             for column in range(first_column, last_column + 1)
         ]
         return Array(last_row - first_row + 1, last_column - first_column + 1, items)
+
+    def keeps_values(self, prefix: SheetPrefix) -> bool:
+        """Whether the file keeps values of the linked sheet that a prefix names."""
+        link = self.external_link(prefix)
+        return link is None or prefix.first.casefold() in self._external_titles[link.number]
 
     def external_link(self, prefix: SheetPrefix | None) -> ExternalWorkbook | None:
         """The linked workbook that a prefix names by its number."""

@@ -45,6 +45,8 @@ from cellsim.functions.registry import (
 from cellsim.graph.build import Graph
 from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value
 
+UNKNOWN_LINK = "a link without kept values"
+"""What stands in place of a function's name where a linked sheet's values are not in the file."""
 REFERENCE_OPERATORS = frozenset({":", " ", ","})
 _MOST_NESTED_CALLS = 1_000
 
@@ -276,7 +278,11 @@ def _missing(_node: MissingArgument, _frame: Frame, _whole: bool) -> Value:
 def _reference(node: CellReference | RangeReference, frame: Frame, _whole: bool) -> Value:
     resolver = frame.calculation.graph.resolver
     if node.prefix is not None and node.prefix.workbook is not None:
-        return resolver.external(node, frame.cell)
+        if not resolver.keeps_values(node.prefix):
+            raise UnsupportedFunctionError(UNKNOWN_LINK)
+        value = resolver.external(node, frame.cell)
+        # text and logicals of a linked cell count as those of a range: SUM passes over them
+        return Array(1, 1, [value]) if isinstance(value, (str, bool)) else value
     return resolver.area(node, frame.cell)
 
 
