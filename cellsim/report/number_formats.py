@@ -138,7 +138,7 @@ def suited_code(largest: float, spread: float) -> str:
     size = max(largest, spread)
     if size == 0:
         return "0"
-    if size >= 1e12 or size < 1e-4:
+    if size >= 1e10 or size < 1e-4:
         return "0.0000E+00"
     fine = spread if spread > 0 else size / 100
     decimals = min(max(2 - math.floor(math.log10(fine)), 0), 8)

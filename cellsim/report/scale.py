@@ -17,6 +17,7 @@ from cellsim.report.number_formats import (
 from cellsim.report.plain_text import one_line
 
 _DAYS = "#,##0.0"
+_LONGEST = 14
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,14 +29,14 @@ class Scale:
         mean_code: Code of means: whole numbers can have a mean between them.
         spread_code: Code of differences between values: days for dates.
         unit: Its unit, or "".
-        grain: What estimates are rounded to in sentences, or 0.
+        digits: Decimals, perhaps negative, to which estimates are rounded in sentences, or None.
     """
 
     code: str
     mean_code: str
     spread_code: str
     unit: str
-    grain: float = 0.0
+    digits: int | None = None
 
     def text(self, value: float | None) -> str:
         """A value as it is, with its unit, for a sentence."""
@@ -43,8 +44,8 @@ class Scale:
 
     def estimate_text(self, value: float | None, code: str = "") -> str:
         """An estimate, rounded to what the spread makes sense of, with its unit, for a sentence."""
-        if value is not None and self.grain > 0 and math.isfinite(value / self.grain):
-            value = round(value / self.grain) * self.grain
+        if value is not None and self.digits is not None and math.isfinite(value):
+            value = round(value, self.digits)
         return self._worded(value, code or self.code, self.unit)
 
     def spread_text(self, value: float | None) -> str:
@@ -91,8 +92,14 @@ def scale_of(
     code = safe_code(number_format)
     if is_date_code(code):
         return Scale(code, code, _DAYS, unit)
-    if code == GENERAL or not is_number_code(code):
+    if code == GENERAL or not is_number_code(code) or _is_long(code, largest):
         code = suited_code(largest, spread)
     finer = finer_code(code, spread)
-    grain = 10.0 ** (math.floor(math.log10(spread)) - 2) if spread > 0 else 0.0
-    return Scale(code if separate else finer, finer, finer, unit, grain)
+    digits = 2 - math.floor(math.log10(spread)) if spread > 0 else None
+    return Scale(code if separate else finer, finer, finer, unit, digits)
+
+
+def _is_long(code: str, largest: float) -> bool:
+    """Whether the largest value would not fit into a column."""
+    shown = format_value(-largest, code)
+    return isinstance(shown, str) and len(shown.strip()) > _LONGEST

@@ -29,7 +29,7 @@ KINDS: Mapping[str, Properties] = {
         "font_color": INK, "align": "right", "indent": 1, "text_wrap": True, "valign": "top", **_RULE,
     },
     "strong": {"font_color": INK, "bold": True, "text_wrap": True, "valign": "top", **_RULE},
-    "number": {"font_color": INK, "align": "right", "indent": 1, "valign": "top", **_RULE},
+    "number": {"font_color": INK, "align": "right", "indent": 1, "shrink": True, "valign": "top", **_RULE},
     "ask": {"font_color": INK, "align": "right", "indent": 1, "bg_color": MIST, "border": 1, "border_color": SAND},
     "answer": {"font_color": INK, "bold": True, "align": "right", "indent": 1, **_RULE},
     "code": {"font_color": INK, "font_name": "Courier New", "font_size": 9},

@@ -12,7 +12,7 @@ from cellsim.report.book import Book
 from cellsim.report.figures import InputFigures, OutputFigures
 from cellsim.report.page import NO_NUMBER
 from cellsim.report.places import DRAWS, HEADLINE
-from cellsim.report.plain_text import storable
+from cellsim.report.plain_text import one_line, storable
 from cellsim.results import FloatArray
 from cellsim.values import decode_error
 
@@ -21,6 +21,7 @@ _LAST_ROW = 1_048_576
 _LAST_COLUMN = 16_384
 _SLICE = 20_000
 _HEAD = 4
+_HEADER_HEIGHT = 58
 
 
 def is_needed(book: Book) -> bool:
@@ -54,10 +55,11 @@ def _write_part(book: Book, name: str, start: int, stop: int) -> None:
     lead = "One row a draw: outputs first, then inputs. A failed output shows its error as text."
     page.text(1, 0, lead, "plain")
     page.link(2, 0, HEADLINE, "Back to Headline")
+    page.worksheet.set_row(_HEAD, _HEADER_HEIGHT)
     page.text(_HEAD, 0, "Draw", "header")
     for k, item in enumerate(figures, start=1):
         kind = "output" if k <= len(book.figures.outputs) else "input"
-        page.text(_HEAD, k, f"{item.title}\n({kind})", "header_right")
+        page.text(_HEAD, k, f"{one_line(item.title, 40)}\n({kind})", "header_right")
     page.repeat(_HEAD, _HEAD)
     arrays = [*book.results.output_draws, *book.results.input_draws][: len(figures)]
     for first in range(start, stop, _SLICE):

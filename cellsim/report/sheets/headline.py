@@ -78,8 +78,8 @@ def _write_outputs(book: Book, page: Page, row: int) -> int:
 
 def _write_output(page: Page, row: int, output: OutputFigures, top: int) -> None:
     code = output.scale.code
-    page.link(row, 0, QUANTILES, output.title, f"A{top + 1}")
-    page.fit_row(row, [(output.title, page.widths[0])])
+    page.link(row, 0, QUANTILES, one_line(output.title, 30), f"A{top + 1}")
+    page.fit_row(row, [(output.scale.unit, page.widths[1])])
     page.text(row, 1, output.scale.unit, "wrapped")
     page.scalar(row, 2, output.record.base, code)
     summary = output.summary
@@ -116,11 +116,12 @@ def _write_thresholds(book: Book, page: Page, row: int) -> int:
     row += 2
     for output, threshold, about in rows:
         page.text(row, 0, output.title, "wrapped")
-        page.fit_row(row, [(output.title, page.widths[0]), (threshold.text, page.widths[3])])
         page.text(row, 1, output.scale.unit, "wrapped")
         page.number(row, 2, threshold.value, output.scale.code)
         origin = threshold.text if threshold.text.startswith("=") else "side-car"
         page.text(row, 3, origin, "wrapped_right")
+        wrapped = ((output.title, 0), (output.scale.unit, 1), (origin, 3))
+        page.fit_row(row, [(text, page.widths[column]) for text, column in wrapped])
         page.share(row, 4, about.above.share if about else None)
         page.share(row, 5, about.above.lower if about else None)
         page.share(row, 6, about.above.upper if about else None)
