@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-
 import numpy as np
 import numpy.typing as npt
 
+from cellsim.functions.flows_over_draws import Flows, running_sums
 from cellsim.functions.rates_of_return import (
     FARTHEST_START,
     HIGHEST_POINT,
@@ -27,7 +26,7 @@ IntArray = npt.NDArray[np.int64]
 Places = npt.NDArray[np.intp]
 
 _NUM = encode_error(ErrorValue.NUM)
-_DRAWS_TOGETHER = 2048
+_DRAWS_TOGETHER = 1024
 """So many draws' flows stay in the processor's cache."""
 _FIRST_TURNS = range(6)
 """Steps that settle most draws; the rest are gathered from all and taken together."""
@@ -57,81 +56,6 @@ def internal_rates(
     return search.rates
 
 
-class _Flows:
-    """Flows whose worth is sought to be nothing: `Equations` in x = ln(1 + rate).
-
-    Attributes:
-        flows: Shape (flows, draws).
-        times: Shape (flows, 1) or (flows, draws); 0, 1, 2, ... if None.
-        at_end: Whether their worth is taken at the last time.
-    """
-
-    __slots__ = ("at_end", "flows", "times")
-
-    def __init__(self, flows: FloatArray, times: FloatArray | None, *, at_end: bool) -> None:
-        self.flows = flows
-        self.times = times
-        self.at_end = at_end
-
-    @property
-    def draws(self) -> int:
-        return int(self.flows.shape[1])
-
-    def subset(self, chosen: Places) -> _Flows:
-        times = self.times
-        if times is not None and times.shape[1] > 1:
-            times = times[:, chosen]
-        return _Flows(np.take(self.flows, chosen, axis=1), times, at_end=self.at_end)
-
-    def evaluate(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        if self.times is not None:
-            return self._evaluate_at_times(x)
-        factor = np.exp(x if self.at_end else -x)
-        rows = self.flows if self.at_end else self.flows[::-1]
-        value = rows[0].copy()
-        slope = np.zeros_like(value)
-        for flow in rows[1:]:
-            np.multiply(slope, factor, out=slope)
-            np.add(slope, value, out=slope)
-            np.multiply(value, factor, out=value)
-            np.add(value, flow, out=value)
-        return value, (factor if self.at_end else -factor) * slope
-
-    def _evaluate_at_times(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        value, slope = np.zeros_like(x), np.zeros_like(x)
-        for flow, exponent in zip(self.flows, self._exponents(at_end=self.at_end), strict=True):
-            part = flow * np.exp(exponent * x)
-            value += part
-            slope += exponent * part
-        return value, slope
-
-    def _exponents(self, *, at_end: bool) -> FloatArray:
-        if self.times is None:
-            raise ValueError("flows at equal periods have no times")
-        return (self.times[-1] if at_end else 0.0) - self.times
-
-    def values(self, rates: Sequence[float]) -> FloatArray:
-        points = np.log1p(np.array(rates))
-        result = np.empty((len(rates), self.draws))
-        for at_end in (False, True):
-            chosen = (points < 0) == at_end
-            if chosen.any():
-                result[chosen] = self._worth_at(points[chosen][:, None], at_end=at_end)
-        return result
-
-    def _worth_at(self, points: FloatArray, *, at_end: bool) -> FloatArray:
-        value = np.zeros((len(points), self.draws))
-        if self.times is not None:
-            for flow, exponent in zip(self.flows, self._exponents(at_end=at_end), strict=True):
-                value += flow * np.exp(exponent * points)
-            return value
-        factor = np.exp(points if at_end else -points)
-        for flow in self.flows if at_end else self.flows[::-1]:
-            np.multiply(value, factor, out=value)
-            np.add(value, flow, out=value)
-        return value
-
-
 class _Search:
     """The search for the rates of all draws.
 
@@ -158,22 +82,15 @@ class _Search:
             np.broadcast_to(small, (draws,)),
         )
         self.rates = np.full(draws, _NUM)
+        self._scratch = np.empty((2, len(flows), min(draws, _DRAWS_TOGETHER)))
         self.above = np.zeros(draws, dtype=np.int64)
         self.below = np.zeros(draws, dtype=np.int64)
 
-    def part(self, begin: int, end: int) -> tuple[FloatArray, FloatArray | None]:
-        """The flows of neighbouring draws, side by side in memory, and their times."""
-        shared = self.times is None or self.times.shape[1] == 1
-        times = self.times if shared or self.times is None else self.times[:, begin:end]
-        return np.ascontiguousarray(self.flows[:, begin:end]), times
-
     def begin(self, begin: int, end: int) -> None:
         """Count the roots of neighbouring draws, and take the first steps where there is one."""
-        flows, times = self.part(begin, end)
-        sums = np.empty_like(flows)
-        sums[0] = flows[0]
-        for place in range(1, len(flows)):
-            np.add(sums[place - 1], flows[place], out=sums[place])
+        flows, sums = self._scratch[:, :, : end - begin]
+        np.copyto(flows, self.flows[:, begin:end])
+        running_sums(flows, sums)
         total = sums[-1]
         above, below = _root_counts(sums)
         known = ~np.isnan(total) & (self.guesses[begin:end] > -1)
@@ -184,18 +101,20 @@ class _Search:
             worthless = (flows[:, balanced] != 0).any(axis=0)
             self.rates[begin + balanced] = np.where(worthless, 0.0, _NUM)
         if len(single):
-            self._take_first_steps(_Flows(flows, times, at_end=False), sums, single, begin)
+            shared = self.times is None or self.times.shape[1] == 1
+            times = self.times if shared or self.times is None else self.times[:, begin:end]
+            self._take_first_steps(Flows(flows, times, at_end=False), total, single, begin)
 
     def _take_first_steps(
-        self, flows: _Flows, sums: FloatArray, single: Places, begin: int
+        self, flows: Flows, total: FloatArray, single: Places, begin: int
     ) -> None:
         is_above = self.above[begin + single] > 0
-        start = _start(flows.flows, sums, flows.times)
+        start = _start(flows)
         brackets = self.brackets.subset(begin + single)
         brackets.low = np.where(is_above, 0.0, LOWEST_POINT)
         brackets.high = np.where(is_above, HIGHEST_POINT, 0.0)
         brackets.point = np.clip(start[single], brackets.low, brackets.high)
-        brackets.rising = (sums[-1][single] < 0) == is_above
+        brackets.rising = (total[single] < 0) == is_above
         equations = flows if len(single) == flows.draws else flows.subset(single)
         settled = polish_over_draws(equations, brackets, _FIRST_TURNS)
         self.brackets.rising[begin + single] = brackets.rising
@@ -213,7 +132,7 @@ class _Search:
         """Enclose the root nearest the guess in draws that may have several."""
         above, below = self.above > 0, self.below > 0
         several = (self.above + self.below > 1) & np.isnan(self.brackets.low)
-        flows = _Flows(self.flows, self.times, at_end=False)
+        flows = Flows(self.flows, self.times, at_end=False)
         for floor, ceiling, among in (
             (0.0, HIGHEST_RATE, ~below),
             (LOWEST_RATE, 0.0, ~above),
@@ -238,7 +157,7 @@ class _Search:
             left = ~np.isnan(self.brackets.low) & ((self.brackets.high <= 0) == at_end)
             chosen = np.flatnonzero(left)
             if len(chosen):
-                flows = _Flows(self.flows, self.times, at_end=at_end).subset(chosen)
+                flows = Flows(self.flows, self.times, at_end=at_end).subset(chosen)
                 part = self.brackets.subset(chosen)
                 settled = polish_over_draws(flows, part)
                 self.brackets.put(chosen, part)
@@ -271,17 +190,8 @@ def _sign_changes(negative: BoolArray, zero: BoolArray) -> IntArray:
     return count
 
 
-def _start(flows: FloatArray, sums: FloatArray, times: FloatArray | None) -> FloatArray:
+def _start(flows: Flows) -> FloatArray:
     """The x at which inflows and outflows balance if each came at its mean time."""
-    total = sums[-1]
-    gained, gain_time, total_time = np.zeros((3, len(total)))
-    positive, weighted = np.empty_like(total), np.empty_like(total)
-    for place, flow in enumerate(flows):
-        time = float(place) if times is None else times[place]
-        np.maximum(flow, 0.0, out=positive)
-        gained += positive
-        gain_time += np.multiply(positive, time, out=weighted)
-        total_time += np.multiply(flow, time, out=weighted)
-    lost, loss_time = gained - total, gain_time - total_time
+    gained, gain_time, lost, loss_time = flows.gains_and_losses()
     x = np.log(gained / lost) / (gain_time / gained - loss_time / lost)
     return np.clip(np.where(np.isfinite(x), x, 0.0), -FARTHEST_START, FARTHEST_START)
