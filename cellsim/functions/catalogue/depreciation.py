@@ -2,86 +2,66 @@
 
 from __future__ import annotations
 
-import math
+import numpy as np
 
 from cellsim.functions.day_counts import year_fraction
+from cellsim.functions.encoded import FloatArray, checked, numeric_function
 from cellsim.functions.registry import Context, Logical, Number, Whole, spreadsheet_function
-from cellsim.functions.rounding_rules import round_half_away
+from cellsim.functions.rounding_rules import round_half_away, round_half_away_over_draws
 from cellsim.values import ErrorValue, Fault
 
+_NUM = ErrorValue.NUM
 
-@spreadsheet_function("SLN")
-def straight_line(cost: Number, salvage: Number, life: Number) -> float | ErrorValue:
+
+@numeric_function("SLN")
+def straight_line(cost: Number, salvage: Number, life: Number) -> FloatArray:
     """Straight-line depreciation of one period."""
-    return (cost - salvage) / life if life else ErrorValue.DIV0
+    years = np.asarray(life)
+    return checked((cost - salvage) / years, (years == 0, ErrorValue.DIV0))
 
 
-@spreadsheet_function("SYD")
-def sum_of_years_digits(
-    cost: Number, salvage: Number, life: Number, period: Number
-) -> float | ErrorValue:
+@numeric_function("SYD")
+def sum_of_years_digits(cost: Number, salvage: Number, life: Number, period: Number) -> FloatArray:
     """Depreciation of a period by the sum of the years' digits."""
-    if life <= 0 or salvage < 0 or not 1 <= period <= life:
-        return ErrorValue.NUM
-    return (cost - salvage) * (life - period + 1) * 2 / (life * (life + 1))
+    years, place = np.asarray(life), np.asarray(period)
+    part = (cost - salvage) * (years - place + 1) * 2 / (years * (years + 1))
+    refused = (years <= 0) | (np.asarray(salvage) < 0) | (place < 1) | (place > years)
+    return checked(part, (refused, _NUM))
 
 
-@spreadsheet_function("DB")
+@numeric_function("DB")
 def fixed_declining(
     cost: Number, salvage: Number, life: Number, period: Whole, months: Number = 12.0
-) -> float | ErrorValue:
+) -> FloatArray:
     """Fixed-declining depreciation, the rate rounded to three decimals."""
-    if (
-        cost < 0
-        or salvage < 0
-        or life <= 0
-        or period < 1
-        or not 1 <= months <= 12
-        or period > life + 1
-    ):
-        return ErrorValue.NUM
-    if cost == 0:
-        return 0.0
-    rate = round_half_away(1 - math.pow(salvage / cost, 1 / life), 3)
-    first = cost * rate * months / 12
-    if period == 1:
-        return first
-    total = first
-    last = math.ceil(life) + (1 if months < 12 else 0)
-    for place in range(2, period + 1):
-        part = (cost - total) * rate
-        if place == last and months < 12:
-            part = (cost - total) * rate * (12 - months) / 12
-        if place == period:
-            return part
-        total += part
-    return 0.0
+    amount, rest, years = np.asarray(cost), np.asarray(salvage), np.asarray(life)
+    place, first_months = np.trunc(period), np.trunc(months)
+    rate = round_half_away_over_draws(1 - np.power(rest / amount, 1 / years), 3.0)
+    first = amount * rate * first_months / 12
+    part = (amount - first) * np.power(1 - rate, place - 2) * rate
+    part = np.where(place > years, part * (12 - first_months) / 12, part)
+    part = np.where(place == 1, first, part)
+    part = np.where(amount == 0, 0.0, part)
+    refused = (amount < 0) | (rest < 0) | (years <= 0) | (place < 1) | (place > years + 1)
+    return checked(part, (refused | (first_months < 1) | (first_months > 12), _NUM))
 
 
-def _declining(cost: float, salvage: float, life: float, period: float, factor: float) -> float:
-    """Declining-balance depreciation up to a whole period, never below the salvage value."""
-    rate = factor / life
-    if rate >= 1:
-        rate = 1.0
-        before = cost if period == 1 else 0.0
-    else:
-        before = cost * math.pow(1 - rate, period - 1)
-    after = cost * math.pow(1 - rate, period)
-    part = before - salvage if after < salvage else before - after
-    return max(part, 0.0)
-
-
-@spreadsheet_function("DDB")
+@numeric_function("DDB")
 def double_declining(
     cost: Number, salvage: Number, life: Number, period: Number, factor: Number = 2.0
-) -> float | ErrorValue:
+) -> FloatArray:
     """Declining-balance depreciation of a period, twice the straight line by default."""
-    if cost < 0 or salvage < 0 or life <= 0 or period <= 0 or period > life or factor <= 0:
-        return ErrorValue.NUM
-    return _declining(cost, salvage, life, period, factor)
+    amount, rest, years = np.asarray(cost), np.asarray(salvage), np.asarray(life)
+    place = np.asarray(period)
+    kept = np.maximum(1 - factor / years, 0.0)
+    before, after = amount * np.power(kept, place - 1), amount * np.power(kept, place)
+    before = np.where(kept == 0, np.where(place == 1, amount, 0.0), before)
+    part = np.maximum(before - np.maximum(after, rest), 0.0)
+    refused = (amount < 0) | (rest < 0) | (years <= 0) | (place <= 0) | (place > years)
+    return checked(part, (refused | (np.asarray(factor) <= 0), _NUM))
 
 
-@spreadsheet_function("VDB")
+@numeric_function("VDB")
 def variable_declining(
     cost: Number,
     salvage: Number,
@@ -90,28 +70,29 @@ def variable_declining(
     end: Number,
     factor: Number = 2.0,
     no_switch: Logical = False,
-) -> float | ErrorValue:
+) -> FloatArray:
     """Declining-balance depreciation over a span of periods, with a switch to straight line."""
-    if cost < 0 or salvage < 0 or life <= 0 or start < 0 or end < start or end > life or factor < 0:
-        return ErrorValue.NUM
-    total = 0.0
-    book = cost
-    for period in range(1, math.ceil(end) + 1):
-        declining = min(book * min(factor / life, 1.0), max(book - salvage, 0.0))
-        part = declining
-        left = life - (period - 1)
-        if not no_switch and left > 0:
-            straight = (book - salvage) / left
-            part = (
-                max(declining, min(straight, book - salvage)) if straight > declining else declining
-            )
-        share = max(0.0, min(end, period) - max(start, period - 1))
-        total += part * share
-        book -= part
-    return total
+    amount, rest, years, begin, finish, speed, keep = np.broadcast_arrays(
+        cost, salvage, life, start, end, factor, no_switch
+    )
+    refused = (amount < 0) | (rest < 0) | (years <= 0) | (begin < 0) | (speed < 0)
+    refused = refused | (finish < begin) | (finish > years)
+    total, book = np.zeros(amount.shape), amount
+    last = np.max(finish, where=~refused & ~np.isnan(finish), initial=0.0)
+    for period in np.arange(1.0, np.ceil(last) + 1):
+        loss = np.maximum(book - rest, 0.0)
+        part = np.minimum(book * np.minimum(speed / years, 1.0), loss)
+        left = years - (period - 1)
+        straight = np.minimum((book - rest) / left, loss)
+        part = np.where((keep == 0) & (left > 0), np.maximum(part, straight), part)
+        total = total + part * np.maximum(
+            np.minimum(finish, period) - np.maximum(begin, period - 1), 0.0
+        )
+        book = book - part
+    return checked(total, (refused, _NUM))
 
 
-@spreadsheet_function("AMORLINC")
+@spreadsheet_function("AMORLINC", strict=True)
 def linear_by_days(
     context: Context,
     cost: Number,
@@ -121,10 +102,9 @@ def linear_by_days(
     period: Whole,
     rate: Number,
     basis: Whole = 0,
-) -> float | ErrorValue:
+) -> float:
     """Linear depreciation of a period with a first period counted in days."""
-    if rate <= 0 or cost < salvage or period < 0:
-        return ErrorValue.NUM
+    _check(cost, salvage, period, rate, bought, first_end)
     full = cost * rate
     first = full * year_fraction(bought, first_end, basis, date_1904=context.date_1904)
     if period == 0:
@@ -133,7 +113,7 @@ def linear_by_days(
     return max(0.0, min(full, left))
 
 
-@spreadsheet_function("AMORDEGRC")
+@spreadsheet_function("AMORDEGRC", strict=True)
 def degressive_by_days(
     context: Context,
     cost: Number,
@@ -143,18 +123,15 @@ def degressive_by_days(
     period: Whole,
     rate: Number,
     basis: Whole = 0,
-) -> float | ErrorValue:
+) -> float:
     """Degressive depreciation of a period, each rounded to whole units."""
-    if rate <= 0 or cost < salvage or period < 0:
-        return ErrorValue.NUM
+    _check(cost, salvage, period, rate, bought, first_end)
     life = 1 / rate
-    if life < 3:
-        raise Fault(ErrorValue.NUM)
-    coefficient = 1.5 if life <= 4 else 2.0 if life <= 6 else 2.5
-    raised = rate * coefficient
-    part = round_half_away(
-        year_fraction(bought, first_end, basis, date_1904=context.date_1904) * raised * cost, 0
-    )
+    if life < 3 or 4 < life < 5:  # lives for which no coefficient is laid down
+        raise Fault(_NUM)
+    raised = rate * (1.5 if life <= 4 else 2.0 if life <= 6 else 2.5)
+    share = year_fraction(bought, first_end, basis, date_1904=context.date_1904)
+    part = round_half_away(share * raised * cost, 0)
     left = cost - part
     rest = left - salvage
     for place in range(period):
@@ -164,3 +141,10 @@ def degressive_by_days(
             return round_half_away(left * 0.5, 0) if period - place in (0, 1) else 0.0
         left -= part
     return part
+
+
+def _check(
+    cost: float, salvage: float, period: int, rate: float, bought: float, first_end: float
+) -> None:
+    if rate <= 0 or cost <= 0 or salvage < 0 or salvage > cost or period < 0 or bought > first_end:
+        raise Fault(_NUM)

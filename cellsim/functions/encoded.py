@@ -1,0 +1,68 @@
+"""Kernels that serve one draw and many alike: NumPy arithmetic with spreadsheet errors encoded in NaNs."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import wraps
+from typing import Any, TypeAlias, TypeVar
+
+import numpy as np
+import numpy.typing as npt
+
+from cellsim.functions.registry import over_draws, spreadsheet_function
+from cellsim.values import ErrorValue, decode_error, encode_error
+
+FloatArray: TypeAlias = npt.NDArray[np.float64]
+Numbers: TypeAlias = FloatArray | float
+"""A number, or one for each draw."""
+
+Condition: TypeAlias = npt.NDArray[np.bool_] | np.bool_ | bool
+
+Kernel = TypeVar("Kernel", bound=Callable[..., FloatArray])
+
+_NUM = encode_error(ErrorValue.NUM)
+
+
+def checked(result: Numbers, *rules: tuple[Condition, ErrorValue]) -> FloatArray:
+    """A result with errors put where they belong: the first rule that holds, #NUM! where infinite.
+
+    Args:
+        result: The numbers, whatever they are where a rule holds.
+        rules: Conditions and the errors that they mean, the first taking precedence.
+    """
+    values = np.where(np.isfinite(result), result, _NUM)
+    for condition, error in reversed(rules):
+        values = np.where(condition, encode_error(error), values)
+    return values
+
+
+def numeric_function(*names: str, strict: bool = False) -> Callable[[Kernel], Kernel]:
+    """Register a kernel that serves one draw and many: for both forms under the same names.
+
+    Its parameters are annotated as those of any kernel, and take a number or an array of them;
+    `Whole` ones come not yet truncated over draws. It returns an array with errors encoded.
+
+    Args:
+        names: Names in upper case.
+        strict: As for `spreadsheet_function`.
+    """
+
+    def register(kernel: Kernel) -> Kernel:
+        over_draws(*names)(kernel)
+        spreadsheet_function(*names, strict=strict)(single(kernel))
+        return kernel
+
+    return register
+
+
+def single(kernel: Callable[..., FloatArray]) -> Callable[..., float | ErrorValue]:
+    """A kernel over draws as a function of plain numbers."""
+
+    @wraps(kernel)
+    def call(*arguments: Any, **options: Any) -> float | ErrorValue:
+        with np.errstate(all="ignore"):
+            number = float(kernel(*arguments, **options))
+        return number if number == number else decode_error(number)
+
+    call.__annotations__ = {**kernel.__annotations__, "return": float}
+    return call
