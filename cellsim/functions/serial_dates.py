@@ -9,7 +9,8 @@ from __future__ import annotations
 import datetime as dt
 
 _BASE = dt.date(1899, 12, 30).toordinal()
-_OFFSET_1904 = 1462
+OFFSET_1904 = 1462
+"""How many days later the 1904 system begins."""
 _PHANTOM_LEAP_DAY = 60
 LAST_SERIAL = 2_958_465
 """31 December 9999 in the 1900 system."""
@@ -25,7 +26,7 @@ def serial_from_date(year: int, month: int, day: int, *, date_1904: bool = False
         return None
     serial = ordinal - _BASE
     if date_1904:
-        serial -= _OFFSET_1904
+        serial -= OFFSET_1904
         return float(serial) if serial >= 0 else None
     if serial <= _PHANTOM_LEAP_DAY:
         serial -= 1
@@ -39,7 +40,7 @@ def date_from_serial(serial: float, *, date_1904: bool = False) -> tuple[int, in
     """
     day = int(serial // 1)
     if date_1904:
-        day += _OFFSET_1904
+        day += OFFSET_1904
     if day < 0 or day > LAST_SERIAL:
         return None
     if not date_1904:

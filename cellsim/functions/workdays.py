@@ -1,4 +1,4 @@
-"""Workdays: weekends, holidays, counting and stepping."""
+"""Workdays: weekends, holidays, counting and stepping, on days as the 1900 system numbers them."""
 
 from __future__ import annotations
 
@@ -21,7 +21,7 @@ def weekend_of(value: Scalar) -> Weekend:
     if isinstance(value, ErrorValue):
         raise Fault(value)
     if isinstance(value, str):
-        if len(value) != 7 or set(value) - {"0", "1"} or value == "1111111":
+        if len(value) != 7 or set(value) - {"0", "1"}:
             raise Fault(ErrorValue.VALUE)
         return tuple(character == "1" for character in value)
     number = 1 if value is None else int(value)
@@ -51,8 +51,10 @@ def move_workdays(start: int, days: int, weekend: Weekend, holidays: frozenset[i
     """The day some workdays later or, with a negative number, earlier.
 
     Raises:
-        Fault: The day is out of range (#NUM!).
+        Fault: The day is out of range (#NUM!), or there are no workdays (#VALUE!).
     """
+    if all(weekend):
+        raise Fault(ErrorValue.VALUE)
     step = 1 if days > 0 else -1
     day, left = start, abs(days)
     working = 7 - sum(weekend)

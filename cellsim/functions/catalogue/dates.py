@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import datetime as dt
 import math
 
 from cellsim.functions.coercion import to_number
@@ -17,6 +16,7 @@ from cellsim.functions.day_counts import (
 from cellsim.functions.dispatch import values_of
 from cellsim.functions.number_text import date_time_from_text
 from cellsim.functions.registry import (
+    AnyScalar,
     Context,
     Logical,
     Number,
@@ -26,7 +26,7 @@ from cellsim.functions.registry import (
     Whole,
     spreadsheet_function,
 )
-from cellsim.functions.serial_dates import LAST_SERIAL
+from cellsim.functions.serial_dates import LAST_SERIAL, OFFSET_1904
 from cellsim.functions.workdays import Weekend, count_workdays, move_workdays, weekend_of
 from cellsim.values import ErrorValue, Fault, Scalar
 
@@ -44,13 +44,25 @@ def date_from_parts(context: Context, year: Whole, month: Whole, day: Whole) -> 
     year += carried
     if not 1900 <= year <= 9999:
         return ErrorValue.NUM
-    first = to_serial(year, month + 1, 1, date_1904=context.date_1904)
-    serial = first + day - 1
-    return serial if 0 <= serial <= LAST_SERIAL else ErrorValue.NUM
+    serial = to_serial(year, month + 1, 1, date_1904=context.date_1904) + day - 1
+    last = LAST_SERIAL - (OFFSET_1904 if context.date_1904 else 0)
+    return serial if 0 <= serial <= last else ErrorValue.NUM
 
 
 def _date(context: Context, serial: float) -> tuple[int, int, int]:
     return to_date(serial, date_1904=context.date_1904)
+
+
+def _day(context: Context, serial: float) -> int:
+    """The day as the 1900 system numbers it, by which weekdays are counted.
+
+    Raises:
+        Fault: It is out of range (#NUM!).
+    """
+    day = math.floor(serial) + (OFFSET_1904 if context.date_1904 else 0)
+    if serial < 0 or day > LAST_SERIAL:
+        raise Fault(ErrorValue.NUM)
+    return day
 
 
 @spreadsheet_function("YEAR")
@@ -71,26 +83,33 @@ def day_of(context: Context, date: Number) -> float:
     return float(_date(context, date)[2])
 
 
-@spreadsheet_function("EDATE")
+@spreadsheet_function("EDATE", strict=True)
 def months_later(context: Context, date: Number, months: Whole) -> float:
     """The same day some months later."""
-    moved = add_months(_date(context, date), months)
-    return to_serial(*moved, date_1904=context.date_1904)
+    year, month, day = add_months(_date(context, date), months)
+    return to_serial(year, month, 1, date_1904=context.date_1904) + day - 1
 
 
-@spreadsheet_function("EOMONTH")
+@spreadsheet_function("EOMONTH", strict=True)
 def end_of_month(context: Context, date: Number, months: Whole) -> float:
     """The last day of the month some months later."""
     year, month, _ = add_months(_date(context, date), months)
     return to_serial(year, month, days_in_month(year, month), date_1904=context.date_1904)
 
 
-@spreadsheet_function("YEARFRAC")
-def share_of_year(context: Context, start: Number, end: Number, basis: Whole = 0) -> float:
+@spreadsheet_function("YEARFRAC", strict=True)
+def share_of_year(
+    context: Context, start: AnyScalar, end: AnyScalar, basis: AnyScalar = 0.0
+) -> float:
     """The share of a year between two dates."""
-    if start < 0 or end < 0:
+    # The basis is looked at before the dates, and its error comes before theirs.
+    rule = int(to_number(basis, date_1904=context.date_1904))
+    if not 0 <= rule <= 4:
         raise Fault(ErrorValue.NUM)
-    return year_fraction(start, end, basis, date_1904=context.date_1904)
+    first, last = (to_number(date, date_1904=context.date_1904) for date in (start, end))
+    if first < 0 or last < 0:
+        raise Fault(ErrorValue.NUM)
+    return year_fraction(first, last, rule, date_1904=context.date_1904)
 
 
 @spreadsheet_function("DAYS")
@@ -133,77 +152,89 @@ def date_difference(context: Context, start: Number, end: Number, unit: Text) ->
             return float(d2 - d1)
         year, month = (y2, m2 - 1) if m2 > 1 else (y2 - 1, 12)
         return float(d2 - d1 + days_in_month(year, month))
-    if key == "YD":
-        anniversary = y2 if (m1, d1) <= (m2, d2) else y2 - 1
-        day = min(d1, days_in_month(anniversary, m1))
-        return int(end) - to_serial(anniversary, m1, day, date_1904=context.date_1904)
+    if key == "YD":  # counted in the year of the start, as stored values show
+        year = y1 if (m1, d1) <= (m2, d2) else y1 + 1
+        return to_serial(year, m2, 1, date_1904=context.date_1904) + d2 - 1 - int(start)
     results = {"Y": months // 12, "M": months, "YM": months % 12}
     return float(results[key]) if key in results else ErrorValue.NUM
 
 
 @spreadsheet_function("WEEKDAY")
-def day_of_week(date: Number, kind: Whole = 1) -> float | ErrorValue:
+def day_of_week(context: Context, date: Number, kind: Whole = 1) -> float | ErrorValue:
     """The day of the week: kind 1 from Sunday as 1, 2 from Monday as 1, 3 from Monday as 0, 11-17."""
-    if date < 0 or date > LAST_SERIAL:
-        return ErrorValue.NUM
-    sunday_first = (int(date) - 1) % 7  # Sunday is 0
-    if kind in {1, 17}:
-        return float(sunday_first + 1)
-    monday_first = (sunday_first - 1) % 7
-    if kind == 2:
-        return float(monday_first + 1)
+    monday_first = (_day(context, date) - 2) % 7
     if kind == 3:
         return float(monday_first)
-    if 11 <= kind <= 16:
-        return float((monday_first - (kind - 11)) % 7 + 1)
-    return ErrorValue.NUM
+    first = _FIRST_DAYS.get(kind)
+    return ErrorValue.NUM if first is None else float((monday_first - first) % 7 + 1)
 
 
-@spreadsheet_function("WEEKNUM")
+_FIRST_DAYS = {1: 6, 2: 0, **{kind: kind - 11 for kind in range(11, 18)}}
+"""The day with which the week begins, from Monday as 0, by the kind of week."""
+
+
+@spreadsheet_function("WEEKNUM", strict=True)
 def week_of_year(context: Context, date: Number, kind: Whole = 1) -> float | ErrorValue:
     """The week of the year; the first week holds 1 January, or for kind 21 the first Thursday."""
     if kind == 21:
         return iso_week(context, date)
-    starts = {1: 0, 17: 0, 2: 1, 11: 1, 12: 2, 13: 3, 14: 4, 15: 5, 16: 6}
-    if kind not in starts:
+    if kind not in _FIRST_DAYS:
         return ErrorValue.NUM
     year = _date(context, date)[0]
-    first = to_serial(year, 1, 1, date_1904=context.date_1904)
-    offset = (int(first) - 1 - starts[kind]) % 7
-    return float((int(date) - int(first) + offset) // 7 + 1)
+    new_year = _day(context, to_serial(year, 1, 1, date_1904=context.date_1904))
+    offset = (new_year - 2 - _FIRST_DAYS[kind]) % 7
+    return float((_day(context, date) - new_year + offset) // 7 + 1)
 
 
 @spreadsheet_function("ISOWEEKNUM")
 def iso_week(context: Context, date: Number) -> float:
-    """The week of the year by ISO 8601."""
-    year, month, day = _date(context, date)
-    return float(dt.date(year, month, max(day, 1)).isocalendar()[1])
+    """The week of the year by ISO 8601: that of its Thursday."""
+    day = _day(context, date)
+    thursday = day - (day - 2) % 7 + 3
+    if thursday < 1:
+        return 52.0  # in 1899
+    new_year = to_serial(to_date(thursday)[0], 1, 1)
+    return float((thursday - new_year) // 7 + 1)
 
 
 def _holidays(context: Context, holidays: Operand | None) -> frozenset[int]:
     if holidays is None:
         return frozenset()
-    days = set()
-    for item in values_of(holidays, context).items:
-        if item is not None:
-            days.add(int(to_number(item)))
-    return frozenset(days)
+    items = values_of(holidays, context).items
+    return frozenset(
+        _day(context, to_number(item, date_1904=context.date_1904))
+        for item in items
+        if item is not None
+    )
 
 
 def _weekend(context: Context, value: Operand | None) -> Weekend:
-    if value is None:
-        return weekend_of(1.0)
-    return weekend_of(values_of(value, context).items[0])
+    return weekend_of(1.0 if value is None else values_of(value, context).items[0])
 
 
-@spreadsheet_function("NETWORKDAYS")
+def _count(
+    context: Context, start: float, end: float, weekend: Weekend, holidays: Operand | None
+) -> float:
+    days = _day(context, start), _day(context, end)
+    return float(count_workdays(*days, weekend, _holidays(context, holidays)))
+
+
+def _move(
+    context: Context, start: float, days: int, weekend: Weekend, holidays: Operand | None
+) -> float:
+    moved = move_workdays(_day(context, start), days, weekend, _holidays(context, holidays))
+    serial = moved - (OFFSET_1904 if context.date_1904 else 0)
+    if serial < 0:
+        raise Fault(ErrorValue.NUM)
+    return float(serial)
+
+
+@spreadsheet_function("NETWORKDAYS", strict=True)
 def workdays_between(
     context: Context, start: Number, end: Number, holidays: Operand | None = None
 ) -> float:
     """The workdays from one date to another, both included."""
-    return float(
-        count_workdays(int(start), int(end), weekend_of(1.0), _holidays(context, holidays))
-    )
+    return _count(context, start, end, weekend_of(1.0), holidays)
 
 
 @spreadsheet_function("NETWORKDAYS.INTL")
@@ -215,16 +246,15 @@ def workdays_between_by_weekend(
     holidays: Operand | None = None,
 ) -> float:
     """The workdays between two dates with a weekend of one's own."""
-    chosen = _weekend(context, weekend)
-    return float(count_workdays(int(start), int(end), chosen, _holidays(context, holidays)))
+    return _count(context, start, end, _weekend(context, weekend), holidays)
 
 
-@spreadsheet_function("WORKDAY")
+@spreadsheet_function("WORKDAY", strict=True)
 def workdays_later(
     context: Context, start: Number, days: Whole, holidays: Operand | None = None
 ) -> float:
     """The date some workdays later."""
-    return float(move_workdays(int(start), days, weekend_of(1.0), _holidays(context, holidays)))
+    return _move(context, start, days, weekend_of(1.0), holidays)
 
 
 @spreadsheet_function("WORKDAY.INTL")
@@ -236,8 +266,7 @@ def workdays_later_by_weekend(
     holidays: Operand | None = None,
 ) -> float:
     """The date some workdays later with a weekend of one's own."""
-    chosen = _weekend(context, weekend)
-    return float(move_workdays(int(start), days, chosen, _holidays(context, holidays)))
+    return _move(context, start, days, _weekend(context, weekend), holidays)
 
 
 def _serial_now(context: Context) -> float:
