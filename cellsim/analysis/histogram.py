@@ -37,6 +37,11 @@ class Histogram:
     counts: IntArray
     separate: bool
 
+    @property
+    def highest_share(self) -> float:
+        """Share of the sample in its fullest bin."""
+        return float(self.counts.max() / self.counts.sum())
+
     def bin_of(self, value: float) -> int | None:
         """The bin that holds a value, counted from 0; None if none does."""
         if self.separate:

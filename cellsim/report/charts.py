@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -26,6 +26,7 @@ _NAME_FONT = {"name": FONT["font_name"], "size": 9, "bold": False, "color": INK}
 _TITLE_FONT = {"name": FONT["font_name"], "size": 11, "bold": True, "color": INK}
 
 _STEPS = 7
+_NEARLY_ALL = 0.75
 
 Span = tuple[str, int, int, int, int]
 """Sheet name, first row, first column, last row, last column."""
@@ -89,8 +90,13 @@ def bin_chart(
     columns: Sequence[tuple[str, Span]],
     cumulative: Span | None,
     x_axis: dict[str, Any],
+    *,
+    highest: float,
+    upright: bool = False,
 ) -> Chart:
-    """Columns of shares by bin, the second series hatched, with a cumulative line.
+    """Columns of shares by bin, with a cumulative line.
+
+    A second series is hatched and stands before the first, which it hides where it has a column.
 
     Args:
         workbook: Where it goes.
@@ -99,6 +105,8 @@ def bin_chart(
         columns: Name and cells of one or two series of shares.
         cumulative: Cells of the cumulative shares, or None.
         x_axis: Name and label spacing of the axis across.
+        highest: The highest share.
+        upright: Whether the bins' labels stand upright; else they are turned to fit.
 
     Returns:
         The chart.
@@ -123,6 +131,8 @@ def bin_chart(
             }
         )
     y_axis = {"name": "Share of draws", "num_format": "0%", "min": 0}
+    if highest > _NEARLY_ALL:
+        y_axis |= {"max": 1, "major_unit": 0.25}  # or the axis would go beyond 100 %
     if cumulative is not None:
         line = workbook.add_chart({"type": "line"})
         line.add_series(
@@ -149,10 +159,23 @@ def bin_chart(
     _dress(
         chart,
         title,
-        _axis({**x_axis, "label_position": "low"}, rotation=-45),
+        _axis({**x_axis, "label_position": "low"}, rotation=0 if upright else -45),
         _axis(y_axis, grid=True),
     )
     return chart
+
+
+def fit_side_by_side(labels: Iterable[str], letters: int) -> bool:
+    """Whether labels go side by side under an axis.
+
+    Args:
+        labels: The labels.
+        letters: How many letters the axis is wide.
+
+    Returns:
+        Whether they do.
+    """
+    return sum(len(label) + 2 for label in labels) <= letters
 
 
 def round_bounds(low: float, high: float) -> dict[str, Any]:

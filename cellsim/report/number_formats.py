@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import math
 import re
+from functools import lru_cache
 
 GENERAL = "General"
 LONGEST_CODE = 255
 PERCENT = "0.0%"
+SCIENTIFIC = "0.0000E+00"
 COUNT = "#,##0"
+_DAYS_OF_CALENDAR = 2_958_466  # the day after 31 December 9999
 
 _TOKEN = re.compile(
     r'(?P<quoted>"[^"]*")'
@@ -106,6 +109,7 @@ def safe_code(code: str) -> str:
     return code
 
 
+@lru_cache(maxsize=256)
 def is_date_code(code: str) -> bool:
     """Whether the code shows numbers as dates or times."""
     tokens = _tokens(code) or []
@@ -118,6 +122,22 @@ def is_date_code(code: str) -> bool:
         )
         for kind, spelling in tokens
     )
+
+
+def showable_code(code: str, value: float) -> str:
+    """The code, or General where the code shows dates and the value is none.
+
+    Spreadsheet programs fill the cell with ##### for a date before their calendar's first or after its
+    last day.
+
+    Args:
+        code: A stored code.
+        value: The value to show.
+
+    Returns:
+        The code or General.
+    """
+    return GENERAL if is_date_code(code) and not 0 <= value < _DAYS_OF_CALENDAR else code
 
 
 def is_number_code(code: str) -> bool:
@@ -139,7 +159,7 @@ def suited_code(largest: float, spread: float) -> str:
     if size == 0:
         return "0"
     if size >= 1e10 or size < 1e-4:
-        return "0.0000E+00"
+        return SCIENTIFIC
     fine = spread if spread > 0 else size / 100
     decimals = min(max(2 - math.floor(math.log10(fine)), 0), 8)
     return "#,##0" + ("." + "0" * decimals if decimals else "")

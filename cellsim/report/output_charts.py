@@ -8,9 +8,9 @@ from typing import Any
 from xlsxwriter import Workbook
 from xlsxwriter.chart import Chart
 
-from cellsim.report.charts import Line, Span, bin_chart, curve_chart, round_bounds
+from cellsim.report.charts import Line, Span, bin_chart, curve_chart, fit_side_by_side, round_bounds
 from cellsim.report.figures import OutputFigures
-from cellsim.report.palette import BASE_LINE, CURVE, THRESHOLD_LINE
+from cellsim.report.palette import BASE_LINE, CURVE, THRESHOLD_LINES
 from cellsim.report.places import DISTRIBUTION, QUANTILES, Block, base_bin
 from cellsim.report.plain_text import one_line
 from cellsim.report.wording import base_text
@@ -22,6 +22,7 @@ MOST_MARKS = 4
 LABEL, SHARE, CUMULATIVE, BASE_SHARE = 0, 4, 5, 6
 """Columns of a distribution block's table."""
 _MOST_LABELS = 10
+_LETTERS_ACROSS = 40
 
 
 def mark_values(output: OutputFigures) -> list[tuple[str, float]]:
@@ -46,15 +47,16 @@ def cumulative_chart(workbook: Workbook, output: OutputFigures, block: Block) ->
             CURVE,
         )
     ]
+    styles = iter(THRESHOLD_LINES)
     for k, (name, _) in enumerate(mark_values(output)):
         row = block.top + MARKS_ROW + k
         x = (QUANTILES, row, MARKS_COLUMN + 1, row, MARKS_COLUMN + 2)
         y = (QUANTILES, row, MARKS_COLUMN + 3, row, MARKS_COLUMN + 4)
-        lines.append(Line(name, x, y, BASE_LINE if name == "Base case" else THRESHOLD_LINE))
+        lines.append(Line(name, x, y, BASE_LINE if name == "Base case" else next(styles)))
     title = f"Cumulative distribution: {one_line(output.title, 50)}"
     x_axis = {
         "name": f"Value{output.scale.title}",
-        "num_format": output.scale.code,
+        "num_format": output.scale.axis_code,
         "label_position": "low",
     }
     x_axis |= _bounds(output)
@@ -96,12 +98,29 @@ def histogram_chart(workbook: Workbook, output: OutputFigures, block: Block) -> 
     bins = block.last - block.first + 1
     separate = output.summary is not None and output.summary.histogram.separate
     edge = "Value" if separate else "Lower edge of bin"
+    outside = output.base is not None and base_bin(output) is None
+    note = f" (base case {output.scale.text(output.base)} not among them)" if outside else ""
     title = f"Distribution: {one_line(output.title, 50)}"
     x_axis = {
-        "name": f"{edge}{output.scale.title}",
+        "name": f"{edge}{output.scale.title}{note}",
         "interval_unit": max(1, math.ceil(bins / _MOST_LABELS)),
     }
-    return bin_chart(workbook, title, labels, columns, _column(block, CUMULATIVE), x_axis)
+    return bin_chart(
+        workbook,
+        title,
+        labels,
+        columns,
+        _column(block, CUMULATIVE),
+        x_axis,
+        highest=output.summary.histogram.highest_share if output.summary else 1.0,
+        upright=separate and _are_short(output),
+    )
+
+
+def _are_short(output: OutputFigures) -> bool:
+    """Whether the labels of an output's separate values go side by side under a chart."""
+    values = output.summary.histogram.lower.tolist() if output.summary else []
+    return fit_side_by_side(map(output.scale.bare_text, values), _LETTERS_ACROSS)
 
 
 def histogram_alt_text(output: OutputFigures) -> str:

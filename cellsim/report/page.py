@@ -9,7 +9,7 @@ from collections.abc import Sequence
 from xlsxwriter.chart import Chart
 from xlsxwriter.worksheet import Worksheet
 
-from cellsim.report.number_formats import COUNT, PERCENT, safe_code
+from cellsim.report.number_formats import COUNT, PERCENT, safe_code, showable_code
 from cellsim.report.plain_text import storable
 from cellsim.report.styles import Styles
 from cellsim.values import ErrorValue, Scalar
@@ -19,7 +19,16 @@ _LINE_HEIGHT = 13.5
 _CHARACTER = 0.88  # width of a usual letter in those of a digit, on the safe side
 _BOLD_CHARACTER = 1.02
 _MEASURED = 5000
+_CHART_GAP = 4  # pixels above a chart
 _A4 = 9
+_POINTS, _PADDING = (
+    5.25,
+    3.75,
+)  # a character of a column's width, and what each column has beside them
+_PRINTABLE = {
+    False: (523.0, 740.0),
+    True: (770.0, 495.0),
+}  # points of A4 within the margins, by landscape
 
 
 class Page:
@@ -48,6 +57,7 @@ class Page:
         for column, width in enumerate(widths):
             worksheet.set_column(column, column, width, styles.get("plain"))
         self._heights: dict[int, float] = {}
+        self._printable = _PRINTABLE[landscape]
         worksheet.set_default_row(_LINE_HEIGHT)
         worksheet.hide_gridlines(2)
         worksheet.set_paper(_A4)
@@ -73,9 +83,8 @@ class Page:
         if value is None or not math.isfinite(value):
             self.text(row, column, NO_NUMBER, kind)
         else:
-            self.worksheet.write_number(
-                row, column, value, self._styles.get(kind, safe_code(code) if code else "")
-            )
+            code = showable_code(safe_code(code), value) if code else ""
+            self.worksheet.write_number(row, column, value, self._styles.get(kind, code))
 
     def count(self, row: int, column: int, value: int) -> None:
         """Write a whole number."""
@@ -98,9 +107,8 @@ class Page:
 
     def formula(self, row: int, column: int, formula: str, shown: float, code: str) -> None:
         """Write a formula of this package's own making, with its value at the time of writing."""
-        self.worksheet.write_formula(
-            row, column, formula, self._styles.get("answer", safe_code(code)), shown
-        )
+        code = showable_code(safe_code(code), shown)
+        self.worksheet.write_formula(row, column, formula, self._styles.get("answer", code), shown)
 
     def header(
         self, row: int, titles: Sequence[str], first: int = 0, *, numbers_from: int = 1
@@ -165,8 +173,40 @@ class Page:
             row,
             column,
             chart,
-            {"description": storable(alt_text, 1000), "object_position": 1, "x_offset": x_offset},
+            {
+                "description": storable(alt_text, 1000),
+                "object_position": 1,
+                "x_offset": x_offset,
+                "y_offset": _CHART_GAP,
+            },
         )
+
+    def keep_whole(self, blocks: Sequence[tuple[int, int]], *, repeated: int = 0) -> None:
+        """Begin a new printed page before every block of rows that would be cut in two.
+
+        Args:
+            blocks: First row of each block and the row after it, from the top.
+            repeated: How many rows are repeated on every page.
+        """
+        breaks = []
+        end = self._rows_on_a_page(0)
+        for first, after in blocks:
+            if after > end and first > 0:
+                breaks.append(first)
+                end = first + self._rows_on_a_page(first) - repeated
+            while end < after:
+                end += max(self._rows_on_a_page(end) - repeated, 1)
+        self.worksheet.set_h_pagebreaks(breaks)
+
+    def _rows_on_a_page(self, first: int) -> int:
+        """How many rows from a row on go on one printed page, the sheet fitted to its width."""
+        points = sum(_POINTS * width + _PADDING for width in self.widths)
+        across, down = self._printable
+        left = down * max(points / across, 1.0)
+        row = first
+        while (left := left - self._heights.get(row, _LINE_HEIGHT)) >= 0:
+            row += 1
+        return row - first
 
     def repeat(self, first: int, last: int) -> None:
         """Freeze the rows up to the last and print rows first to last on each page."""

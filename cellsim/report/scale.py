@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from cellsim.functions.number_format import format_value
 from cellsim.report.number_formats import (
     GENERAL,
+    SCIENTIFIC,
     finer_code,
     is_date_code,
     is_number_code,
@@ -42,6 +43,10 @@ class Scale:
         """A value as it is, with its unit, for a sentence."""
         return self._worded(value, self.code, self.unit)
 
+    def bare_text(self, value: float) -> str:
+        """A value without its unit, for a label."""
+        return self._worded(value, self.code, "")
+
     def estimate_text(self, value: float | None, code: str = "") -> str:
         """An estimate, rounded to what the spread makes sense of, with its unit, for a sentence."""
         if value is not None and self.digits is not None and math.isfinite(value):
@@ -57,6 +62,11 @@ class Scale:
     def is_date(self) -> bool:
         """Whether the values are dates or times."""
         return is_date_code(self.code)
+
+    @property
+    def axis_code(self) -> str:
+        """The code of an axis, whose labels are round: a scientific one with few digits."""
+        return "0.0#E+00" if self.code == SCIENTIFIC else self.code
 
     @property
     def title(self) -> str:

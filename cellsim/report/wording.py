@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from cellsim.analysis.histogram import Histogram
 from cellsim.analysis.shares import Exceedance, Share
+from cellsim.functions.number_format import format_value
 from cellsim.report.figures import Figures, InputFigures, OutputFigures, central_range
+from cellsim.report.number_formats import PERCENT
 from cellsim.report.plain_text import one_line
 from cellsim.results import ModelCheck, RunResults
 from cellsim.values import ErrorValue, Scalar
@@ -18,6 +21,7 @@ _SAMPLING = {
 }
 _FEW_DRAWS = 1000
 _WIDE = 0.1
+_FEW_VALUES = 4
 _MOST_NAMED = 3
 
 
@@ -36,7 +40,12 @@ def share_text(share: Share) -> str:
         return "less than 0.1 %"
     if share.share > 0.9995:
         return "more than 99.9 %"
-    return f"{share.share * 100:.1f} %"
+    return _percent(share.share)
+
+
+def _percent(share: float) -> str:
+    """A share rounded as the cells beside it show it: half away from zero, as spreadsheets do."""
+    return f"{format_value(share, PERCENT)}".replace("%", " %")
 
 
 def sampling_words(sampling: str) -> str:
@@ -49,10 +58,17 @@ def precision_note(sampling: str) -> str:
     note = "Standard errors and 95 % intervals show the precision of the draws, not how well the model fits the world."
     if sampling == "random":
         return note
+    note += " They are worked out as for independent draws. "
+    if sampling == "latin-hypercube":
+        # Owen 1997: the variance is at most n/(n - 1) times that of independent draws
+        return note + (
+            "With Latin hypercube sampling of independent inputs that is an upper bound for the standard error of the mean "
+            "and of a share, but for a factor n/(n - 1) in its square. Quantiles, and draws of dependent inputs, are usually "
+            "more precise than shown as well."
+        )
     return (
-        f"{note} They are worked out as for independent draws. With {sampling_words(sampling)} that is an upper bound "
-        "for the standard error of the mean, but for a factor n/(n - 1) in its square; quantiles and shares are "
-        "usually more precise than shown as well."
+        note
+        + f"With {sampling_words(sampling)} they are a rough guide only; runs with other seeds show how far figures move."
     )
 
 
@@ -85,13 +101,18 @@ def output_sentences(output: OutputFigures) -> str:
         return f"{output.title}: no draw gave a number."
     low, middle, high = central_range(summary)
     scale = output.scale
-    if low == high == summary.moments.minimum == summary.moments.maximum:
+    bins = summary.histogram
+    if len(bins.counts) == 1 and bins.separate:
         words = [f"{output.title}: {scale.text(middle)} in every draw."]
+    elif bins.separate and len(bins.counts) <= _FEW_VALUES:
+        words = [
+            f"{output.title} takes {len(bins.counts)} values: {_values_in_words(output, bins)}."
+        ]
     else:
         mean = scale.estimate_text(summary.moments.mean, scale.mean_code)
         middle_words = f"the median is {scale.estimate_text(middle)} and the mean {mean}"
-        ends = f"{scale.estimate_text(low)} and {scale.estimate_text(high)}"
-        words = [f"{output.title}: {middle_words}; 80 % of the draws lie between {ends}."]
+        ends = f"{scale.estimate_text(low)} to {scale.estimate_text(high)}"
+        words = [f"{output.title}: {middle_words}; the central 80 % of the draws run from {ends}."]
     words.append(_base_sentence(output))
     words += [
         _threshold_sentence(output, threshold.text, about)
@@ -99,6 +120,17 @@ def output_sentences(output: OutputFigures) -> str:
         if about is not None
     ]
     return " ".join(words)
+
+
+def _values_in_words(output: OutputFigures, bins: Histogram) -> str:
+    """Few separate values with their shares: `0 in 46.3 % of the draws and 1 in 53.7 %`."""
+    total = int(bins.counts.sum())
+    parts = [
+        f"{output.scale.text(value)} in {_percent(count / total)}"
+        for value, count in zip(bins.lower.tolist(), bins.counts.tolist(), strict=True)
+    ]
+    parts[0] += " of the draws"
+    return f"{', '.join(parts[:-1])} and {parts[-1]}"
 
 
 def _base_sentence(output: OutputFigures) -> str:
@@ -138,10 +170,10 @@ def _failure_cautions(results: RunResults, figures: Figures) -> list[str]:
         key=lambda output: output.summary.failed if output.summary else results.record.draws,
     )
     share = failed / max(results.record.draws, 1)
-    amount = "less than 0.1 %" if share < 0.0005 else f"{share * 100:.1f} %"
+    amount = "less than 0.1 %" if share < 0.0005 else _percent(share)
     text = (
-        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: an output was an error or not finite "
-        "there. The figures are those of the other draws and say nothing about these. Most failures: "
+        f"{counted(failed, 'draw', 'draws')} ({amount}) failed: at least one output was an error or not finite "
+        "there. An output's figures are those of its other draws and say nothing about these. Most failures: "
         f"{worst.title}. See Failed draws."
     )
     return [text]

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import contextlib
+import errno
 import os
 import tempfile
 from collections.abc import Callable
@@ -73,14 +74,16 @@ def write_report(
     Raises:
         RunError: The file exists already, or it cannot be written.
     """
-    if path.exists() and not overwrite:
+    try:
+        if not overwrite:
+            _refuse_existing(path)
+        _write_whole(results, path, overwrite=overwrite, draws_sheet=draws_sheet)
+    except FileExistsError as error:
         raise RunError(
             Problem(
                 str(path), "exists already", "choose another name, or ask for it to be replaced"
             )
-        )
-    try:
-        _write_whole(results, path, draws_sheet=draws_sheet)
+        ) from error
     except (OSError, XlsxWriterException) as error:
         reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
         raise RunError(
@@ -88,7 +91,7 @@ def write_report(
         ) from error
 
 
-def _write_whole(results: RunResults, path: Path, *, draws_sheet: bool) -> None:
+def _write_whole(results: RunResults, path: Path, *, overwrite: bool, draws_sheet: bool) -> None:
     handle, name = tempfile.mkstemp(prefix=f".{path.stem[:40]}.", suffix=".part", dir=path.parent)
     temporary = Path(name)
     try:
@@ -100,12 +103,33 @@ def _write_whole(results: RunResults, path: Path, *, draws_sheet: bool) -> None:
             stream.flush()
             os.fsync(stream.fileno())
         temporary.chmod(0o666 & ~_umask())
-        temporary.replace(path)
+        _put_in_place(temporary, path, overwrite=overwrite)
     except BaseException:
         with contextlib.suppress(FileNotFoundError):
             temporary.unlink()
         raise
     _sync_folder(path.parent)
+
+
+def _put_in_place(temporary: Path, path: Path, *, overwrite: bool) -> None:
+    """Give the finished file its name; without `overwrite` never that of a file made meanwhile."""
+    if overwrite:
+        temporary.replace(path)
+        return
+    try:
+        path.hardlink_to(temporary)
+    except FileExistsError:
+        raise
+    except (OSError, NotImplementedError):  # some file systems have no second names
+        _refuse_existing(path)
+        temporary.replace(path)
+    else:
+        temporary.unlink()
+
+
+def _refuse_existing(path: Path) -> None:
+    if path.exists():
+        raise FileExistsError(errno.EEXIST, os.strerror(errno.EEXIST))
 
 
 def _umask() -> int:

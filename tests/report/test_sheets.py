@@ -94,7 +94,7 @@ def test_headline_says_what_the_draws_say(ferry_run: RunResults, tmp_path: Path)
     assert f"the median is {np.median(value):.2f} EUR" in words
     assert f"{(value > 4.2).mean() * 100:.1f} % of the draws lie above 4.20 EUR." in words
     low, high = np.quantile(value, [0.1, 0.9])
-    assert f"80 % of the draws lie between {low:.2f} EUR and {high:.2f} EUR" in words
+    assert f"the central 80 % of the draws run from {low:.2f} EUR to {high:.2f} EUR" in words
     assert "5,000 draws (Latin hypercube sampling, seed 4711) of 3 uncertain inputs" in words
     assert "The base case is the error #N/A." in words
 
@@ -291,8 +291,10 @@ def test_any_draws_can_be_written(
         assert "no draw gave a number" in words
     elif len(set(kept)) == 1:
         assert "in every draw" in words
+    elif len(set(kept)) == 2:
+        assert "takes 2 values" in words
     else:
-        assert "80 % of the draws lie between" in words
+        assert "the central 80 % of the draws run from" in words
 
 
 @pytest.mark.parametrize(
@@ -349,3 +351,114 @@ def test_latin_hypercube_errors_are_called_an_upper_bound(
     assert "upper bound for the standard error of the mean" in words
     plain = replace(ferry_run, record=replace(ferry_run.record, sampling="random"))
     assert "upper bound" not in " ".join(texts(opened(plain, tmp_path), "Quantiles"))
+
+
+def test_other_ways_of_sampling_get_no_bound(ferry_run: RunResults, tmp_path: Path) -> None:
+    other = replace(ferry_run, record=replace(ferry_run.record, sampling="sobol"))
+    words = " ".join(texts(opened(other, tmp_path), "Quantiles"))
+    assert "upper bound" not in words
+    assert "a rough guide only" in words
+
+
+def test_few_values_are_named_with_their_shares(
+    make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    record = output_record("berths", 1.0, number_format="0", unit="")
+    draws = [0.0] * 185 + [1.0] * 215
+    words = " ".join(texts(opened(make_run([(record, draws)]), tmp_path), "Headline"))
+    assert "Berths takes 2 values: 0 in 46.3 % of the draws and 1 in 53.8 %." in words
+
+
+def test_sentences_round_shares_as_cells_show_them(
+    make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    # 46.25 % and 53.75 % are halves exact in binary: cells round them away from zero
+    draws = np.concatenate([np.linspace(0, 1, 185), np.linspace(3, 4, 215)])
+    results = make_run([(output_record("value", 2.0, [2.0]), draws)])
+    words = " ".join(texts(opened(results, tmp_path), "Headline"))
+    assert "46.3 % of the draws lie below it and 53.8 % above" in words
+    assert "53.8 % of the draws lie above 2.00 EUR." in words
+
+
+def test_shares_of_all_bins_add_up_with_the_base_bin_among_them(
+    ferry_run: RunResults, tmp_path: Path
+) -> None:
+    sheet = opened(ferry_run, tmp_path)["Distribution"]
+    rows = []
+    for row in sheet.iter_rows(min_row=10, max_col=7, values_only=True):
+        if row[0] is None:
+            break
+        rows.append(row)
+    assert sum(float(str(row[4])) for row in rows) == pytest.approx(1)
+    marked = [row for row in rows if row[6] is not None]
+    assert len(marked) == 1
+    assert marked[0][4] == marked[0][6]
+    assert float(str(marked[0][1])) <= 4.1 < float(str(marked[0][2]))
+
+
+def test_a_base_case_outside_the_bins_is_told_under_the_chart(
+    make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    draws = np.random.default_rng(1).normal(4, 1, 2_000)
+    opened(make_run([(output_record("value", 99.0), draws)]), tmp_path)
+    with zipfile.ZipFile(tmp_path / "run.xlsx") as package:
+        charts = " ".join(package.read(n).decode() for n in package.namelist() if "charts/c" in n)
+    assert "(base case 99.00 EUR not among them)" in charts
+
+
+def test_lines_of_a_chart_differ_without_colour(
+    make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    draws = np.random.default_rng(1).normal(4, 1, 2_000)
+    opened(make_run([(output_record("value", 4.0, [3.0, 4.5, 5.0]), draws)]), tmp_path)
+    with zipfile.ZipFile(tmp_path / "run.xlsx") as package:
+        curve = package.read("xl/charts/chart1.xml").decode()
+    styles = [
+        re.findall(r'prstDash val="(\w+)"', series)
+        for series in re.findall(r"<c:ser>.*?</c:ser>", curve, re.DOTALL)
+    ]
+    assert len(styles) == 5
+    assert len({tuple(dashes) for dashes in styles}) == 5
+
+
+@pytest.mark.parametrize("rows", [1, 5, 30])
+def test_charts_of_inputs_are_not_cut_between_printed_pages(
+    rows: int, make_run: Made, output_record: Made, input_record: Made, tmp_path: Path
+) -> None:
+    rng = np.random.default_rng(1)
+    inputs = [(input_record(f"driver_{k}"), rng.normal(size=300)) for k in range(3 * rows)]
+    results = make_run([(output_record("value"), rng.normal(size=300))], inputs)
+    sheet = opened(results, tmp_path)["Inputs"]
+    breaks = [found.id for found in sheet.row_breaks.brk]
+    tops = sorted({chart.anchor._from.row for chart in sheet._charts})
+    bottoms = {chart.anchor.to.row for chart in sheet._charts}
+    assert len(tops) == rows
+    assert not [
+        b for b in breaks for top in tops if top < b <= max(x for x in bottoms if x < top + 20)
+    ]
+    pages = [
+        len([t for t in tops if a <= t < b])
+        for a, b in zip([0, *breaks], [*breaks, 9999], strict=True)
+    ]
+    assert max(pages) <= 2
+
+
+def test_dates_outside_the_calendar_are_shown_as_numbers(
+    make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    draws = np.random.default_rng(1).normal(0, 20, 300)
+    record = output_record("opening_day", 5.0, number_format="yyyy-mm-dd", unit="")
+    sheet = opened(make_run([(record, draws)]), tmp_path)["Quantiles"]
+    cells = [row[1] for row in sheet.iter_rows(min_row=9, max_row=113, max_col=2)]
+    numbers = [cell for cell in cells if isinstance(cell.value, float)]  # dates are read as dates
+    assert 40 < len(numbers) < 65
+    assert all(cell.value < 0 and cell.number_format == "General" for cell in numbers)
+    dates = [cell for cell in cells if not isinstance(cell.value, float)]
+    assert {cell.number_format for cell in dates} == {"yyyy-mm-dd"}
+
+
+def test_dependent_inputs_are_named_as_people_call_them(
+    ferry_run: RunResults, tmp_path: Path
+) -> None:
+    row = [cell.value for cell in opened(ferry_run, tmp_path)["Dependence"][6]]
+    assert row[:4] == ["Passenger growth", "Fuel price", 0.4, 0.398]

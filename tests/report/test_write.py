@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import errno
 import os
 from pathlib import Path
 
@@ -30,6 +31,34 @@ def test_existing_file_is_kept_unless_it_is_to_be_overwritten(
     assert path.read_bytes() == b"mine"
     write_report(ferry_run, path, overwrite=True)
     assert path.read_bytes()[:2] == b"PK"
+
+
+def test_file_made_while_writing_is_not_overwritten(
+    ferry_run: RunResults, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    path = tmp_path / "run.xlsx"
+    close = xlsxwriter.Workbook.close
+
+    def meanwhile(workbook: xlsxwriter.Workbook) -> None:
+        close(workbook)
+        path.write_bytes(b"theirs")
+
+    monkeypatch.setattr(xlsxwriter.Workbook, "close", meanwhile)
+    with pytest.raises(RunError, match="exists already"):
+        write_report(ferry_run, path)
+    assert path.read_bytes() == b"theirs"
+    assert [item.name for item in tmp_path.iterdir()] == ["run.xlsx"]
+
+
+def test_file_systems_without_second_names_are_written_to_as_well(
+    ferry_run: RunResults, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def refuse(_path: Path, _target: Path) -> None:
+        raise PermissionError(errno.EPERM, os.strerror(errno.EPERM))
+
+    monkeypatch.setattr(Path, "hardlink_to", refuse)
+    write_report(ferry_run, tmp_path / "run.xlsx")
+    assert [item.name for item in tmp_path.iterdir()] == ["run.xlsx"]
 
 
 def test_missing_folder_is_a_run_error(ferry_run: RunResults, tmp_path: Path) -> None:

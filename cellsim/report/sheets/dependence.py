@@ -29,10 +29,13 @@ def write(book: Book) -> None:
         numbers_from=2,
     )
     page.repeat(row, row)
+    titles = {item.record.name: item.title for item in book.figures.inputs}
     for pair in book.results.dependence:
         row += 1
-        page.text(row, 0, pair.first, "wrapped")
-        page.text(row, 1, pair.second, "wrapped")
+        names = [titles.get(name, name) for name in (pair.first, pair.second)]
+        for column, name in enumerate(names):
+            page.text(row, column, name, "wrapped")
+        page.fit_row(row, [(name, page.widths[0]) for name in names])
         page.number(row, 2, pair.asked, _CODE)
         page.number(row, 3, pair.achieved, _CODE)
         page.number(row, 4, pair.achieved - pair.asked, "+0.000;-0.000;0.000")

@@ -12,7 +12,7 @@ from cellsim.report.book import Book
 from cellsim.report.figures import OutputFigures
 from cellsim.report.number_formats import finer_code
 from cellsim.report.output_charts import histogram_alt_text, histogram_chart
-from cellsim.report.page import NO_NUMBER, Page
+from cellsim.report.page import Page
 from cellsim.report.places import DISTRIBUTION, Block, base_bin, distribution_blocks
 from cellsim.report.scale import Scale
 from cellsim.report.wording import precision_note
@@ -21,7 +21,6 @@ NAME = DISTRIBUTION
 _WIDTHS = (25, 13, 13, 10, 10, 11, 11, 3, 30, 17, 17, 17)
 _LAST = len(_WIDTHS) - 1
 _SIDE = 8
-_DASH_FOR_ZERO = f'0.0%;-0.0%;"{NO_NUMBER}"'
 _CHART_ROW = 12
 
 
@@ -83,7 +82,7 @@ def _write_bins(page: Page, output: OutputFigures, bins: Histogram, block: Block
         page.number(row, 2, upper, code)
         page.count(row, 3, int(bins.counts[k]))
         share = int(bins.counts[k]) / total
-        page.share(row, 4, share if k != marked else 0.0, _DASH_FOR_ZERO if k == marked else "0.0%")
+        page.share(row, 4, share)
         page.share(row, 5, running[k] / total)
         if k == marked:
             page.share(row, 6, share)
@@ -100,11 +99,11 @@ def bin_code(bins: Histogram, scale: Scale) -> str:
 
 
 def bin_label(lower: float, upper: float, scale: Scale) -> str:
-    """A bin's label under the chart: its lower edge or its value; open bins in words."""
+    """A bin's label under the chart: its lower edge or its value; open bins by their only edge."""
     if math.isinf(lower):
-        return f"below {scale.text(upper)}"
+        return f"< {scale.text(upper)}"
     if math.isinf(upper):
-        return f"{scale.text(lower)} and above"
+        return f"≥ {scale.text(lower)}"
     return scale.text(lower)
 
 

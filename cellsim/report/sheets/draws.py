@@ -53,6 +53,9 @@ def _write_part(book: Book, name: str, start: int, stop: int) -> None:
         page.worksheet.set_column(k, k, 16, book.styles.get("plain", item.scale.code))
     page.text(0, 0, "Draws", "title")
     lead = "One row a draw: outputs first, then inputs. A failed output shows its error as text."
+    left = len(book.figures.outputs) + len(book.figures.inputs) - len(figures)
+    if left:
+        lead += f" The last {left:,} inputs have no column: a sheet has no more."
     page.text(1, 0, lead, "plain")
     page.link(2, 0, HEADLINE, "Back to Headline")
     page.worksheet.set_row(_HEAD, _HEADER_HEIGHT)

@@ -39,7 +39,7 @@ def write(book: Book) -> None:
 def _write_counts(book: Book, page: Page, row: int) -> int:
     titles = {output.record.name: output.title for output in book.figures.outputs}
     draws = book.results.record.draws
-    page.heading(row, "How many", 4)
+    page.heading(row, "How many", 3)
     page.header(
         row + 1,
         ("Output", "Error", "Failed draws", "Share of draws (95 % interval)"),
@@ -95,3 +95,6 @@ def _write_examples(book: Book, page: Page, row: int) -> None:
         for k, item in enumerate(inputs):
             page.number(row, 4 + k, example.inputs.get(item.record.name), item.scale.code)
         row += 1
+    left = len(book.figures.inputs) - len(inputs)
+    if left:
+        page.paragraph(row, f"{left:,} more inputs are not listed.", 3)

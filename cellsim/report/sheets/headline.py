@@ -21,7 +21,7 @@ from cellsim.report.plain_text import one_line
 from cellsim.report.wording import CAUTION, asked, cautions, output_sentences
 
 NAME = HEADLINE
-_WIDTHS = (27, 8, 14, 14, 14, 14, 14, 12)
+_WIDTHS = (25, 10, 14, 14, 14, 14, 14, 12)
 _LAST = len(_WIDTHS) - 1
 _LINKED = (0, 2, 3, 4, 5, 6, 7)
 _MOST_ON_ONE_PAGE = 8
@@ -63,9 +63,9 @@ def _write_outputs(book: Book, page: Page, row: int) -> int:
         "Base case",
         "Mean",
         "Median",
-        "80 % of draws from",
-        "80 % of draws to",
-        "Draws below base case",
+        "Central 80 %\nfrom",
+        "Central 80 %\nto",
+        "Draws below\nbase case",
     )
     page.header(row + 1, titles, numbers_from=2)
     row += 2
@@ -110,7 +110,7 @@ def _write_thresholds(book: Book, page: Page, row: int) -> int:
         "Draws above",
         "95 % from",
         "95 % to",
-        "Draws at or below",
+        "Draws at\nor below",
     )
     page.header(row + 1, titles, numbers_from=2)
     row += 2

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from itertools import pairwise
 
 from xlsxwriter.chart import Chart
 
 from cellsim.analysis.histogram import Histogram
 from cellsim.report.book import Book
-from cellsim.report.charts import Line, Span, bin_chart, curve_chart, round_bounds
+from cellsim.report.charts import Line, Span, bin_chart, curve_chart, fit_side_by_side, round_bounds
 from cellsim.report.figures import InputFigures
 from cellsim.report.number_formats import finer_code
 from cellsim.report.page import Page
@@ -34,12 +35,14 @@ _ASKED = (
     "",
 )
 _DRAWN = (
-    "Input", "Unit", "Mean asked", "Mean drawn", "Standard deviation asked", "Standard deviation drawn",
-    "Smallest drawn", "5 % drawn", "50 % drawn", "95 % drawn", "Largest drawn",
+    "Input", "Unit", "Mean\nasked", "Mean\ndrawn", "Standard\ndeviation\nasked", "Standard\ndeviation\ndrawn",
+    "Smallest\ndrawn", "5 %\ndrawn", "50 %\ndrawn", "95 %\ndrawn", "Largest\ndrawn",
 )  # fmt: skip
 _ACROSS = ((0, 0), (2, 63), (6, 80))
 _CHART_ROWS = 16
+_TITLE_ROWS = 2  # repeated on every page
 _CHART_SIZE = {"width": 398, "height": 270}
+_LETTERS_ACROSS = 32
 _P5, _P50, _P95 = 7, 52, 97
 
 
@@ -59,13 +62,23 @@ def write(book: Book) -> None:
     page.worksheet.freeze_panes(row, 1)
     page.worksheet.repeat_rows(0)
     row = _write_asked(book, page, row)
-    row = _write_drawn(book, page, row)
-    _write_charts(book, page, row)
+    charts = _write_drawn(book, page, row)
+    _write_charts(book, page, charts)
+    page.keep_whole(_blocks(book, row, charts), repeated=_TITLE_ROWS)
+
+
+def _blocks(book: Book, drawn: int, charts: int) -> list[tuple[int, int]]:
+    """First rows of what should stay together in print, and of what follows: tables, rows of charts."""
+    rows_of_charts = math.ceil(len(book.figures.inputs) / len(_ACROSS))
+    starts = [charts, *[charts + 1 + k * _CHART_ROWS for k in range(1, rows_of_charts + 1)]]
+    return [(0, drawn), (drawn, charts), *pairwise(starts)]
 
 
 def _write_asked(book: Book, page: Page, row: int) -> int:
     page.heading(row, "As asked", _LAST)
-    page.header(row + 1, _ASKED, numbers_from=_LAST + 1)
+    page.header(row + 1, _ASKED, numbers_from=5)
+    for column, title in enumerate(_ASKED[7:], start=7):
+        page.text(row + 1, column, title, "header" if column > 8 else "header_in")
     row += 2
     for item in book.figures.inputs:
         record = item.record
@@ -77,7 +90,7 @@ def _write_asked(book: Book, page: Page, row: int) -> int:
         page.paragraph(row, record.distribution, 4, first=2, kind="wrapped")
         page.number(row, 5, record.base, item.scale.code)
         page.share(row, 6, record.base_percentile)
-        page.paragraph(row, record.note, 8, first=7, kind="wrapped")
+        page.paragraph(row, record.note, 8, first=7, kind="wrapped_in")
         page.paragraph(row, record.source, 10, first=9, kind="wrapped")
         row += 1
     return row + 1
@@ -163,15 +176,21 @@ def _write_density(
         lines.append(_write_line(page, row, item, upright, "Base value"))
         row += len(upright)
         low, high = min(low, base), max(high, base)
-    x_axis = {"name": f"Value{item.scale.title}", "num_format": item.scale.code}
+    x_axis = {"name": f"Value{item.scale.title}", "num_format": item.scale.axis_code}
     chart = curve_chart(
         book.workbook,
         _title(item),
         lines,
         {**x_axis, "label_position": "low", **round_bounds(low, high)},
-        {"name": "Density of draws", "num_format": "General", "min": 0},
+        {"name": f"Density of draws{_per(item)}", "num_format": "General", "min": 0},
     )
     return row, chart
+
+
+def _per(item: InputFigures) -> str:
+    """The unit of a density; none for shares and dates, whose unit is that of their format."""
+    unit = one_line(item.scale.unit, 16)
+    return f", per {unit}" if unit and unit != "%" and not item.scale.is_date else ""
 
 
 def _write_values(
@@ -183,8 +202,8 @@ def _write_values(
     for k, value in enumerate(bins.lower.tolist()):
         share = int(bins.counts[k]) / total
         page.text(row + k, 0, f"{item.title}: draws")
-        page.text(row + k, 1, item.scale.text(value), "number")
-        page.share(row + k, 2, 0.0 if k == marked else share)
+        page.text(row + k, 1, item.scale.bare_text(value), "number")
+        page.share(row + k, 2, share)
         if k == marked:
             page.share(row + k, 3, share)
     last = row + len(bins.counts) - 1
@@ -193,7 +212,17 @@ def _write_values(
         columns.append(("Base value", (NAME, row, 3, last, 3)))
     x_axis = {"name": f"Value{item.scale.title}"}
     labels = (NAME, row, 1, last, 1)
-    return last + 1, bin_chart(book.workbook, _title(item), labels, columns, None, x_axis)
+    chart = bin_chart(
+        book.workbook,
+        _title(item),
+        labels,
+        columns,
+        None,
+        x_axis,
+        highest=bins.highest_share,
+        upright=fit_side_by_side(map(item.scale.bare_text, bins.lower.tolist()), _LETTERS_ACROSS),
+    )
+    return last + 1, chart
 
 
 def _title(item: InputFigures) -> str:

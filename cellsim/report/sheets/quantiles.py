@@ -158,7 +158,7 @@ def _write_marks(page: Page, output: OutputFigures, block: Block) -> None:
         for k, title in enumerate(
             ("Lines in the chart", "Value from", "Value to", "Share from", "Share to")
         ):
-            page.text(row - 1, MARKS_COLUMN + k, title, "strong")
+            page.text(row - 1, MARKS_COLUMN + k, title, "strong_right" if k else "strong")
     for k, (name, value) in enumerate(marks):
         page.text(row + k, MARKS_COLUMN, name)
         page.number(row + k, MARKS_COLUMN + 1, value, output.scale.code)
