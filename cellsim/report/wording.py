@@ -207,7 +207,7 @@ def _precision_cautions(figures: Figures) -> list[str]:
 def _precision_caution(output: OutputFigures) -> str | None:
     """What is known too roughly: everything, the mean, or a share beyond a threshold."""
     summary = output.summary
-    if summary is None or summary.moments.minimum == summary.moments.maximum:
+    if summary is None:
         return None
     found, scale = summary.moments, output.scale
     if found.count < _FEW_DRAWS or found.mean_se is None:
@@ -216,6 +216,8 @@ def _precision_caution(output: OutputFigures) -> str | None:
             f"Thin precision: {output.title} rests on {draws}; the intervals on Quantiles say how "
             "far its figures can be trusted."
         )
+    if found.minimum == found.maximum:
+        return None
     low, _, high = central_range(summary)
     if found.mean_se * 4 > _WIDE * (high - low) > 0:
         return (

@@ -462,3 +462,11 @@ def test_dependent_inputs_are_named_as_people_call_them(
 ) -> None:
     row = [cell.value for cell in opened(ferry_run, tmp_path)["Dependence"][6]]
     assert row[:4] == ["Passenger growth", "Fuel price", 0.4, 0.398]
+
+
+@pytest.mark.parametrize(("draws", "words"), [([3.5], "1 draw"), ([3.5] * 100, "100 draws")])
+def test_few_draws_are_warned_of_even_if_they_agree(
+    draws: list[float], words: str, make_run: Made, output_record: Made, tmp_path: Path
+) -> None:
+    found = texts(opened(make_run([(output_record("value"), draws)]), tmp_path), "Headline")
+    assert any(text.startswith(f"Thin precision: Value rests on {words};") for text in found)

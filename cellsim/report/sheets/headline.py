@@ -147,7 +147,7 @@ def _write_charts(book: Book, page: Page, row: int) -> int:
     page.chart(row, 0, curve, cumulative_alt_text(output))
     columns = histogram_chart(book.workbook, output, bins)
     columns.set_size(size)
-    page.chart(row, 3, columns, histogram_alt_text(output), x_offset=78)
+    page.chart(row, 3, columns, histogram_alt_text(output), x_offset=74)
     return row + _CHART_ROWS
 
 
