@@ -112,7 +112,7 @@ def parse_format(code: str) -> tuple[Section, ...]:
     """The sections of a format code.
 
     Raises:
-        Fault: A quote is not closed (#VALUE!).
+        Fault: A quote is not closed, or a text code stands where none may (#VALUE!).
     """
     sections: list[Section] = []
     condition: tuple[str, float] | None = None
@@ -127,6 +127,10 @@ def parse_format(code: str) -> tuple[Section, ...]:
         else:
             tokens.extend(_tokens_of(name, match[name]))
     sections.append(Section(condition, tuple(tokens)))
+    early = any(section.is_text for section in sections[:-1])
+    mixed = sections[-1].is_text and sections[-1].has(Kind.DIGIT)
+    if early or mixed:
+        raise Fault(ErrorValue.VALUE)
     return tuple(sections)
 
 

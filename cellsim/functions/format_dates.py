@@ -22,6 +22,7 @@ class _Moment:
 
     Attributes:
         date: Year, month and day.
+        in_calendar: Whether there is such a date.
         weekday: From Saturday as 0.
         seconds: Whole seconds since serial 0.
         fraction: The decimals of the second, as many as are shown.
@@ -30,6 +31,7 @@ class _Moment:
     """
 
     date: tuple[int, int, int]
+    in_calendar: bool
     weekday: int
     seconds: int
     fraction: str
@@ -72,13 +74,19 @@ def format_date(number: float, tokens: Sequence[Token], *, date_1904: bool) -> s
     """A serial number by date and time codes.
 
     Raises:
-        Fault: It is before or after the calendar (#VALUE!).
+        Fault: It is before or after the calendar, or digit codes stand among those of dates (#VALUE!).
     """
-    elapsed = frozenset(token.text[0] for token in tokens if token.kind is Kind.ELAPSED)
-    if number < 0 and not elapsed and not date_1904:
+    decimals = _second_decimals(tokens)
+    if any(token.kind is Kind.DIGIT for k, token in enumerate(tokens) if k not in decimals):
+        raise Fault(ErrorValue.VALUE)
+    codes = [token for token in tokens if token.kind in (Kind.DATE, Kind.ELAPSED, Kind.HALF_DAY)]
+    elapsed = frozenset(token.text[0] for token in codes if token.kind is Kind.ELAPSED)
+    only_elapsed = bool(elapsed) and len(codes) == 1 and not decimals
+    if number < 0 and not only_elapsed and not date_1904:
         raise Fault(ErrorValue.VALUE)
     moment = _moment(abs(number), tokens, elapsed, date_1904=date_1904)
-    decimals = _second_decimals(tokens)
+    if not moment.in_calendar and not only_elapsed:
+        raise Fault(ErrorValue.VALUE)
     shown = []
     for place, token in enumerate(tokens):
         if place in decimals:
@@ -102,10 +110,9 @@ def _moment(
     seconds, fraction = divmod(ticks, scale)
     day = seconds // _DAY
     date = date_from_serial(float(day), date_1904=date_1904)
-    if date is None:
-        raise Fault(ErrorValue.VALUE)
     return _Moment(
-        date=date,
+        date=date or (0, 1, 0),
+        in_calendar=date is not None,
         weekday=(day + (OFFSET_1904 if date_1904 else 0)) % 7,
         seconds=seconds,
         fraction=f"{fraction:0{digits}d}" if digits else "",

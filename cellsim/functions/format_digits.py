@@ -92,7 +92,7 @@ def _layout(tokens: Sequence[Token]) -> _Layout:
         if same_side and k > same_side[-1]:
             thousands += 1
         elif k < point:
-            grouped = True
+            grouped = grouped or (k + 1 in whole and k - 1 in whole)
     return _Layout(whole, decimals, frozenset(dropped), grouped, thousands)
 
 

@@ -71,7 +71,7 @@ def _format_number(number: float, sections: tuple[Section, ...], *, date_1904: b
             size if token.kind is Kind.GENERAL else token.text for token in tokens
         )
     if not section.has(Kind.DIGIT):
-        return sign + "".join(token.text for token in tokens) if tokens else ""
+        return sign + "".join(token.text for token in tokens)
     if section.has(Kind.EXPONENT):
         return format_scientific(shown, tokens)
     layout = fraction_layout(tokens)

@@ -17,7 +17,9 @@ _NUMBER = re.compile(
 )
 _FRACTION = re.compile(r"(?P<sign>[-+]?)(?P<whole>\d+) +(?P<top>\d+)/(?P<bottom>[1-9]\d*)\Z")
 _TIME = re.compile(
-    r"(?P<hour>\d{1,4})(?::(?P<minute>\d{1,4}))?(?::(?P<second>\d{1,4}(?:\.\d*)?))?\s*(?P<half>[aApP][mM]?)?\Z"
+    r"(?P<hour>\d{1,4})"
+    r"(?::(?P<minute>\d{1,4})(?:(?P<fraction>\.\d+)|:(?P<second>\d{1,4}(?:\.\d*)?)|\.)?)?"
+    r"\s*(?P<half>[aApP][mM]?)?\Z"
 )
 _ISO = re.compile(r"(?P<year>\d{4})[-/](?P<month>\d{1,2})[-/](?P<day>\d{1,2})\Z")
 _US = re.compile(r"(?P<month>\d{1,2})[-/](?P<day>\d{1,2})[-/](?P<year>\d{4}|\d{1,2})\Z")
@@ -104,22 +106,22 @@ def date_from_text(text: str, *, date_1904: bool = False) -> float | None:
 
 
 def time_from_text(text: str) -> float | None:
-    """The fraction of a day of a time written as text (more than a day allowed), or None."""
+    """The fraction of a day of a time written as text (more than a day allowed), or None.
+
+    One of hours, minutes and seconds may run over what a clock shows: `30:00`, `0:90`, `0:0:100`.
+    """
     match = _TIME.match(text.strip())
     if match is None or (match["minute"] is None and match["half"] is None):
         return None
-    hour, minute, second = (
-        int(match["hour"]),
-        int(match["minute"] or 0),
-        float(match["second"] or 0),
-    )
+    hour, minute = float(match["hour"]), float(match["minute"] or 0)
+    second = float(match["second"] or 0)
+    if match["fraction"] and match["second"] is None:  # minutes and seconds
+        hour, minute, second = 0.0, hour, minute + float(match["fraction"])
     if match["half"]:
-        if not 0 <= hour <= 12:
+        if hour > 12:
             return None
         hour = hour % 12 + (12 if match["half"].lower().startswith("p") else 0)
-    if (minute >= 60 and (match["second"] is not None or hour > 0)) or (
-        second >= 60 and minute > 0
-    ):
+    if (hour >= 24) + (minute >= 60) + (second >= 60) > 1:
         return None
     return (hour * 3600 + minute * 60 + second) / 86400
 
