@@ -126,10 +126,13 @@ def periods_needed(
     """The number of periods of level payments; #NUM! where no number will do."""
     rate, paid = np.asarray(rate), np.asarray(paid)
     level = paid * (1 + rate * due) / rate
-    # log((level - future) / (level + present)), without loss where the rate is small
-    ratio = -(present + future) / (level + present)
-    count = np.log1p(ratio) / np.log1p(rate)
-    impossible = (rate <= -1) | (level + present == 0) | (ratio <= -1)
+    quotient = (level - future) / (level + present)
+    change = -(present + future) / (
+        level + present
+    )  # the quotient less 1, exact where that is small
+    logarithm = np.where(np.abs(change) < 0.5, np.log1p(change), np.log(quotient))
+    count = logarithm / np.log1p(rate)
+    impossible = (rate <= -1) | (level + present == 0) | (quotient <= 0)
     count = checked(count, (impossible, _NUM))
     flat = checked(-(present + future) / paid, (paid == 0, _NUM))
     return np.where(rate == 0, flat, count)
