@@ -26,8 +26,8 @@ IntArray = npt.NDArray[np.int64]
 Places = npt.NDArray[np.intp]
 
 _NUM = encode_error(ErrorValue.NUM)
-_DRAWS_TOGETHER = 1024
-"""So many draws' flows stay in the processor's cache."""
+_DRAWS_TOGETHER = 8192
+"""So many draws make operations that are long beside the cost of starting them, on several threads too."""
 _FIRST_TURNS = range(6)
 """Steps that settle most draws; the rest are gathered from all and taken together."""
 
