@@ -8,8 +8,14 @@ the check values in the tests.
 from __future__ import annotations
 
 import calendar
+import math
 
-from cellsim.functions.serial_dates import date_from_serial, serial_from_date
+from cellsim.functions.serial_dates import (
+    LAST_SERIAL,
+    OFFSET_1904,
+    date_from_serial,
+    serial_from_date,
+)
 from cellsim.values import ErrorValue, Fault
 
 Date = tuple[int, int, int]
@@ -129,3 +135,15 @@ def _average_year(a: Date, b: Date) -> float:
     years = b[0] - a[0] + 1
     leaps = sum(is_leap(year) for year in range(a[0], b[0] + 1))
     return 365 + leaps / years
+
+
+def numbered_day(serial: float, *, date_1904: bool = False) -> int:
+    """The day of a serial number as the 1900 system numbers it, by which weekdays are counted.
+
+    Raises:
+        Fault: It is out of range (#NUM!).
+    """
+    day = math.floor(serial) + (OFFSET_1904 if date_1904 else 0)
+    if serial < 0 or day > LAST_SERIAL:
+        raise Fault(ErrorValue.NUM)
+    return day

@@ -1,36 +1,28 @@
-"""Dates and times."""
+"""Dates."""
 
 from __future__ import annotations
-
-import math
 
 from cellsim.functions.coercion import to_number
 from cellsim.functions.day_counts import (
     add_months,
     days_360,
     days_in_month,
+    numbered_day,
     to_date,
     to_serial,
     year_fraction,
 )
-from cellsim.functions.dispatch import values_of
-from cellsim.functions.number_text import date_time_from_text
 from cellsim.functions.registry import (
     AnyScalar,
     Context,
     Logical,
     Number,
-    Operand,
-    ScalarValue,
     Text,
     Whole,
     spreadsheet_function,
 )
 from cellsim.functions.serial_dates import LAST_SERIAL, OFFSET_1904
-from cellsim.functions.workdays import Weekend, count_workdays, move_workdays, weekend_of
-from cellsim.values import ErrorValue, Fault, Scalar
-
-_SECONDS = 86_400
+from cellsim.values import ErrorValue, Fault
 
 
 @spreadsheet_function("DATE")
@@ -51,18 +43,6 @@ def date_from_parts(context: Context, year: Whole, month: Whole, day: Whole) -> 
 
 def _date(context: Context, serial: float) -> tuple[int, int, int]:
     return to_date(serial, date_1904=context.date_1904)
-
-
-def _day(context: Context, serial: float) -> int:
-    """The day as the 1900 system numbers it, by which weekdays are counted.
-
-    Raises:
-        Fault: It is out of range (#NUM!).
-    """
-    day = math.floor(serial) + (OFFSET_1904 if context.date_1904 else 0)
-    if serial < 0 or day > LAST_SERIAL:
-        raise Fault(ErrorValue.NUM)
-    return day
 
 
 @spreadsheet_function("YEAR")
@@ -162,7 +142,7 @@ def date_difference(context: Context, start: Number, end: Number, unit: Text) ->
 @spreadsheet_function("WEEKDAY")
 def day_of_week(context: Context, date: Number, kind: Whole = 1) -> float | ErrorValue:
     """The day of the week: kind 1 from Sunday as 1, 2 from Monday as 1, 3 from Monday as 0, 11-17."""
-    monday_first = (_day(context, date) - 2) % 7
+    monday_first = (numbered_day(date, date_1904=context.date_1904) - 2) % 7
     if kind == 3:
         return float(monday_first)
     first = _FIRST_DAYS.get(kind)
@@ -181,163 +161,19 @@ def week_of_year(context: Context, date: Number, kind: Whole = 1) -> float | Err
     if kind not in _FIRST_DAYS:
         return ErrorValue.NUM
     year = _date(context, date)[0]
-    new_year = _day(context, to_serial(year, 1, 1, date_1904=context.date_1904))
+    new_year = numbered_day(
+        to_serial(year, 1, 1, date_1904=context.date_1904), date_1904=context.date_1904
+    )
     offset = (new_year - 2 - _FIRST_DAYS[kind]) % 7
-    return float((_day(context, date) - new_year + offset) // 7 + 1)
+    return float((numbered_day(date, date_1904=context.date_1904) - new_year + offset) // 7 + 1)
 
 
 @spreadsheet_function("ISOWEEKNUM")
 def iso_week(context: Context, date: Number) -> float:
     """The week of the year by ISO 8601: that of its Thursday."""
-    day = _day(context, date)
+    day = numbered_day(date, date_1904=context.date_1904)
     thursday = day - (day - 2) % 7 + 3
     if thursday < 1:
         return 52.0  # in 1899
     new_year = to_serial(to_date(thursday)[0], 1, 1)
     return float((thursday - new_year) // 7 + 1)
-
-
-def _holidays(context: Context, holidays: Operand | None) -> frozenset[int]:
-    if holidays is None:
-        return frozenset()
-    items = values_of(holidays, context).items
-    return frozenset(
-        _day(context, to_number(item, date_1904=context.date_1904))
-        for item in items
-        if item is not None
-    )
-
-
-def _weekend(context: Context, value: Operand | None) -> Weekend:
-    return weekend_of(1.0 if value is None else values_of(value, context).items[0])
-
-
-def _count(
-    context: Context, start: float, end: float, weekend: Weekend, holidays: Operand | None
-) -> float:
-    days = _day(context, start), _day(context, end)
-    return float(count_workdays(*days, weekend, _holidays(context, holidays)))
-
-
-def _move(
-    context: Context, start: float, days: int, weekend: Weekend, holidays: Operand | None
-) -> float:
-    moved = move_workdays(_day(context, start), days, weekend, _holidays(context, holidays))
-    serial = moved - (OFFSET_1904 if context.date_1904 else 0)
-    if serial < 0:
-        raise Fault(ErrorValue.NUM)
-    return float(serial)
-
-
-@spreadsheet_function("NETWORKDAYS", strict=True)
-def workdays_between(
-    context: Context, start: Number, end: Number, holidays: Operand | None = None
-) -> float:
-    """The workdays from one date to another, both included."""
-    return _count(context, start, end, weekend_of(1.0), holidays)
-
-
-@spreadsheet_function("NETWORKDAYS.INTL")
-def workdays_between_by_weekend(
-    context: Context,
-    start: Number,
-    end: Number,
-    weekend: Operand | None = None,
-    holidays: Operand | None = None,
-) -> float:
-    """The workdays between two dates with a weekend of one's own."""
-    return _count(context, start, end, _weekend(context, weekend), holidays)
-
-
-@spreadsheet_function("WORKDAY", strict=True)
-def workdays_later(
-    context: Context, start: Number, days: Whole, holidays: Operand | None = None
-) -> float:
-    """The date some workdays later."""
-    return _move(context, start, days, weekend_of(1.0), holidays)
-
-
-@spreadsheet_function("WORKDAY.INTL")
-def workdays_later_by_weekend(
-    context: Context,
-    start: Number,
-    days: Whole,
-    weekend: Operand | None = None,
-    holidays: Operand | None = None,
-) -> float:
-    """The date some workdays later with a weekend of one's own."""
-    return _move(context, start, days, _weekend(context, weekend), holidays)
-
-
-def _serial_now(context: Context) -> float:
-    moment = context.now
-    day = to_serial(moment.year, moment.month, moment.day, date_1904=context.date_1904)
-    return day + (moment.hour * 3600 + moment.minute * 60 + moment.second) / _SECONDS
-
-
-@spreadsheet_function("TODAY", volatile=True)
-def today(context: Context) -> float:
-    """The date on which the model is evaluated."""
-    return float(math.floor(_serial_now(context)))
-
-
-@spreadsheet_function("NOW", volatile=True)
-def now(context: Context) -> float:
-    """The moment at which the model is evaluated."""
-    return _serial_now(context)
-
-
-@spreadsheet_function("TIME")
-def time_from_parts(hour: Whole, minute: Whole, second: Whole) -> float | ErrorValue:
-    """A time of day as a share of a day."""
-    total = hour * 3600 + minute * 60 + second
-    if total < 0 or max(hour, minute, second) > 32_767:
-        return ErrorValue.NUM
-    return total % _SECONDS / _SECONDS
-
-
-def _second_of_day(time: float) -> int:
-    if time < 0:
-        raise Fault(ErrorValue.NUM)
-    return math.floor((time - math.floor(time)) * _SECONDS + 0.5) % _SECONDS
-
-
-@spreadsheet_function("HOUR")
-def hour_of(time: Number) -> float:
-    """The hour of a time."""
-    return float(_second_of_day(time) // 3600)
-
-
-@spreadsheet_function("MINUTE")
-def minute_of(time: Number) -> float:
-    """The minute of a time."""
-    return float(_second_of_day(time) // 60 % 60)
-
-
-@spreadsheet_function("SECOND")
-def second_of(time: Number) -> float:
-    """The second of a time."""
-    return float(_second_of_day(time) % 60)
-
-
-def _from_text(context: Context, text: ScalarValue) -> float:
-    value: Scalar = text
-    if not isinstance(value, str):
-        raise Fault(ErrorValue.VALUE)
-    serial = date_time_from_text(value, date_1904=context.date_1904)
-    if serial is None:
-        raise Fault(ErrorValue.VALUE)
-    return serial
-
-
-@spreadsheet_function("DATEVALUE")
-def date_from_written(context: Context, text: ScalarValue) -> float:
-    """The serial number of a date written as text."""
-    return float(math.floor(_from_text(context, text)))
-
-
-@spreadsheet_function("TIMEVALUE")
-def time_from_written(context: Context, text: ScalarValue) -> float:
-    """The share of a day of a time written as text."""
-    serial = _from_text(context, text)
-    return serial - math.floor(serial)
