@@ -11,9 +11,6 @@ import math
 from cellsim.functions.number_text import number_from_text
 from cellsim.values import Array, ErrorValue, Fault, Scalar
 
-LAST_INTEGER_SHOWN = 1e20
-"""Numbers below this are shown without an exponent in a cell of General format."""
-
 
 def to_number(value: Scalar, *, date_1904: bool = False) -> float:
     """A scalar in an arithmetic place: blank is 0, logicals are 1 and 0, numeric text is parsed.

@@ -58,15 +58,3 @@ def type_rank(value: Scalar) -> int:
 def same_type(left: Scalar, right: Scalar) -> bool:
     """Whether two values can be told apart by more than their type; a blank is of no type."""
     return left is not None and right is not None and type_rank(left) == type_rank(right)
-
-
-def sort_key(value: Scalar) -> tuple[int, float | str]:
-    """A key that sorts values by type and then by value; blanks last."""
-    if value is None:
-        return (9, 0.0)
-    rank = type_rank(value)
-    if rank == _TEXT:
-        return (rank, str(value).casefold())
-    if rank == _NUMBER and not isinstance(value, float):
-        return (8, 0.0)  # an error
-    return (rank, float(value))  # type: ignore[arg-type]

@@ -183,15 +183,22 @@ class Calculation:
         return False
 
     def spill_of(self, cell: CellRef) -> Value:
-        """The whole array that a cell's formula gives; #REF! if it holds no array formula."""
+        """The cells that a formula's array fills, as a reference; #REF! if it holds no array formula.
+
+        An array that has outgrown the area kept in the file is given as values.
+        """
         value = self.cell_value(*cell)
-        spill = self._spills.get(cell)
-        if spill is not None:
-            return spill
         formula = self._graph.formula(cell)
         if formula is None or formula.area is None or isinstance(value, ErrorValue):
             return value if isinstance(value, ErrorValue) else ErrorValue.REF
-        return self.area_values(formula.area)
+        spill = self._spills.get(cell)
+        area = formula.area
+        if spill is None:
+            return Reference((area,))
+        if spill.rows > area.rows or spill.columns > area.columns:
+            return spill
+        last_row, last_column = cell.row + spill.rows - 1, cell.column + spill.columns - 1
+        return Reference((RangeRef(cell.sheet, cell.row, cell.column, last_row, last_column),))
 
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers in [0, 1) for a cell's volatile functions."""
@@ -310,7 +317,7 @@ class Calculation:
                     cell.column,
                 ):
                     item = item_at(array, row, column)
-                    values[position] = 0.0 if item is None else item
+                    values[position] = _shown(item)
 
     def _data_table(self, formula: Formula) -> Value:
         """The interior of a data table: the corner's formula with the input cells replaced."""
@@ -410,6 +417,13 @@ class Calculation:
         return 0.0 if type(before) is type(after) and before == after else 1.0
 
 
+def _shown(item: Value) -> Scalar:
+    """What a cell of an array shows of an item: zero for a blank, #VALUE! for a function."""
+    if isinstance(item, LambdaValue):
+        return ErrorValue.VALUE
+    return 0.0 if item is None else _single(item)
+
+
 def _single(value: Value) -> Scalar:
     """What a cell shows of a value: an array's first item, zero for a blank."""
     if isinstance(value, Array):
@@ -423,13 +437,7 @@ def _single(value: Value) -> Scalar:
     return value
 
 
-def calculate_workbook(graph: Graph, *, as_of: dt.datetime) -> Calculation:
-    """Calculate every formula cell of a workbook from its constants.
-
-    Returns:
-        The calculation, with every formula cell's value found.
-    """
-    calculation = Calculation(graph, as_of=as_of)
-    for formula in graph.all_formulas():
+def calculate_all(calculation: Calculation) -> None:
+    """Calculate every formula cell that has not been yet."""
+    for formula in calculation.graph.all_formulas():
         calculation.cell_value(*formula.cell)
-    return calculation

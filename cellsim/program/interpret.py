@@ -172,7 +172,8 @@ class Frame:
         formula = self.calculation.graph.formula(CellRef(sheet, row, column))
         if formula is None or formula.tree is None:
             return None
-        return "=" + unparse(formula.tree, row, column)
+        text = "=" + unparse(formula.tree, row, column)
+        return f"{{{text}}}" if formula.whole_arrays and not formula.dynamic else text
 
     def number_format(self, sheet: str, row: int, column: int) -> str:
         """The number format code of a cell."""

@@ -1,0 +1,160 @@
+"""Arrays made, cut and put together."""
+
+from __future__ import annotations
+
+from cellsim.functions.coercion import to_number
+from cellsim.functions.dispatch import LARGEST_ARRAY, values_of
+from cellsim.functions.registry import (
+    AnyScalar,
+    ArrayValues,
+    Context,
+    Logical,
+    Operand,
+    Whole,
+    spreadsheet_function,
+)
+from cellsim.values import Array, ErrorValue, Fault, Scalar, Value
+
+
+def _table(rows: list[list[Scalar]]) -> Array:
+    """An array of rows; blanks become 0. Without any item it is #CALC!."""
+    if not rows or not rows[0]:
+        raise Fault(ErrorValue.CALC)
+    return Array.from_rows([[0.0 if item is None else item for item in row] for row in rows])
+
+
+@spreadsheet_function("SEQUENCE")
+def sequence(
+    rows: AnyScalar,
+    columns: AnyScalar = None,
+    first: AnyScalar = None,
+    step: AnyScalar = None,
+) -> Array | ErrorValue:
+    """Numbers in even steps, row by row; what is left out between commas is 1."""
+    tall, wide, start, by = (
+        1.0 if x is None else to_number(x) for x in (rows, columns, first, step)
+    )
+    height, width = int(tall), int(wide)
+    if height < 1 or width < 1:
+        return ErrorValue.CALC if height == 0 or width == 0 else ErrorValue.VALUE
+    if height * width > LARGEST_ARRAY:
+        return ErrorValue.NUM
+    return Array(height, width, [start + by * k for k in range(height * width)])
+
+
+def _part(count: int, wanted: Value, *, drop: bool) -> slice:
+    """The rows or columns that TAKE or DROP leaves; nothing asked means all of them."""
+    if isinstance(wanted, Array):
+        wanted = wanted.items[0]
+    if wanted is None:
+        return slice(0, count)
+    if isinstance(wanted, ErrorValue):
+        raise Fault(wanted)
+    if not isinstance(wanted, (float, bool)):
+        raise Fault(ErrorValue.VALUE)
+    number = int(wanted)
+    size = min(abs(number), count)
+    if drop:
+        return slice(size, count) if number >= 0 else slice(0, count - size)
+    return slice(0, size) if number >= 0 else slice(count - size, count)
+
+
+def _single(context: Context, value: Value) -> Value:
+    return None if value is None else values_of(value, context).items[0]
+
+
+@spreadsheet_function("TAKE")
+def take(
+    context: Context, values: ArrayValues, rows: Operand, columns: Operand | None = None
+) -> Array:
+    """The first rows and columns, or the last with negative numbers."""
+    return _cut(context, values, rows, columns, drop=False)
+
+
+@spreadsheet_function("DROP")
+def drop(
+    context: Context, values: ArrayValues, rows: Operand, columns: Operand | None = None
+) -> Array:
+    """All but the first rows and columns, or but the last with negative numbers."""
+    return _cut(context, values, rows, columns, drop=True)
+
+
+def _cut(context: Context, values: Array, rows: Value, columns: Value, *, drop: bool) -> Array:
+    down = _part(values.rows, _single(context, rows), drop=drop)
+    across = _part(values.columns, _single(context, columns), drop=drop)
+    return _table([row[across] for row in values.to_rows()[down]])
+
+
+def _places(context: Context, asked: tuple[Value, ...], count: int) -> list[int]:
+    places: list[int] = []
+    for value in asked:
+        for item in values_of(value, context).items:
+            if isinstance(item, ErrorValue):
+                raise Fault(item)
+            number = int(item) if isinstance(item, (float, bool)) else 0
+            if number == 0 or abs(number) > count:
+                raise Fault(ErrorValue.VALUE)
+            places.append(number - 1 if number > 0 else count + number)
+    return places
+
+
+@spreadsheet_function("CHOOSECOLS", least=2)
+def choose_columns(context: Context, values: ArrayValues, *columns: Operand) -> Array:
+    """Columns by number, from the end with negative ones."""
+    places = _places(context, columns, values.columns)
+    return _table([[row[place] for place in places] for row in values.to_rows()])
+
+
+@spreadsheet_function("CHOOSEROWS", least=2)
+def choose_rows(context: Context, values: ArrayValues, *rows: Operand) -> Array:
+    """Rows by number, from the end with negative ones."""
+    table = values.to_rows()
+    return _table([table[place] for place in _places(context, rows, values.rows)])
+
+
+@spreadsheet_function("HSTACK", least=1)
+def side_by_side(*arrays: ArrayValues) -> Array:
+    """Arrays side by side; #N/A fills shorter ones."""
+    height = max(array.rows for array in arrays)
+    rows: list[list[Scalar]] = [[] for _ in range(height)]
+    for array in arrays:
+        table = array.to_rows()
+        for place, row in enumerate(rows):
+            row.extend(table[place] if place < array.rows else [ErrorValue.NA] * array.columns)
+    return _table(rows)
+
+
+@spreadsheet_function("VSTACK", least=1)
+def one_below_the_other(*arrays: ArrayValues) -> Array:
+    """Arrays one below the other; #N/A fills narrower ones."""
+    width = max(array.columns for array in arrays)
+    rows: list[list[Scalar]] = []
+    for array in arrays:
+        rows += [[*row, *[ErrorValue.NA] * (width - array.columns)] for row in array.to_rows()]
+    return _table(rows)
+
+
+def _line(values: Array, ignore: int, *, by_column: bool) -> list[Scalar]:
+    if not 0 <= ignore <= 3:
+        raise Fault(ErrorValue.VALUE)
+    rows = values.to_rows()
+    if by_column:
+        rows = [list(column) for column in zip(*rows, strict=True)]
+    items = [item for row in rows for item in row]
+    if ignore & 1:
+        items = [item for item in items if item is not None]
+    if ignore & 2:
+        items = [item for item in items if not isinstance(item, ErrorValue)]
+    return items
+
+
+@spreadsheet_function("TOCOL")
+def to_column(values: ArrayValues, ignore: Whole = 0, by_column: Logical = False) -> Array:
+    """All items down a column; 1 leaves blanks out, 2 errors, 3 both."""
+    return _table([[item] for item in _line(values, ignore, by_column=by_column)])
+
+
+@spreadsheet_function("TOROW")
+def to_row(values: ArrayValues, ignore: Whole = 0, by_column: Logical = False) -> Array:
+    """All items along a row; 1 leaves blanks out, 2 errors, 3 both."""
+    return _table([_line(values, ignore, by_column=by_column)])
