@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import enum
-import math
 import struct
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
@@ -138,8 +137,3 @@ def decode_error(number: float) -> ErrorValue:
     """The error that a NaN stands for; #NUM! for a NaN without a known payload."""
     code = struct.unpack("<Q", struct.pack("<d", number))[0] & 0xFF
     return _ERROR_ORDER[code - 1] if 0 < code <= len(_ERROR_ORDER) else ErrorValue.NUM
-
-
-def number_or_error(number: float) -> Scalar:
-    """The number itself, or #NUM! when it is not finite."""
-    return number if math.isfinite(number) else ErrorValue.NUM

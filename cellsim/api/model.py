@@ -18,7 +18,7 @@ from cellsim.formula.tree import (
     StructuredReference,
 )
 from cellsim.graph.build import Graph, build_graph
-from cellsim.program.calculation import Calculation, calculate_workbook
+from cellsim.program.calculation import Calculation, calculate_all
 from cellsim.program.interpret import Frame, dereference, evaluate_formula
 from cellsim.results import ModelCheck
 from cellsim.values import Array, Reference, Scalar
@@ -69,11 +69,16 @@ class Model:
 
     @cached_property
     def _calculated(self) -> Calculation:
-        return calculate_workbook(self.graph, as_of=self.as_of.replace(tzinfo=None))
+        calculate_all(self.base)
+        return self.base
+
+    @cached_property
+    def _check(self) -> ModelCheck:
+        return check_model(self._calculated)
 
     def check(self) -> ModelCheck:
         """Recalculate every formula cell and compare it with the value stored in the file."""
-        return check_model(self._calculated)
+        return self._check
 
     def parse(self, text: str, at: CellRef | None = None) -> Node:
         """The tree of a formula over the model, written as in a cell.

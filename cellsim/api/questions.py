@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime as dt
-import difflib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -16,6 +15,7 @@ from cellsim.errors import CellsimError, FormulaSyntaxError, Problem, SidecarErr
 from cellsim.graph.slicing import affected_cells
 from cellsim.program.lower import OutputFormula, Target
 from cellsim.results import Threshold
+from cellsim.uncertainty.dependence import matrix_fault, rank_correlation_matrix
 from cellsim.uncertainty.distributions.distribution import Distribution
 from cellsim.uncertainty.distributions.families import build_distribution
 from cellsim.uncertainty.distributions.family import ParameterError
@@ -289,33 +289,14 @@ class Questions:
         Raises:
             SidecarError: The sections together are no correlation matrix.
         """
-        if not self._sidecar.dependence:
-            return None
         names = [spec.name for spec in self._sidecar.inputs]
-        matrix = np.eye(len(names))
-        for section in self._sidecar.dependence:
-            places = [names.index(name) for name in section.inputs]
-            for i, row in zip(places, section.rank_correlation, strict=True):
-                for j, value in zip(places, row, strict=True):
-                    matrix[i, j] = value
-        smallest = float(np.linalg.eigvalsh(matrix)[0])
-        if smallest < -1e-9:
+        matrix = rank_correlation_matrix(names, self._sidecar.dependence)
+        fault = matrix_fault(matrix) if matrix is not None else None
+        if fault is not None:
             place = f"{self._sidecar.path.name}, line {self._sidecar.dependence[0].line}"
-            raise SidecarError(
-                Problem(
-                    place,
-                    "the rank correlations of all sections together cannot hold at once: the matrix has the "
-                    f"eigenvalue {smallest:.3g}",
-                    "bring the correlations nearer to zero",
-                )
-            )
+            message = f"the matrix of all dependence sections together {fault}"
+            raise SidecarError(Problem(place, message, "bring the correlations nearer to zero"))
         return matrix
-
-
-def nearest_name(name: str, known: Sequence[str]) -> str:
-    """A hint with the nearest of some names, or all of them."""
-    near = difflib.get_close_matches(name, known, n=1)
-    return f"did you mean {near[0]!r}?" if near else f"known: {', '.join(known)}"
 
 
 def as_datetime(date: dt.date | None) -> dt.datetime | None:

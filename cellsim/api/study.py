@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import datetime as dt
 import hashlib
 import platform
@@ -238,15 +239,7 @@ class Study:
         ]
         if engine.unsettled:
             notes.append(f"In {engine.unsettled} draws a circular chain had not settled.")
-        return ModelCheck(
-            compared=check.compared,
-            agreeing=check.agreeing,
-            volatile=check.volatile,
-            without_value=check.without_value,
-            disagreements=check.disagreements,
-            unsupported=check.unsupported,
-            notes=tuple(notes),
-        )
+        return dataclasses.replace(check, notes=tuple(notes))
 
     def _input_record(self, found: FoundInput) -> InputRecord:
         distribution = found.distribution

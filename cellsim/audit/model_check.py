@@ -20,23 +20,25 @@ from cellsim.workbook.model import Workbook
 TOLERANCE = 1e-9
 """Numbers agree within this, relative, absolute below 1."""
 
-_PLACE_DEPENDENT = frozenset({"CELL", "INFO"})
-
 
 def check_model(calculation: Calculation) -> ModelCheck:
     """Compare a finished calculation with the stored values.
 
-    Left out are formulas that are volatile or depend on a volatile one, and those for which the file
-    stores no value.
+    Left out are formulas that are volatile or depend on a volatile one, those for which the file stores
+    no value, and those that are not calculated because of a function that is not supported: they are
+    counted by function.
     """
     graph = calculation.graph
     volatile = volatile_cells(graph)
+    stood_in = calculation.findings.unsupported
     compared = agreeing = without_value = 0
     wrong: dict[CellRef, tuple[Formula, Scalar]] = {}
     for formula in graph.all_formulas():
         cell = formula.cell
         if cell in volatile:
             continue
+        if cell in stood_in:
+            continue  # a copy of the stored value proves nothing
         if not formula.has_stored:
             without_value += 1
             continue
@@ -72,15 +74,17 @@ def volatile_cells(graph: Graph) -> frozenset[CellRef]:
     everything: list[CellRef] = []
     for formula in graph.all_formulas():
         everything.append(formula.cell)
-        for name in graph.functions_of(formula):
-            function = find_function(name)
-            if name in _PLACE_DEPENDENT or (function is not None and function.volatile):
-                if name not in {"OFFSET", "INDIRECT"}:
-                    sources.append(formula.cell)
-                break
+        if any(_changes_by_itself(name) for name in graph.functions_of(formula)):
+            sources.append(formula.cell)
     if not sources:
         return frozenset()
     return affected_cells(graph, sources, everything, count_dynamic=False) | frozenset(sources)
+
+
+def _changes_by_itself(name: str) -> bool:
+    """Whether a function's value changes without its arguments; OFFSET and INDIRECT only look so."""
+    function = find_function(name)
+    return function is not None and function.volatile and not function.gives_reference
 
 
 def _disagreements(

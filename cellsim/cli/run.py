@@ -150,6 +150,7 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
 
 def _as_plain(outcome: Result, target: Path, writing: float) -> dict[str, object]:
     records = outcome.records
+    quantiles = outcome.quantiles(SHOWN_PROBABILITIES)
     return {
         "results": str(target),
         "draws": records.record.draws,
@@ -164,8 +165,8 @@ def _as_plain(outcome: Result, target: Path, writing: float) -> dict[str, object
                 "failed_draws": int(np.isnan(values).sum()),
                 "mean": _finite(np.nanmean(values)) if not np.isnan(values).all() else None,
                 "quantiles": {
-                    str(p): _finite(outcome.quantiles([p])[record.name].iloc[0])
-                    for p in SHOWN_PROBABILITIES
+                    str(p): _finite(quantiles[record.name].iloc[k])
+                    for k, p in enumerate(SHOWN_PROBABILITIES)
                 },
                 "above": {
                     t.text: float((values[np.isfinite(values)] > t.value).mean())

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import bisect
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 from cellsim.cells import CellRef, RangeRef, range_of
@@ -96,7 +96,6 @@ class Graph:
         self.members: dict[str, dict[Position, Position]] = {title: {} for title in self.sheets}
         self.problems: list[Problem] = []
         self._facts: dict[int, ShapeFacts] = {}
-        self._name_facts: dict[int, ShapeFacts] = {}
         self._columns: dict[str, dict[int, list[int]]] = {}
         self._in_area: dict[RangeRef, tuple[CellRef, ...]] = {}
         for sheet in workbook.sheets:
@@ -332,7 +331,3 @@ def _shape_facts(tree: Node) -> ShapeFacts:
         ):
             dynamic = True
     return ShapeFacts(tuple(references), tuple(names), frozenset(functions), dynamic)
-
-
-FormulasBySheet = Mapping[str, Mapping[Position, Formula]]
-"""Formulas by sheet title and position."""

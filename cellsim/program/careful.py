@@ -17,7 +17,7 @@ import numpy.typing as npt
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
-from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, numbers_from_objects
+from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, object_converter
 from cellsim.program.ir import Constant, Instruction, Op, Operand
 from cellsim.values import ErrorValue, encode_error
 
@@ -51,6 +51,8 @@ def careful_step(
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)
         return lambda: _interpret(bound, evaluate)
+    if op is Op.TO_NUMBER:
+        return object_converter(operands[0], out, date_1904=base.date_1904)
     step = _STEPS[op]
     return lambda: step(bound)
 
@@ -196,10 +198,6 @@ def _if_na(bound: _Bound) -> None:
     bound.out[:] = np.where(is_na(value), instead, value)
 
 
-def _to_number(bound: _Bound) -> None:
-    bound.out[:] = numbers_from_objects(bound.operands[0])
-
-
 def _call(bound: _Bound, run: Callable[[], AnyArray]) -> None:
     bound.out[:] = run()
     out = bound.out
@@ -235,5 +233,4 @@ _STEPS: dict[Op, Callable[[_Bound], None]] = {
     Op.IS_NA: _is_na,
     Op.IF_ERROR: _if_error,
     Op.IF_NA: _if_na,
-    Op.TO_NUMBER: _to_number,
 }  # fmt: skip

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from cellsim.functions.coercion import to_logical, to_number
 from cellsim.functions.operators import binary_scalar
-from cellsim.program.ir import Builder, Constant, Kind, Op, Operand, Register, constant
+from cellsim.program.ir import Builder, Constant, Op, Operand, Register, constant
 from cellsim.program.lowered import (
     Block,
     Choice,
@@ -322,13 +322,6 @@ def scalar_constant(value: Scalar) -> Constant:
 def is_error(operand: Operand) -> bool:
     """Whether an operand is a constant error."""
     return isinstance(operand, Constant) and operand.value != operand.value
-
-
-def kind_of(value: Lowered) -> Kind:
-    """The kind of register that a lowered value is read as."""
-    if isinstance(value, Flagged):
-        return Kind.FLAG
-    return Kind.OBJECT if isinstance(value, Varied) else Kind.NUMBER
 
 
 def _is_numeric(value: Lowered) -> bool:

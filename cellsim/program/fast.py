@@ -64,6 +64,9 @@ def fast_step(
     operands = [buffers.operand(operand) for operand in instruction.operands]
     if op is Op.INTERPRET:
         return _interpret(instruction, operands, base, out, go_carefully)
+    if op is Op.TO_NUMBER:
+        convert = object_converter(operands[0], out, date_1904=base.date_1904)
+        return partial(_check_after, convert, out, go_carefully)
     ufunc = UFUNCS.get(op)
     if ufunc is not None:
         return partial(ufunc, *operands, out=out)
@@ -73,10 +76,7 @@ def fast_step(
     )
     if constant_error:
         return partial(_check_after, _OTHERS[op](operands, out), out, go_carefully)
-    step = _OTHERS[op](operands, out)
-    if op is Op.TO_NUMBER:
-        return partial(_check_after, step, out, go_carefully)
-    return step
+    return _OTHERS[op](operands, out)
 
 
 def _check_after(step: Step, out: AnyArray, go_carefully: type[Exception]) -> None:
@@ -141,13 +141,6 @@ def _cancel(operands: list[AnyArray], out: AnyArray) -> Step:
     return partial(settle_cancellation, operands[0], operands[1], out)
 
 
-def _to_number(operands: list[AnyArray], out: AnyArray) -> Step:
-    def step() -> None:
-        out[:] = numbers_from_objects(operands[0])
-
-    return step
-
-
 _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
     Op.POWER: _power,
     Op.SELECT: _select,
@@ -159,7 +152,6 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
     Op.IS_TRUE: _is_true,
     Op.AS_NUMBER: _copy,
     Op.CANCEL: _cancel,
-    Op.TO_NUMBER: _to_number,
     **{
         op: _compare(op)
         for op in (Op.EQUAL, Op.NOT_EQUAL, Op.LESS, Op.LESS_EQUAL, Op.GREATER, Op.GREATER_EQUAL)
@@ -298,13 +290,16 @@ def expression_runner(
     return run
 
 
-def numbers_from_objects(values: AnyArray) -> AnyArray:
-    """Objects as numbers by the rule of operators, errors encoded."""
-    return np.array([_operator_number(value) for value in values], dtype=np.float64)
+def object_converter(values: AnyArray, out: AnyArray, *, date_1904: bool) -> Step:
+    """A function that turns objects into numbers by the rule of operators, errors encoded."""
 
+    def number(value: Scalar) -> float:
+        try:
+            return to_number(value, date_1904=date_1904)
+        except Fault as fault:
+            return encode_error(fault.error)
 
-def _operator_number(value: Scalar) -> float:
-    try:
-        return to_number(value)
-    except Fault as fault:
-        return encode_error(fault.error)
+    def step() -> None:
+        out[:] = [number(value) for value in values]
+
+    return step

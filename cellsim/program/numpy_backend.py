@@ -21,7 +21,8 @@ from cellsim.program.buffers import Buffers, plan_buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.careful import careful_step
 from cellsim.program.fast import fast_step
-from cellsim.program.ir import Instruction, Kind, Loop, Op, Operand, Program, Register
+from cellsim.program.ir import Instruction, Loop, Op, Operand, Program, Register
+from cellsim.values import ErrorValue, encode_error
 
 FloatArray = npt.NDArray[np.float64]
 Step = Callable[[], Any]
@@ -56,6 +57,7 @@ class BlockEvaluator:
         self._buffers = Buffers(plan_buffers(program), block)
         self.poison: dict[int, FloatArray | None] = {}
         self.unsettled = 0
+        self.draws = block
         self._steps = self._build(program.instructions)
         self._reads = [
             frozenset(o.number for o in i.operands if isinstance(o, Register))
@@ -65,13 +67,7 @@ class BlockEvaluator:
             (i.target, *(i.detail.carried if i.op is Op.LOOP else ())) for i in program.instructions
         ]
         self._inputs = [self._buffers.array(number) for number in range(len(program.inputs))]
-        self._outputs = [
-            (
-                self._buffers.operand(operand),
-                operand.number if isinstance(operand, Register) else -1,
-            )
-            for operand, _ in program.outputs
-        ]
+        self._outputs = [self._buffers.operand(operand) for operand, _ in program.outputs]
 
     def evaluate(self, draws: Sequence[FloatArray], out: FloatArray) -> None:
         """Evaluate one block.
@@ -81,18 +77,21 @@ class BlockEvaluator:
             out: Where the outputs go, shape (outputs, n); failed draws are NaN, the payload names
                 the error.
         """
-        count = out.shape[1]
+        self.draws = count = out.shape[1]
         for buffer, values in zip(self._inputs, draws, strict=True):
             buffer[:count] = values
             if count < self.block:
                 buffer[count:] = values[0]
         self._run()
-        for row, (array, _) in enumerate(self._outputs):
+        for row, array in enumerate(self._outputs):
             out[row] = array[:count] if array.ndim else array
 
     def _run(self) -> None:
         self.poison.clear()
         finite = all(np.isfinite(buffer).all() for buffer in self._inputs)
+        if not finite:  # no cell can hold an infinity
+            for buffer in self._inputs:
+                buffer[np.isinf(buffer)] = encode_error(ErrorValue.NUM)
         with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
             done = _run_fast(self._steps.fast) if finite else 0
             if done < len(self._steps.fast):
@@ -160,18 +159,26 @@ class _LoopRunner:
 
     def run_fast(self) -> None:
         """All passes with faults raised."""
-        if not self._run(self._steps.fast):
+        moving = self._run(self._steps.fast)
+        if any(np.isnan(buffer).any() for buffer in self._carried):
             raise GoCarefully
+        self._count(moving)
 
     def run_careful(self) -> None:
         """All passes, errors carried."""
-        self._run(self._steps.careful)
+        self._count(self._run(self._steps.careful))
 
-    def _run(self, steps: Sequence[Step]) -> bool:
+    def _count(self, moving: npt.NDArray[np.bool_]) -> None:
+        """Count the draws that had not settled, those only filling up the block left out."""
+        self._evaluator.unsettled += int(moving[: self._evaluator.draws].sum())
+
+    def _run(self, steps: Sequence[Step]) -> npt.NDArray[np.bool_]:
+        """Pass until no draw moves, or for as long as passes bring them nearer; who still moved."""
         for buffer, start in zip(self._carried, self._loop.start, strict=True):
             buffer.fill(start)
         size = self._evaluator.block
-        active = np.ones(size, dtype=bool)
+        moving = np.ones(size, dtype=bool)
+        active = moving.copy()  # a draw that moves on without coming nearer is given up
         last = np.full(size, np.inf)
         limit = self._loop.passes
         for number in range(1, limit * _MORE_PASSES + 1):
@@ -183,26 +190,11 @@ class _LoopRunner:
                 moved[np.isnan(moved)] = 0.0  # an error stays one
                 np.maximum(change, moved, out=change)
                 np.copyto(buffer, result, where=active)
+            moving &= ~(active & (change <= _SETTLED))
             active &= change > _SETTLED
             if number >= limit:
                 active &= change < last
             if not active.any():
                 break
             last = change
-        self._evaluator.unsettled += int((last > _SETTLED).sum()) if active.any() else 0
-        return not any(np.isnan(buffer).any() for buffer in self._carried)
-
-
-def program_kinds(program: Program) -> dict[int, Kind]:
-    """What each register holds."""
-    kinds = dict.fromkeys(range(len(program.inputs)), Kind.NUMBER)
-
-    def add(instructions: Sequence[Instruction]) -> None:
-        for instruction in instructions:
-            kinds[instruction.target] = instruction.kind
-            if instruction.op is Op.LOOP:
-                kinds.update(dict.fromkeys(instruction.detail.carried, Kind.NUMBER))
-                add(instruction.detail.body)
-
-    add(program.instructions)
-    return kinds
+        return moving

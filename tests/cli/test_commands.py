@@ -6,6 +6,7 @@ import json
 import shutil
 import subprocess
 import sys
+import zipfile
 from pathlib import Path
 
 import openpyxl
@@ -35,12 +36,31 @@ def test_check_agrees_on_the_sample() -> None:
     assert outcome["compared"] == outcome["agreeing"] > 300
 
 
-def test_check_exits_with_1_when_a_value_disagrees(tmp_path: Path) -> None:
+def test_check_exits_with_1_and_names_the_root_when_a_value_disagrees(tmp_path: Path) -> None:
+    """One stored value is changed in the file: that cell disagrees, and nothing that reads it does."""
+    source, changed = SAMPLES / "larkholm_ferries.xlsx", tmp_path / "changed.xlsx"
+    with zipfile.ZipFile(source) as before, zipfile.ZipFile(changed, "w") as after:
+        for name in before.namelist():
+            content = before.read(name).decode("utf-8", "surrogateescape")
+            if name == "xl/worksheets/sheet5.xml":
+                assert content.count("<v>201600</v>") == 1  # 8.40 EUR times 24,000 thousand shares
+                content = content.replace("<v>201600</v>", "<v>201601</v>")
+            after.writestr(name, content.encode("utf-8", "surrogateescape"))
+    done = cellsim("check", changed, "--json")
+    assert done.returncode == 1, done.stderr
+    wrong = json.loads(done.stdout)["disagreements"]
+    assert [(row["cell"], row["stored"], row["root"]) for row in wrong] == [
+        ("Market!B4", 201601.0, True)
+    ]
+
+
+def test_check_passes_over_formulas_without_stored_values(tmp_path: Path) -> None:
     book = openpyxl.load_workbook(SAMPLES / "larkholm_ferries.xlsx")
     book.save(tmp_path / "without_values.xlsx")
-    assert (
-        cellsim("check", tmp_path / "without_values.xlsx").returncode == 0
-    )  # nothing stored, nothing wrong
+    done = cellsim("check", tmp_path / "without_values.xlsx", "--json")
+    outcome = json.loads(done.stdout)
+    assert (done.returncode, outcome["compared"]) == (0, 0)
+    assert outcome["without_value"] > 300
 
 
 def test_run_writes_the_results_and_leaves_the_model_alone(study: Path) -> None:

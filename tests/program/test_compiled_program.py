@@ -105,3 +105,28 @@ def test_draws_given_by_the_caller_are_not_changed() -> None:
     BlockEngine(compiled.program, base).run(values)
     for old, new in zip(before, values, strict=True):
         np.testing.assert_array_equal(old, new)
+
+
+def test_draws_in_which_a_circular_chain_does_not_settle_are_counted_once() -> None:
+    """x = 1 - x^2 rate: contracts for small rates, swings between two values for large ones."""
+    graph = model_of({"A1": 0.1, "B1": "=1-A1*B2", "B2": "=B1^2", "C1": "=B1"}, iterate=True)
+    base = calculate(graph)
+    rates = np.array([0.1, 0.2, 1.5, 1.8, 0.3])
+    compiled = compile_program(base, [place("A1")], [place("C1")], iterate=True)
+    engine = BlockEngine(compiled.program, base, threads=1)
+    out = engine.run([rates])[0]
+    assert engine.unsettled == 2
+    settled = rates < 1
+    roots = (-1 + np.sqrt(1 + 4 * rates[settled])) / (2 * rates[settled])
+    np.testing.assert_allclose(out[settled], roots, rtol=1e-12)
+
+
+def test_an_infinite_draw_is_an_error_and_not_a_number() -> None:
+    graph = model_of({"A1": 1, "A2": 2, "C1": "=IF(A1>0,A2,1)"})
+    base = calculate(graph)
+    compiled = compile_program(base, [place("A1"), place("A2")], [place("C1")], iterate=False)
+    out = BlockEngine(compiled.program, base).run([np.array([1.0, np.inf]), np.array([2.0, 3.0])])[
+        0
+    ]
+    assert out[0] == 2.0
+    assert decode_error(float(out[1])) is ErrorValue.NUM
