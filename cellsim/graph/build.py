@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 from cellsim.cells import CellRef, RangeRef, range_of
 from cellsim.errors import FormulaSyntaxError, Problem
-from cellsim.formula.parser import FormulaCache
+from cellsim.formula.cache import FormulaCache
 from cellsim.formula.tree import (
     Binary,
     Call,

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from cellsim.cells import LAST_COLUMN, LAST_ROW, CellRef, RangeRef
 from cellsim.errors import FormulaSyntaxError
-from cellsim.formula.parser import FormulaCache
+from cellsim.formula.cache import FormulaCache
 from cellsim.formula.tree import (
     CellReference,
     Node,

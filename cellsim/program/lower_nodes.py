@@ -34,8 +34,9 @@ from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
 from cellsim.program.ir import Expression, Kind
+from cellsim.program.lower_branches import LAZY_RULES, block_item
 from cellsim.program.lower_calls import Arguments, call_over_draws
-from cellsim.program.lower_functions import LAZY_RULES, RULES
+from cellsim.program.lower_functions import RULES
 from cellsim.program.lowered import (
     Block,
     Flagged,
@@ -434,17 +435,6 @@ def by_item(apply: Callable[[Lowered, Lowered], Lowered], left: Lowered, right: 
         for column in range(columns)
     )
     return Block(rows, columns, items)
-
-
-def block_item(block: Block, row: int, column: int) -> Lowered:
-    """The item at a place of a larger shape: repeated along a single row or column, else #N/A."""
-    if block.rows == 1:
-        row = 0
-    if block.columns == 1:
-        column = 0
-    if row >= block.rows or column >= block.columns:
-        return Known(ErrorValue.NA)
-    return block.items[row * block.columns + column]
 
 
 def known_from_value(value: Value) -> Lowered:

@@ -5,7 +5,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from cellsim.errors import FormulaSyntaxError
-from cellsim.formula.parser import FormulaCache, parse_formula
+from cellsim.formula.cache import FormulaCache
+from cellsim.formula.parser import parse_formula
 from cellsim.formula.tree import Binary, Call, CellReference, Invocation, RangeReference, Unary
 from cellsim.formula.unparse import unparse
 
