@@ -12,9 +12,11 @@ import numpy as np
 
 import cellsim.functions.library  # noqa: F401  (fills the registry)
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.borrowed import BorrowedFunction, find_borrowed
 from cellsim.functions.dispatch import LARGEST_ARRAY, item_at
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
+from cellsim.graph.slicing import affected_cells
 from cellsim.program.deep_stack import run_deeply
 from cellsim.program.interpret import (
     Frame,
@@ -100,6 +102,7 @@ class Calculation:
             self._values[title] = values
         for cell, value in (overrides or {}).items():
             self._values[cell.sheet][cell.row, cell.column] = value
+        self._changed: frozenset[CellRef] | None = None if overrides else frozenset()
         self._spills: dict[CellRef, Array] = {}
         self._areas: dict[RangeRef, Array] = {}
         self._ready: set[RangeRef] = set()
@@ -206,6 +209,16 @@ class Calculation:
         key = np.random.SeedSequence((self._seed, place, cell.row, cell.column))
         generator = np.random.Generator(np.random.Philox(key))
         return lambda: float(generator.random())
+
+    def borrowed(self, name: str, cell: CellRef) -> BorrowedFunction | None:
+        """A function outside the registry, for a cell that depends on an override.
+
+        Where nothing that a cell depends on has changed, its stored value is the better answer.
+        """
+        if self._changed is None:
+            everything = [formula.cell for formula in self._graph.all_formulas()]
+            self._changed = affected_cells(self._graph, self._overridden, everything)
+        return find_borrowed(name) if cell in self._changed else None
 
     def _is_done(self, cell: CellRef) -> bool:
         return (cell.row, cell.column) in self._values[cell.sheet]

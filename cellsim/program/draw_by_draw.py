@@ -12,6 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.borrowed import BorrowedFunction, find_borrowed
 from cellsim.functions.dispatch import item_at
 from cellsim.graph.build import Graph
 from cellsim.program.calculation import Calculation
@@ -86,6 +87,10 @@ class DrawGrid:
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers for a cell."""
         return self._base.stream_for(cell)
+
+    def borrowed(self, name: str, cell: CellRef) -> BorrowedFunction | None:  # noqa: ARG002
+        """A function outside the registry: what is evaluated here depends on an input."""
+        return find_borrowed(name)
 
 
 class ExpressionEvaluator:

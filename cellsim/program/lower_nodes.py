@@ -23,6 +23,7 @@ from cellsim.formula.tree import (
     TextLiteral,
     Unary,
 )
+from cellsim.functions.borrowed import find_borrowed
 from cellsim.functions.registry import (
     LIFTED,
     WHOLE_ARRAY,
@@ -344,7 +345,7 @@ class NodeLowering:
                 return self._let(node, whole)
             if self.scope is None and self.is_static(node):
                 return self.static_value(node, whole=whole)
-            raise UnlowerableError(f"{node.name} has no form over draws")
+            raise UnlowerableError(self._why_not_lowered(node))
         if self.scope is None and self.is_static(node):
             return self.static_value(node, whole=whole)
         arguments = self._arguments(node, function, whole)
@@ -356,6 +357,15 @@ class NodeLowering:
         if lifted:
             return self._call_by_item(node, function, arguments, lifted, whole)
         return self._call_with(node, function, arguments, whole)
+
+    def _why_not_lowered(self, node: Call) -> str:
+        """Why a call that is not in the registry is left to the reference evaluator."""
+        is_named = self.cells.graph.resolver.name(node.name, None, self.cell.sheet) is not None
+        if is_named or node.name in {"LAMBDA", "ISOMITTED"}:
+            return f"{node.name} has no form over draws"
+        if find_borrowed(node.name) is not None:
+            return f"{node.name} is evaluated by the formulas library"
+        return f"no function {node.name} is known here, so it gives #NAME?"
 
     def _arguments(self, node: Call, function: FunctionRecord, whole: bool) -> list[Lowered]:
         if not function.least <= len(node.arguments) <= function.most:
