@@ -16,7 +16,8 @@ import numpy.typing as npt
 
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
-from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
+from cellsim.program.cancellation import add_last
+from cellsim.program.comparisons import COMPARISONS, compare_over_draws
 from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, object_converter
 from cellsim.program.ir import Constant, Instruction, Op, Operand
 from cellsim.values import ErrorValue, encode_error
@@ -109,9 +110,11 @@ def _power(bound: _Bound) -> None:
     _put_errors(bound.out, bound.operands)
 
 
-def _cancel(bound: _Bound) -> None:
-    settle_cancellation(bound.operands[0], bound.operands[1], bound.out)
-    _put_errors(bound.out, bound.operands[:1])
+def _last(bound: _Bound) -> None:
+    left, right = bound.operands
+    add_last(bound.instruction.op, left, right, bound.out)
+    bound.out[~np.isfinite(bound.out)] = _NUM
+    _put_errors(bound.out, bound.operands)
 
 
 def _first_errors(operands: Sequence[AnyArray], size: int) -> AnyArray | None:
@@ -221,7 +224,8 @@ _STEPS: dict[Op, Callable[[_Bound], None]] = {
     ),
     **dict.fromkeys(COMPARISONS, _compare),
     Op.POWER: _power,
-    Op.CANCEL: _cancel,
+    Op.ADD_LAST: _last,
+    Op.SUBTRACT_LAST: _last,
     Op.AND: _connect,
     Op.OR: _connect,
     Op.NOT: _connect,

@@ -19,7 +19,8 @@ from cellsim.functions.dispatch import call_function
 from cellsim.functions.registry import Stack, find_function, find_over_draws
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
-from cellsim.program.comparisons import compare_over_draws, settle_cancellation
+from cellsim.program.cancellation import add_last
+from cellsim.program.comparisons import compare_over_draws
 from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
 from cellsim.program.interpret import Frame
 from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
@@ -137,8 +138,8 @@ def _compare(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:
     return lambda operands, out: partial(compare_over_draws, op, operands[0], operands[1], out)
 
 
-def _cancel(operands: list[AnyArray], out: AnyArray) -> Step:
-    return partial(settle_cancellation, operands[0], operands[1], out)
+def _last(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:
+    return lambda operands, out: partial(add_last, op, operands[0], operands[1], out)
 
 
 _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
@@ -151,7 +152,8 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
     Op.IS_NA: _none_fails,
     Op.IS_TRUE: _is_true,
     Op.AS_NUMBER: _copy,
-    Op.CANCEL: _cancel,
+    Op.ADD_LAST: _last(Op.ADD_LAST),
+    Op.SUBTRACT_LAST: _last(Op.SUBTRACT_LAST),
     **{
         op: _compare(op)
         for op in (Op.EQUAL, Op.NOT_EQUAL, Op.LESS, Op.LESS_EQUAL, Op.GREATER, Op.GREATER_EQUAL)

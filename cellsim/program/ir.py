@@ -45,7 +45,8 @@ class Op(enum.Enum):
     SQRT = "sqrt"
     MINIMUM = "minimum"
     MAXIMUM = "maximum"
-    CANCEL = "cancel"  # [sum or difference, its left operand] zero where the two operands cancel
+    ADD_LAST = "add last"  # as `add`, a formula's last step: zero where the operands cancel
+    SUBTRACT_LAST = "subtract last"  # as `subtract`, likewise
     EQUAL = "equal"  # the comparisons give flags
     NOT_EQUAL = "not equal"
     LESS = "less"

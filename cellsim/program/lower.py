@@ -18,6 +18,7 @@ from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
 from cellsim.graph.slicing import affected_cells
 from cellsim.program.calculation import Calculation
+from cellsim.program.cancellation import relax_cancellation
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import Frame
 from cellsim.program.ir import (
@@ -132,8 +133,9 @@ class _ModelLowering:
     def compile(self, outputs: Sequence[Target]) -> Compiled:
         """Lower the outputs and all that they need."""
         results = tuple(self._output(target) for target in outputs)
-        needed = {operand.number for operand, _ in results if isinstance(operand, Register)}
-        instructions = eliminate_dead_code(self.builder.instructions, needed)
+        given_out = {operand.number for operand, _ in results if isinstance(operand, Register)}
+        instructions = eliminate_dead_code(self.builder.instructions, set(given_out))
+        instructions = relax_cancellation(instructions, given_out)
         program = Program(self.builder.inputs, instructions, results, self.builder.registers)
         return Compiled(program, self._affected, tuple(self._loops))
 
@@ -152,7 +154,7 @@ class _ModelLowering:
         if isinstance(value, Block):
             value = value.items[0]
         if isinstance(value, Numeric):
-            return self.emitter.settled(value), Kind.NUMBER
+            return value.operand, Kind.NUMBER
         return self.emitter.number(value), Kind.NUMBER
 
     def _recalculated(self, target: Target, reason: str) -> Operand:
@@ -410,7 +412,7 @@ class _ModelLowering:
         if isinstance(value, Numeric) or (
             isinstance(value, Known) and isinstance(value.value, float)
         ):
-            return self.emitter.exact_number(value)
+            return self.emitter.number(value)
         raise UnlowerableError("a circular chain through text or logicals")
 
     def _start_value(self, cell: CellRef) -> float:

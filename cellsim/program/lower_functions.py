@@ -264,12 +264,10 @@ def _as_number(given: Arguments) -> Lowered | None:
     return value if isinstance(value, Numeric) else None
 
 
-def _operation(op: Op, exact: bool = False) -> Rule:
+def _operation(op: Op) -> Rule:
     def rule(given: Arguments) -> Lowered | None:
         emitter = given.emitter
-        operand = (
-            emitter.exact_number(given.values[0]) if exact else emitter.number(given.values[0])
-        )
+        operand = emitter.number(given.values[0])
         if isinstance(operand, Constant):
             return None
         return Numeric(emitter.builder.emit(op, operand))
@@ -300,9 +298,9 @@ RULES: dict[str, Rule] = {
     "ISBLANK": _never_for_numbers,
     "N": _as_number,
     "ABS": _operation(Op.ABSOLUTE),
-    "SQRT": _operation(Op.SQRT, exact=True),
+    "SQRT": _operation(Op.SQRT),
     "EXP": _operation(Op.EXP),
-    "LN": _operation(Op.LN, exact=True),
+    "LN": _operation(Op.LN),
     "POWER": _power,
     "ROW": of_references,
     "ROWS": of_references,

@@ -115,10 +115,9 @@ class NodeLowering:
         if isinstance(tree, Binary) and tree.operator in {"+", "-"}:
             left = self.operand(tree.left, whole=whole)
             right = self.operand(tree.right, whole=whole)
-            result = self._binary_values(tree, left, right)
-            if isinstance(result, Numeric) and not isinstance(left, (Block, Varied)):
-                return Numeric(result.operand, self.emitter.number(left))
-            return result
+            if isinstance(left, (Block, Varied)) or isinstance(right, Block):
+                return self._binary_values(tree, left, right)
+            return self.emitter.last_arithmetic(tree.operator, left, right)
         return self.lower(tree, whole=whole)
 
     def lower(self, node: Node, *, whole: bool) -> Lowered:
@@ -238,7 +237,7 @@ class NodeLowering:
         if isinstance(value, Varied):
             return value.operand, Kind.OBJECT
         if isinstance(value, Numeric):
-            return self.emitter.settled(value), Kind.NUMBER
+            return value.operand, Kind.NUMBER
         raise UnlowerableError("it reads a cell that is text in some draws")
 
     # The kinds of node, one method each.
