@@ -69,6 +69,8 @@ class Op(enum.Enum):
     TO_NUMBER = "to number"  # [object] coerced as an operator does
     LOOP = "loop"  # a circular chain; `detail` is a Loop
 
+    __hash__ = object.__hash__  # members are single objects; the default hashes their names
+
 
 FLAG_OPS = frozenset(
     {
