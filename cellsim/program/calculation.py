@@ -233,14 +233,10 @@ class Calculation:
         if self._active:
             self._calculate(formula)
             return
-        while not self._is_done(formula.cell):
-            try:
-                try:
-                    self._calculate_in_order(formula)
-                except RecursionError:
-                    run_deeply(lambda: self._calculate_in_order(formula))
-            except _CycleFoundError as found:
-                self._solve_cycle(found.cells)
+        try:
+            self._calculate_in_order(formula)
+        except RecursionError:
+            run_deeply(lambda: self._calculate_in_order(formula))
 
     def _calculate_in_order(self, start: Formula) -> None:
         waiting: dict[CellRef, None] = {start.cell: None}
@@ -256,10 +252,16 @@ class Calculation:
                     stack.append((precedent, self._open_precedents(precedent)))
                     break
             else:
+                if not self._is_done(formula.cell):
+                    try:
+                        self._calculate(formula)
+                    except _CycleFoundError as found:
+                        self._solve_cycle(found.cells)
+                        if not self._is_done(formula.cell):  # it only feeds on the cycle
+                            stack[-1] = (formula, self._open_precedents(formula))
+                            continue
                 stack.pop()
                 del waiting[formula.cell]
-                if not self._is_done(formula.cell):
-                    self._calculate(formula)
 
     def _open_precedents(self, formula: Formula) -> Iterator[CellRef]:
         for area in self._graph.precedents(formula):
@@ -373,7 +375,7 @@ class Calculation:
         Starts from zero, as a spreadsheet program does with a new formula; where that ends in
         errors, from the stored values, which a program would have kept.
         """
-        cells = strongly_connected(self._graph, chain[0])
+        cells = strongly_connected(self._graph, chain[0], self._is_done)
         if not set(chain) <= set(cells):
             cells = (*cells, *(cell for cell in chain if cell not in set(cells)))
         formulas = [formula for cell in cells if (formula := self._graph.formula(cell)) is not None]

@@ -253,13 +253,7 @@ class _ModelLowering:
         if formula is None:
             return Known(self.base.cell_value(*cell))
         while cell not in self._lowered:
-            outermost = not self._active
-            try:
-                self._lower_in_order(formula)
-            except _CycleFoundError as found_cycle:
-                if not outermost:
-                    raise
-                self._lower_cycle(found_cycle.cell)
+            self._lower_in_order(formula)
         return self._lowered[cell]
 
     # Order.
@@ -278,10 +272,18 @@ class _ModelLowering:
                     stack.append((precedent, self._open_precedents(precedent)))
                     break
             else:
+                if formula.cell not in self._lowered:
+                    try:
+                        self._lower_formula(formula)
+                    except _CycleFoundError as found:
+                        if self._active:
+                            raise
+                        self._lower_cycle(found.cell)
+                        if formula.cell not in self._lowered:  # it only feeds on the chain
+                            stack[-1] = (formula, self._open_precedents(formula))
+                            continue
                 stack.pop()
                 del waiting[formula.cell]
-                if formula.cell not in self._lowered:
-                    self._lower_formula(formula)
 
     def _open_precedents(self, formula: Formula) -> Iterator[CellRef]:
         for area in self.graph.precedents(formula):
@@ -339,7 +341,7 @@ class _ModelLowering:
     # Cycles.
 
     def _lower_cycle(self, start: CellRef) -> None:
-        chain = [cell for cell in strongly_connected(self.graph, start) if cell in self._affected]
+        chain = strongly_connected(self.graph, start, self._is_known)
         if not self._iterate:
             raise CircularReferenceError(
                 Problem(
@@ -360,6 +362,10 @@ class _ModelLowering:
                     self.cell(precedent)
         self._loops.append(tuple(chain))
         self._emit_loop(formulas, inside)
+
+    def _is_known(self, cell: CellRef) -> bool:
+        """Whether a cell does not vary or has been lowered."""
+        return cell in self._lowered or cell not in self._affected
 
     def _emit_loop(self, formulas: list[Formula], inside: set[CellRef]) -> None:
         feedback = self._read_early(formulas, inside)

@@ -252,4 +252,5 @@ _PREPARATIONS: dict[ArgumentKind, Callable[[Arguments, int, Lowered], Operand | 
     ArgumentKind.ARRAY_VALUES: _stack_argument,
     ArgumentKind.MATRIX: _stack_argument,
     ArgumentKind.OPERAND: _stack_argument,
+    ArgumentKind.ARRAY_OPERAND: _stack_argument,
 }
