@@ -18,7 +18,13 @@ from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.cancellation import add_last
 from cellsim.program.comparisons import COMPARISONS, compare_over_draws
-from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, object_converter
+from cellsim.program.fast import (
+    UFUNCS,
+    expression_runner,
+    kernel_runner,
+    merge_values,
+    object_converter,
+)
 from cellsim.program.ir import Constant, Instruction, Op, Operand
 from cellsim.values import ErrorValue, encode_error
 
@@ -52,6 +58,10 @@ def careful_step(
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)
         return lambda: _interpret(bound, evaluate)
+    if op is Op.MERGE:
+        return lambda: merge_values(
+            instruction.detail, operands, bound.errors_of_flag(0), bound.out
+        )
     if op is Op.TO_NUMBER:
         return object_converter(operands[0], out, date_1904=base.date_1904)
     step = _STEPS[op]

@@ -122,7 +122,7 @@ class ExpressionEvaluator:
 
     def _value(self, columns: Sequence[npt.NDArray[np.generic] | float], draw: int) -> Scalar:
         varying = {
-            cell: _scalar(column[draw] if isinstance(column, np.ndarray) else column, kind)
+            cell: scalar_of(column[draw] if isinstance(column, np.ndarray) else column, kind)
             for cell, column, kind in zip(self._cells, columns, self._kinds, strict=True)
         }
         expression = self._expression
@@ -147,7 +147,8 @@ def _evaluate(expression: Expression, frame: Frame) -> Scalar:
     return value
 
 
-def _scalar(content: object, kind: Kind) -> Scalar:
+def scalar_of(content: object, kind: Kind) -> Scalar:
+    """A register's content in one draw as a value."""
     if kind is Kind.OBJECT:
         return content  # type: ignore[return-value]
     number = float(content)  # type: ignore[arg-type]

@@ -34,12 +34,13 @@ from cellsim.functions.registry import (
 from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
-from cellsim.program.ir import Expression, Kind
+from cellsim.program.ir import Expression, Kind, Merge, Operand, constant
 from cellsim.program.lower_branches import LAZY_RULES, block_item
 from cellsim.program.lower_calls import Arguments, call_over_draws
 from cellsim.program.lower_functions import RULES
 from cellsim.program.lowered import (
     Block,
+    Choice,
     Flagged,
     Known,
     Lowered,
@@ -47,7 +48,7 @@ from cellsim.program.lowered import (
     UnlowerableError,
     Varied,
 )
-from cellsim.values import Array, ErrorValue, Reference, Value
+from cellsim.values import Array, ErrorValue, LambdaValue, Reference, Scalar, Value
 
 _LARGEST_BLOCK = 2_000_000
 _MOST_NESTED_NAMES = 64
@@ -238,7 +239,33 @@ class NodeLowering:
             return value.operand, Kind.OBJECT
         if isinstance(value, Numeric):
             return value.operand, Kind.NUMBER
-        raise UnlowerableError("it reads a cell that is text in some draws")
+        if isinstance(value, Choice):
+            return self._merged(value), Kind.OBJECT
+        raise UnlowerableError("it reads a cell that is an array")
+
+    def _merged(self, value: Choice) -> Operand:
+        """The register of objects that holds whichever value a choice has."""
+        operands: list[Operand] = []
+        kinds: list[Kind | None] = []
+        known: list[tuple[type, Scalar]] = []
+        for branch in (value.then, value.otherwise):
+            if isinstance(branch, Known):
+                content = branch.value
+                if isinstance(content, (Reference, LambdaValue)):
+                    raise UnlowerableError("it reads a cell that is a reference")
+                operands.append(constant(0.0))
+                kinds.append(None)
+                known.append((type(content), content))
+                continue
+            if isinstance(branch, Flagged):  # its number, so that it can be an error
+                operand, kind = self.emitter.number(branch), Kind.FLAG
+            else:
+                operand, kind = self._readable(branch)
+            operands.append(operand)
+            kinds.append(kind)
+            known.append((type(None), None))
+        merge = Merge((kinds[0], kinds[1]), (known[0], known[1]))
+        return self.emitter.builder.emit_merge((value.flag, operands[0], operands[1]), merge)
 
     # The kinds of node, one method each.
 
