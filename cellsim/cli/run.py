@@ -114,13 +114,13 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
         kept = values[np.isfinite(values)]
         name = f"{record.name} ({record.unit})" if record.unit else record.name
         base = (
-            shown_number(record.base)
+            shown_number(record.base, record.unit)
             if isinstance(record.base, float)
             else shown_value(record.base)
         )
-        mean = shown_number(float(kept.mean())) if len(kept) else "-"
+        mean = shown_number(float(kept.mean()), record.unit) if len(kept) else "-"
         spread = [
-            shown_number(float(quantiles[record.name].iloc[k]))
+            shown_number(float(quantiles[record.name].iloc[k]), record.unit)
             for k in range(len(SHOWN_PROBABILITIES))
         ]
         rows.append((name, base, mean, *spread, f"{len(values) - len(kept):,}"))
@@ -130,9 +130,10 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
         for threshold in record.thresholds:
             if len(kept):
                 above = float((kept > threshold.value).mean())
-                typer.echo(
-                    f"{record.name} above {threshold.text} ({shown_number(threshold.value)}): {above:.2%} of draws"
-                )
+                value = shown_number(threshold.value, record.unit)
+                value += " %" if record.unit == "%" else ""
+                source = f" ({threshold.text})" if threshold.text.startswith("=") else ""
+                typer.echo(f"{record.name} above {value}{source}: {above:.2%} of draws")
     check = records.check
     typer.echo(
         f"model check: {check.agreeing:,} of {check.compared:,} formulas agree with their stored values"
