@@ -10,7 +10,7 @@ from __future__ import annotations
 import datetime as dt
 
 MILLION = "EUR million"
-AMOUNT = "#,##0.0;[Red]-#,##0.0;-"
+AMOUNT = "#,##0.0;-#,##0.0;-"
 DATE = "yyyy-mm-dd"
 WHOLE = "0"
 SHARE = "0.0%"
