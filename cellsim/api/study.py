@@ -9,6 +9,7 @@ import platform
 import time
 from collections.abc import Callable, Mapping, Sequence
 from functools import cached_property
+from importlib import metadata
 from pathlib import Path
 from typing import TypeVar
 
@@ -42,6 +43,10 @@ FloatArray = npt.NDArray[np.float64]
 T = TypeVar("T")
 Progress = Callable[[str, int, int], None]
 """Called with the stage, the work done in it and its whole."""
+
+
+_RECORDED_LIBRARIES = ("numpy", "scipy", "openpyxl", "xlsxwriter")
+"""Libraries whose version may change a figure or the results workbook."""
 
 
 class Study:
@@ -316,7 +321,7 @@ class Study:
             versions={
                 "cellsim": version.VERSION,
                 "Python": platform.python_version(),
-                "NumPy": np.__version__,
+                **{name: metadata.version(name) for name in _RECORDED_LIBRARIES},
             },
             engine={
                 "evaluator": "NumPy over blocks of draws",

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
 from cellsim.cells import CellRef
 from cellsim.formula.unparse import unparse
@@ -11,7 +11,7 @@ from cellsim.functions.catalogue.unsupported import unsupported_reason
 from cellsim.functions.registry import find_function
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.slicing import affected_cells
-from cellsim.program.calculation import Calculation
+from cellsim.program.calculation import Calculation, Cycle
 from cellsim.program.interpret import UNKNOWN_LINK
 from cellsim.results import Disagreement, ModelCheck
 from cellsim.values import Scalar
@@ -137,11 +137,25 @@ def _notes(graph: Graph, calculation: Calculation) -> Iterable[str]:
         yield "The workbook is set to calculate with numbers as displayed; full precision is used here."
     for problem in graph.problems:
         yield f"A formula could not be read, its stored value is used: {problem}"
-    for cycle in calculation.findings.cycles:
-        first = cycle.cells[0]
-        state = "settled" if cycle.settled else "had not settled"
-        allowed = "" if workbook.iteration.enabled else ", although iterative calculation is off"
-        yield (
-            f"{len(cycle.cells)} cells from {first} on depend on each other in a circle and were solved by "
-            f"iteration, which {state} after {cycle.passes} passes{allowed}."
-        )
+    allowed = "" if workbook.iteration.enabled else ", although iterative calculation is off"
+    for settled in (True, False):
+        cycles = [c for c in calculation.findings.cycles if c.settled == settled]
+        if cycles:
+            yield f"{_circles(cycles)}{allowed}."
+
+
+def _circles(cycles: Sequence[Cycle]) -> str:
+    """What is said of circular chains that all settled, or all did not."""
+    first = cycles[0].cells[0]
+    passes = max(cycle.passes for cycle in cycles)
+    most = "" if len(cycles) == 1 else "at most "
+    state = "settled after" if cycles[0].settled else "had not settled after"
+    how = f"iteration, which {state} {most}{passes} pass{'es' if passes != 1 else ''}"
+    if len(cycles) == 1:
+        count = len(cycles[0].cells)
+        return f"{count} cells from {first} on depend on each other in a circle; solved by {how}"
+    longest = max(len(cycle.cells) for cycle in cycles)
+    return (
+        f"{len(cycles):,} groups of up to {longest} cells, the first from {first} on, depend on each other in a "
+        f"circle; solved by {how}"
+    )

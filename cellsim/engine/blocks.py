@@ -21,9 +21,14 @@ Progress = Callable[[int], None]
 _STEP = 512
 """Blocks are multiples of this, so that every draw is treated alike by vector instructions."""
 _SMALLEST_BLOCK = 512
-_LARGEST_BLOCK = 16_384
-_BUFFER_BYTES = 40 * 2**20
+_LARGEST_BLOCK = 32_768
+_BUFFER_BYTES = 64 * 2**20
 """What the buffers of one thread may take; larger ones fall out of the processor's caches."""
+_FEWEST_FOR_THREADS = 8_192
+"""With smaller blocks, threads wait longer for each other than their steps take."""
+_ONE_THREAD_BLOCK = 4_096
+_ONE_THREAD_BYTES = 256 * 2**20
+"""Where one thread works alone its blocks may be larger: fewer steps outweigh the caches."""
 
 
 class BlockEngine:
@@ -31,7 +36,7 @@ class BlockEngine:
 
     Attributes:
         threads: How many threads work.
-        block: Draws in a block.
+        block: The most draws in a block.
     """
 
     def __init__(
@@ -44,8 +49,9 @@ class BlockEngine:
     ) -> None:
         self._program = program
         self._base = base
-        self.threads = max(1, threads if threads is not None else available_cores())
         self.block = block_size(program) if block is None else rounded_block(block)
+        useful = available_cores() if self.block >= _FEWEST_FOR_THREADS else 1
+        self.threads = max(1, threads if threads is not None else useful)
         self._idle: list[BlockEvaluator] = []
         self._lock = threading.Lock()
         self.unsettled = 0
@@ -63,16 +69,19 @@ class BlockEngine:
         """
         count = len(draws[0])
         out = np.empty((len(self._program.outputs), count))
-        starts = iter(range(0, count, self.block))
-        workers = min(self.threads, -(-count // self.block))
+        block = self._block_for(count)
+        starts = iter(range(0, count, block))
+        workers = min(self.threads, -(-count // block))
+        self._idle = [evaluator for evaluator in self._idle if evaluator.block == block]
         stop = threading.Event()
         self.unsettled = 0
         if workers <= 1:
-            self._work(draws, out, starts, stop, progress)
+            self._work(draws, out, starts, block, stop, progress)
             return out
         with ThreadPoolExecutor(workers) as pool:
             futures = [
-                pool.submit(self._work, draws, out, starts, stop, progress) for _ in range(workers)
+                pool.submit(self._work, draws, out, starts, block, stop, progress)
+                for _ in range(workers)
             ]
             try:
                 wait(futures, return_when=FIRST_EXCEPTION)
@@ -87,17 +96,18 @@ class BlockEngine:
         draws: Sequence[FloatArray],
         out: FloatArray,
         starts: Iterator[int],
+        block: int,
         stop: threading.Event,
         progress: Progress | None,
     ) -> None:
-        evaluator = self._take_evaluator()
+        evaluator = self._take_evaluator(block)
         try:
             while not stop.is_set():
                 with self._lock:
                     start = next(starts, None)
                 if start is None:
                     break
-                end = min(start + self.block, out.shape[1])
+                end = min(start + block, out.shape[1])
                 evaluator.evaluate([values[start:end] for values in draws], out[:, start:end])
                 if progress is not None:
                     with self._lock:
@@ -108,11 +118,18 @@ class BlockEngine:
                 evaluator.unsettled = 0
                 self._idle.append(evaluator)
 
-    def _take_evaluator(self) -> BlockEvaluator:
+    def _block_for(self, count: int) -> int:
+        """A block such that threads have equal shares; a last block's empty places cost time."""
+        pieces = -(-count // self.block)
+        if self.threads > 1 and (pieces > 1 or count >= 2 * _FEWEST_FOR_THREADS):
+            pieces = -(-pieces // self.threads) * self.threads
+        return rounded_block(-(-count // pieces))
+
+    def _take_evaluator(self, block: int) -> BlockEvaluator:
         with self._lock:
             if self._idle:
                 return self._idle.pop()
-        return BlockEvaluator(self._program, self._base, self.block)
+        return BlockEvaluator(self._program, self._base, block)
 
 
 def available_cores() -> int:
@@ -128,6 +145,8 @@ def rounded_block(draws: int) -> int:
 
 def block_size(program: Program) -> int:
     """Draws in a block such that all buffers stay within their share of memory."""
-    rows = sum(plan_buffers(program).counts.values()) or 1
-    most = _BUFFER_BYTES // (rows * 8)
-    return max(_SMALLEST_BLOCK, min(_LARGEST_BLOCK, most // _STEP * _STEP))
+    draw_bytes = 8 * (sum(plan_buffers(program).counts.values()) or 1)
+    block = min(_LARGEST_BLOCK, _BUFFER_BYTES // draw_bytes)
+    if block < _FEWEST_FOR_THREADS:
+        block = min(_ONE_THREAD_BLOCK, _ONE_THREAD_BYTES // draw_bytes)
+    return max(_SMALLEST_BLOCK, block // _STEP * _STEP)

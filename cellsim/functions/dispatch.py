@@ -202,6 +202,7 @@ _COERCIONS: dict[ArgumentKind, Callable[[Any, Context], Any]] = {
     ArgumentKind.ARRAY_VALUES: _values,
     ArgumentKind.MATRIX: _matrix,
     ArgumentKind.OPERAND: lambda value, _context: value,
+    ArgumentKind.ARRAY_OPERAND: lambda value, _context: value,
     ArgumentKind.CELL_AREA: _cell_area,
     ArgumentKind.LAZY: lambda value, _context: value,
     ArgumentKind.FUNCTION: _function,

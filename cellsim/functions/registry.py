@@ -14,6 +14,7 @@ coerced before the kernel sees it, so that a kernel holds nothing but its own ar
 | `ArrayValues` | Array, and operators inside work on whole ranges | as `Values` |
 | `Matrix` | NumPy array (rows, columns) of numbers, else #VALUE! | whole, operators likewise |
 | `Operand` | scalar, error, Array or Reference, uncoerced | as they are |
+| `ArrayOperand` | as `Operand`, and operators inside work on whole ranges | as they are |
 | `CellArea` | Reference, else #VALUE! | as they are |
 | `Lazy` | a function without arguments that gives the Value | evaluated when called |
 | `Function` | LambdaValue, else #VALUE! | - |
@@ -54,6 +55,7 @@ class ArgumentKind(enum.Enum):
     ARRAY_VALUES = "array values"
     MATRIX = "matrix"
     OPERAND = "operand"
+    ARRAY_OPERAND = "array operand"
     CELL_AREA = "cell area"
     LAZY = "lazy"
     FUNCTION = "function"
@@ -71,7 +73,9 @@ LIFTED = frozenset(
 )
 """Kinds for which arrays are taken element by element."""
 
-WHOLE_ARRAY = frozenset({ArgumentKind.ARRAY_VALUES, ArgumentKind.MATRIX})
+WHOLE_ARRAY = frozenset(
+    {ArgumentKind.ARRAY_VALUES, ArgumentKind.ARRAY_OPERAND, ArgumentKind.MATRIX}
+)
 """Kinds inside which operators and functions work on whole ranges even in a plain formula."""
 
 Number = Annotated[float, ArgumentKind.NUMBER]
@@ -85,6 +89,7 @@ Values = Annotated[Array, ArgumentKind.VALUES]
 ArrayValues = Annotated[Array, ArgumentKind.ARRAY_VALUES]
 Matrix = Annotated[npt.NDArray[np.float64], ArgumentKind.MATRIX]
 Operand = Annotated[Value, ArgumentKind.OPERAND]
+ArrayOperand = Annotated[Value, ArgumentKind.ARRAY_OPERAND]
 CellArea = Annotated[Reference, ArgumentKind.CELL_AREA]
 Lazy = Annotated[Callable[[], Value], ArgumentKind.LAZY]
 Function = Annotated[LambdaValue, ArgumentKind.FUNCTION]

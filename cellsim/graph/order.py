@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 
 from cellsim.cells import CellRef
 from cellsim.graph.build import Graph
@@ -17,10 +17,17 @@ def precedent_cells(graph: Graph, cell: CellRef) -> Iterator[CellRef]:
         yield from graph.formula_cells_in(graph.resolver.clip(area))
 
 
-def strongly_connected(graph: Graph, start: CellRef) -> tuple[CellRef, ...]:
+def strongly_connected(
+    graph: Graph, start: CellRef, is_known: Callable[[CellRef], bool]
+) -> tuple[CellRef, ...]:
     """All cells that both feed a cell and are fed by it, itself included, feeders first.
 
     Tarjan's algorithm (1972), without recursion, from the one cell.
+
+    Args:
+        graph: The formulas.
+        start: The cell.
+        is_known: Whether a cell's value is known, so that nothing is to be looked for behind it.
     """
     index: dict[CellRef, int] = {start: 0}
     low: dict[CellRef, int] = {start: 0}
@@ -31,6 +38,8 @@ def strongly_connected(graph: Graph, start: CellRef) -> tuple[CellRef, ...]:
     while work:
         cell, precedents = work[-1]
         for precedent in precedents:
+            if is_known(precedent):
+                continue
             if precedent not in index:
                 index[precedent] = low[precedent] = len(index)
                 component.append(precedent)

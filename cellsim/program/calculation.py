@@ -12,9 +12,11 @@ import numpy as np
 
 import cellsim.functions.library  # noqa: F401  (fills the registry)
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.borrowed import BorrowedFunction, find_borrowed
 from cellsim.functions.dispatch import LARGEST_ARRAY, item_at
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
+from cellsim.graph.slicing import affected_cells
 from cellsim.program.deep_stack import run_deeply
 from cellsim.program.interpret import (
     Frame,
@@ -100,6 +102,7 @@ class Calculation:
             self._values[title] = values
         for cell, value in (overrides or {}).items():
             self._values[cell.sheet][cell.row, cell.column] = value
+        self._changed: frozenset[CellRef] | None = None if overrides else frozenset()
         self._spills: dict[CellRef, Array] = {}
         self._areas: dict[RangeRef, Array] = {}
         self._ready: set[RangeRef] = set()
@@ -207,6 +210,16 @@ class Calculation:
         generator = np.random.Generator(np.random.Philox(key))
         return lambda: float(generator.random())
 
+    def borrowed(self, name: str, cell: CellRef) -> BorrowedFunction | None:
+        """A function outside the registry, for a cell that depends on an override.
+
+        Where nothing that a cell depends on has changed, its stored value is the better answer.
+        """
+        if self._changed is None:
+            everything = [formula.cell for formula in self._graph.all_formulas()]
+            self._changed = affected_cells(self._graph, self._overridden, everything)
+        return find_borrowed(name) if cell in self._changed else None
+
     def _is_done(self, cell: CellRef) -> bool:
         return (cell.row, cell.column) in self._values[cell.sheet]
 
@@ -220,14 +233,10 @@ class Calculation:
         if self._active:
             self._calculate(formula)
             return
-        while not self._is_done(formula.cell):
-            try:
-                try:
-                    self._calculate_in_order(formula)
-                except RecursionError:
-                    run_deeply(lambda: self._calculate_in_order(formula))
-            except _CycleFoundError as found:
-                self._solve_cycle(found.cells)
+        try:
+            self._calculate_in_order(formula)
+        except RecursionError:
+            run_deeply(lambda: self._calculate_in_order(formula))
 
     def _calculate_in_order(self, start: Formula) -> None:
         waiting: dict[CellRef, None] = {start.cell: None}
@@ -243,10 +252,16 @@ class Calculation:
                     stack.append((precedent, self._open_precedents(precedent)))
                     break
             else:
+                if not self._is_done(formula.cell):
+                    try:
+                        self._calculate(formula)
+                    except _CycleFoundError as found:
+                        self._solve_cycle(found.cells)
+                        if not self._is_done(formula.cell):  # it only feeds on the cycle
+                            stack[-1] = (formula, self._open_precedents(formula))
+                            continue
                 stack.pop()
                 del waiting[formula.cell]
-                if not self._is_done(formula.cell):
-                    self._calculate(formula)
 
     def _open_precedents(self, formula: Formula) -> Iterator[CellRef]:
         for area in self._graph.precedents(formula):
@@ -360,7 +375,7 @@ class Calculation:
         Starts from zero, as a spreadsheet program does with a new formula; where that ends in
         errors, from the stored values, which a program would have kept.
         """
-        cells = strongly_connected(self._graph, chain[0])
+        cells = strongly_connected(self._graph, chain[0], self._is_done)
         if not set(chain) <= set(cells):
             cells = (*cells, *(cell for cell in chain if cell not in set(cells)))
         formulas = [formula for cell in cells if (formula := self._graph.formula(cell)) is not None]

@@ -16,8 +16,15 @@ import numpy.typing as npt
 
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
-from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
-from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, object_converter
+from cellsim.program.cancellation import add_last
+from cellsim.program.comparisons import COMPARISONS, compare_over_draws
+from cellsim.program.fast import (
+    UFUNCS,
+    expression_runner,
+    kernel_runner,
+    merge_values,
+    object_converter,
+)
 from cellsim.program.ir import Constant, Instruction, Op, Operand
 from cellsim.values import ErrorValue, encode_error
 
@@ -51,6 +58,10 @@ def careful_step(
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)
         return lambda: _interpret(bound, evaluate)
+    if op is Op.MERGE:
+        return lambda: merge_values(
+            instruction.detail, operands, bound.errors_of_flag(0), bound.out
+        )
     if op is Op.TO_NUMBER:
         return object_converter(operands[0], out, date_1904=base.date_1904)
     step = _STEPS[op]
@@ -109,9 +120,11 @@ def _power(bound: _Bound) -> None:
     _put_errors(bound.out, bound.operands)
 
 
-def _cancel(bound: _Bound) -> None:
-    settle_cancellation(bound.operands[0], bound.operands[1], bound.out)
-    _put_errors(bound.out, bound.operands[:1])
+def _last(bound: _Bound) -> None:
+    left, right = bound.operands
+    add_last(bound.instruction.op, left, right, bound.out)
+    bound.out[~np.isfinite(bound.out)] = _NUM
+    _put_errors(bound.out, bound.operands)
 
 
 def _first_errors(operands: Sequence[AnyArray], size: int) -> AnyArray | None:
@@ -221,7 +234,8 @@ _STEPS: dict[Op, Callable[[_Bound], None]] = {
     ),
     **dict.fromkeys(COMPARISONS, _compare),
     Op.POWER: _power,
-    Op.CANCEL: _cancel,
+    Op.ADD_LAST: _last,
+    Op.SUBTRACT_LAST: _last,
     Op.AND: _connect,
     Op.OR: _connect,
     Op.NOT: _connect,

@@ -1,4 +1,4 @@
-"""Comparisons and cancellation over draws, by the same rules as on single values."""
+"""Comparisons over draws, by the same rules as on single values."""
 
 from __future__ import annotations
 
@@ -8,7 +8,6 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.functions.comparison import compare
-from cellsim.functions.operators import CANCELLATION
 from cellsim.program.ir import Op
 
 AnyArray = npt.NDArray[Any]
@@ -50,17 +49,3 @@ def compare_over_draws(op: Op, left: AnyArray, right: AnyArray, out: AnyArray) -
 
 def _is_zero(array: AnyArray) -> bool:
     return not array.ndim and bool(array == 0)
-
-
-def settle_cancellation(result: AnyArray, left: AnyArray, out: AnyArray) -> None:
-    """Sums or differences, zero where they are tiny beside their left operand.
-
-    Args:
-        result: The sums or differences, shape (draws,).
-        left: Their left operands, shape (draws,) or ().
-        out: Where the settled values go.
-    """
-    np.copyto(out, result)
-    tiny = np.absolute(result) <= np.absolute(left) * CANCELLATION
-    if tiny.any():
-        out[tiny] = 0.0

@@ -12,6 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.borrowed import BorrowedFunction, find_borrowed
 from cellsim.functions.dispatch import item_at
 from cellsim.graph.build import Graph
 from cellsim.program.calculation import Calculation
@@ -87,6 +88,10 @@ class DrawGrid:
         """A fixed stream of random numbers for a cell."""
         return self._base.stream_for(cell)
 
+    def borrowed(self, name: str, cell: CellRef) -> BorrowedFunction | None:  # noqa: ARG002
+        """A function outside the registry: what is evaluated here depends on an input."""
+        return find_borrowed(name)
+
 
 class ExpressionEvaluator:
     """Evaluates one expression for each draw of a block."""
@@ -117,7 +122,7 @@ class ExpressionEvaluator:
 
     def _value(self, columns: Sequence[npt.NDArray[np.generic] | float], draw: int) -> Scalar:
         varying = {
-            cell: _scalar(column[draw] if isinstance(column, np.ndarray) else column, kind)
+            cell: scalar_of(column[draw] if isinstance(column, np.ndarray) else column, kind)
             for cell, column, kind in zip(self._cells, columns, self._kinds, strict=True)
         }
         expression = self._expression
@@ -142,7 +147,8 @@ def _evaluate(expression: Expression, frame: Frame) -> Scalar:
     return value
 
 
-def _scalar(content: object, kind: Kind) -> Scalar:
+def scalar_of(content: object, kind: Kind) -> Scalar:
+    """A register's content in one draw as a value."""
     if kind is Kind.OBJECT:
         return content  # type: ignore[return-value]
     number = float(content)  # type: ignore[arg-type]

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 from cellsim.functions.coercion import to_logical, to_number
-from cellsim.functions.operators import binary_scalar
+from cellsim.functions.operators import binary_scalar, cancels
 from cellsim.program.ir import Builder, Constant, Op, Operand, Register, constant
 from cellsim.program.lowered import (
     Block,
@@ -32,6 +34,7 @@ ARITHMETIC_OPS = {
     "/": Op.DIVIDE,
     "^": Op.POWER,
 }
+LAST_OPS = {"+": Op.ADD_LAST, "-": Op.SUBTRACT_LAST}
 COMPARISON_OPS = {
     "=": Op.EQUAL,
     "<>": Op.NOT_EQUAL,
@@ -88,7 +91,7 @@ class Emitter:
         if isinstance(value, Flagged):
             return value.operand
         if isinstance(value, Numeric):
-            return self.builder.emit(Op.IS_TRUE, self.settled(value))
+            return self.builder.emit(Op.IS_TRUE, value.operand)
         if isinstance(value, Known):
             if isinstance(value.value, (Reference, LambdaValue)):
                 raise UnlowerableError("a reference stands where a single value is wanted")
@@ -100,16 +103,6 @@ class Emitter:
             then, otherwise = self.flag(value.then), self.flag(value.otherwise)
             return self.builder.emit(Op.SELECT_FLAG, value.flag, then, otherwise)
         raise UnlowerableError("text or an array stands where a logical is wanted")
-
-    def settled(self, value: Numeric) -> Operand:
-        """The number of a value, zero where its last sum or difference cancels."""
-        if value.cancels_against is None:
-            return value.operand
-        return self.builder.emit(Op.CANCEL, value.operand, value.cancels_against)
-
-    def exact_number(self, value: Lowered) -> Operand:
-        """As `number`, settled: for operations in which a tiny number makes a difference."""
-        return self.settled(value) if isinstance(value, Numeric) else self.number(value)
 
     def as_lowered(self, operand: Operand) -> Lowered:
         """A number operand as a lowered value."""
@@ -125,13 +118,30 @@ class Emitter:
             self.arithmetic_operands(operator, self.number(left), self.number(right))
         )
 
+    def last_arithmetic(self, operator: str, left: Lowered, right: Lowered) -> Lowered:
+        """A formula's last sum or difference, which is zero where its operands cancel."""
+        if isinstance(left, Known) and isinstance(right, Known):
+            folded = self._fold(operator, left, right)
+            a, result = left.value, folded.value
+            is_tiny = isinstance(a, float) and isinstance(result, float) and cancels(result, a)
+            return Known(0.0) if is_tiny else folded
+        operands = self.number(left), self.number(right)
+        return self.as_lowered(self.arithmetic_operands(operator, *operands, ops=LAST_OPS))
+
     def _fold(self, operator: str, left: Known, right: Known) -> Known:
         a, b = left.value, right.value
         if isinstance(a, (Reference, LambdaValue)) or isinstance(b, (Reference, LambdaValue)):
             raise UnlowerableError("a reference stands where a single value is wanted")
         return Known(binary_scalar(operator, a, b, date_1904=self.date_1904))
 
-    def arithmetic_operands(self, operator: str, left: Operand, right: Operand) -> Operand:
+    def arithmetic_operands(
+        self,
+        operator: str,
+        left: Operand,
+        right: Operand,
+        *,
+        ops: Mapping[str, Op] = ARITHMETIC_OPS,
+    ) -> Operand:
         """An arithmetic operator on number operands."""
         if isinstance(left, Constant):
             if isinstance(right, Constant):
@@ -148,7 +158,7 @@ class Emitter:
                 return left
         elif operator == "-" and isinstance(left, Constant) and left.value == 0:
             return self.builder.emit(Op.NEGATE, right)
-        return self.builder.emit(ARITHMETIC_OPS[operator], left, right)
+        return self.builder.emit(ops[operator], left, right)
 
     def _error_after(self, left: Operand, error: Constant) -> Operand:
         """An error, unless the left operand is one already, which then wins."""
@@ -210,9 +220,7 @@ class Emitter:
         types = _type_of(left, right), _type_of(right, left)
         if types[0] == types[1]:
             return Flagged(
-                self._comparison(
-                    COMPARISON_OPS[operator], self._ordered(left), self._ordered(right)
-                )
+                self._comparison(COMPARISON_OPS[operator], self.number(left), self.number(right))
             )
         holds = _HOLDS[operator](types[0] - types[1])
         varying = left if not isinstance(left, Known) else right
@@ -226,9 +234,6 @@ class Emitter:
             if other_first
             else self.compare(operator, part, other)
         )
-
-    def _ordered(self, value: Lowered) -> Operand:
-        return self.exact_number(value)
 
     def _comparison(self, op: Op, left: Operand, right: Operand) -> Register:
         return self.builder.emit(op, left, right)

@@ -6,7 +6,7 @@ that can give an error without such a fault raise the given exception themselves
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from functools import partial
 from typing import Any
 
@@ -19,10 +19,19 @@ from cellsim.functions.dispatch import call_function
 from cellsim.functions.registry import Stack, find_function, find_over_draws
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
-from cellsim.program.comparisons import compare_over_draws, settle_cancellation
-from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
+from cellsim.program.cancellation import add_last
+from cellsim.program.comparisons import compare_over_draws
+from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers, scalar_of
 from cellsim.program.interpret import Frame
-from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
+from cellsim.program.ir import (
+    Constant,
+    Instruction,
+    KernelCall,
+    Kind,
+    Merge,
+    Op,
+    StackOperand,
+)
 from cellsim.values import Array, Fault, Scalar, Value, decode_error, encode_error
 
 Step = Callable[[], Any]
@@ -64,6 +73,8 @@ def fast_step(
     operands = [buffers.operand(operand) for operand in instruction.operands]
     if op is Op.INTERPRET:
         return _interpret(instruction, operands, base, out, go_carefully)
+    if op is Op.MERGE:
+        return partial(merge_values, instruction.detail, operands, None, out)
     if op is Op.TO_NUMBER:
         convert = object_converter(operands[0], out, date_1904=base.date_1904)
         return partial(_check_after, convert, out, go_carefully)
@@ -137,8 +148,8 @@ def _compare(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:
     return lambda operands, out: partial(compare_over_draws, op, operands[0], operands[1], out)
 
 
-def _cancel(operands: list[AnyArray], out: AnyArray) -> Step:
-    return partial(settle_cancellation, operands[0], operands[1], out)
+def _last(op: Op) -> Callable[[list[AnyArray], AnyArray], Step]:
+    return lambda operands, out: partial(add_last, op, operands[0], operands[1], out)
 
 
 _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
@@ -151,7 +162,8 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
     Op.IS_NA: _none_fails,
     Op.IS_TRUE: _is_true,
     Op.AS_NUMBER: _copy,
-    Op.CANCEL: _cancel,
+    Op.ADD_LAST: _last(Op.ADD_LAST),
+    Op.SUBTRACT_LAST: _last(Op.SUBTRACT_LAST),
     **{
         op: _compare(op)
         for op in (Op.EQUAL, Op.NOT_EQUAL, Op.LESS, Op.LESS_EQUAL, Op.GREATER, Op.GREATER_EQUAL)
@@ -288,6 +300,33 @@ def expression_runner(
                 out[place] = value
 
     return run
+
+
+def merge_values(
+    merge: Merge, operands: Sequence[AnyArray], errors: AnyArray | None, out: AnyArray
+) -> None:
+    """Put one of two values into each draw of a buffer of objects.
+
+    Args:
+        merge: What the two values are.
+        operands: The flag and the two values.
+        errors: Errors of the flag: NaN where it is one; None if it has none.
+        out: Where the objects go, shape (draws,).
+    """
+    flags = np.broadcast_to(np.asarray(operands[0], dtype=bool), out.shape)
+    for wanted, values, kind, (_, known) in zip(
+        (flags, ~flags), operands[1:], merge.kinds, merge.known, strict=True
+    ):
+        if kind is None:
+            for draw in np.flatnonzero(wanted):
+                out[draw] = known
+            continue
+        column = np.broadcast_to(values, out.shape)
+        for draw in np.flatnonzero(wanted):
+            out[draw] = scalar_of(column[draw], kind)
+    if errors is not None:
+        for draw in np.flatnonzero(np.isnan(errors)):
+            out[draw] = decode_error(errors[draw])
 
 
 def object_converter(values: AnyArray, out: AnyArray, *, date_1904: bool) -> Step:

@@ -33,6 +33,7 @@ from cellsim.formula.tree import (
     Unary,
 )
 from cellsim.formula.unparse import unparse
+from cellsim.functions.borrowed import BorrowedFunction
 from cellsim.functions.dispatch import Argument, call_function
 from cellsim.functions.operators import binary, binary_scalar, cancels, negate, percent
 from cellsim.functions.registry import (
@@ -85,6 +86,9 @@ class Grid(Protocol):
 
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers in [0, 1) for a cell's volatile functions."""
+
+    def borrowed(self, name: str, cell: CellRef) -> BorrowedFunction | None:
+        """A function outside the registry, for a cell whose stored value cannot stand in."""
 
 
 class Frame:
@@ -454,10 +458,22 @@ def _call_by_name(node: Call, frame: Frame, whole: bool) -> Value:
     elif frame.calculation.graph.resolver.name(node.name, None, frame.cell.sheet) is not None:
         callee = _name(NameReference(None, node.name), frame, whole)
     if callee is None:
-        raise UnsupportedFunctionError(node.name)
+        return _call_borrowed(node, frame, whole)
     if isinstance(callee, ErrorValue):
         return callee
     return _invoke(callee, node.arguments, frame, whole)
+
+
+def _call_borrowed(node: Call, frame: Frame, whole: bool) -> Value:
+    borrowed = frame.calculation.borrowed(node.name, frame.cell)
+    if borrowed is None:
+        raise UnsupportedFunctionError(node.name)
+    return borrowed(
+        [
+            dereference(evaluate(argument, frame, whole=whole), frame, whole=True)
+            for argument in node.arguments
+        ]
+    )
 
 
 def _invocation(node: Invocation, frame: Frame, whole: bool) -> Value:

@@ -20,6 +20,7 @@ from typing import Any, TypeAlias
 
 from cellsim.cells import CellRef
 from cellsim.formula.tree import Node
+from cellsim.values import Scalar
 
 
 class Kind(enum.Enum):
@@ -45,7 +46,8 @@ class Op(enum.Enum):
     SQRT = "sqrt"
     MINIMUM = "minimum"
     MAXIMUM = "maximum"
-    CANCEL = "cancel"  # [sum or difference, its left operand] zero where the two operands cancel
+    ADD_LAST = "add last"  # as `add`, a formula's last step: zero where the operands cancel
+    SUBTRACT_LAST = "subtract last"  # as `subtract`, likewise
     EQUAL = "equal"  # the comparisons give flags
     NOT_EQUAL = "not equal"
     LESS = "less"
@@ -66,7 +68,10 @@ class Op(enum.Enum):
     CALL = "call"  # a kernel over draws; arguments in `detail`
     INTERPRET = "interpret"  # an expression taken draw by draw; `detail` is an Expression
     TO_NUMBER = "to number"  # [object] coerced as an operator does
+    MERGE = "merge"  # [flag, any, any] one of two values as an object; `detail` is a Merge
     LOOP = "loop"  # a circular chain; `detail` is a Loop
+
+    __hash__ = object.__hash__  # members are single objects; the default hashes their names
 
 
 FLAG_OPS = frozenset(
@@ -139,6 +144,19 @@ class KernelCall:
 
     function: str
     arguments: tuple[Operand | StackOperand, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Merge:
+    """The two values of a MERGE.
+
+    Attributes:
+        kinds: What each holds; None for one that is known.
+        known: Each known value with its type, which tells TRUE from 1.
+    """
+
+    kinds: tuple[Kind | None, Kind | None]
+    known: tuple[tuple[type, Scalar], tuple[type, Scalar]]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -263,6 +281,10 @@ class Builder:
         for argument in call.arguments:
             operands += argument.items if isinstance(argument, StackOperand) else [argument]
         return self._shared(call, Kind.NUMBER, Op.CALL, tuple(operands), call)
+
+    def emit_merge(self, operands: tuple[Operand, Operand, Operand], merge: Merge) -> Register:
+        """Emit a choice between values of different types."""
+        return self._shared((Op.MERGE, operands, merge), Kind.OBJECT, Op.MERGE, operands, merge)
 
     def emit_expression(self, expression: Expression, kind: Kind) -> Register:
         """Emit an expression that is evaluated draw by draw."""

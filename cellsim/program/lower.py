@@ -18,6 +18,7 @@ from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
 from cellsim.graph.slicing import affected_cells
 from cellsim.program.calculation import Calculation
+from cellsim.program.cancellation import relax_cancellation
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import Frame
 from cellsim.program.ir import (
@@ -132,8 +133,9 @@ class _ModelLowering:
     def compile(self, outputs: Sequence[Target]) -> Compiled:
         """Lower the outputs and all that they need."""
         results = tuple(self._output(target) for target in outputs)
-        needed = {operand.number for operand, _ in results if isinstance(operand, Register)}
-        instructions = eliminate_dead_code(self.builder.instructions, needed)
+        given_out = {operand.number for operand, _ in results if isinstance(operand, Register)}
+        instructions = eliminate_dead_code(self.builder.instructions, set(given_out))
+        instructions = relax_cancellation(instructions, given_out)
         program = Program(self.builder.inputs, instructions, results, self.builder.registers)
         return Compiled(program, self._affected, tuple(self._loops))
 
@@ -152,7 +154,7 @@ class _ModelLowering:
         if isinstance(value, Block):
             value = value.items[0]
         if isinstance(value, Numeric):
-            return self.emitter.settled(value), Kind.NUMBER
+            return value.operand, Kind.NUMBER
         return self.emitter.number(value), Kind.NUMBER
 
     def _recalculated(self, target: Target, reason: str) -> Operand:
@@ -251,13 +253,7 @@ class _ModelLowering:
         if formula is None:
             return Known(self.base.cell_value(*cell))
         while cell not in self._lowered:
-            outermost = not self._active
-            try:
-                self._lower_in_order(formula)
-            except _CycleFoundError as found_cycle:
-                if not outermost:
-                    raise
-                self._lower_cycle(found_cycle.cell)
+            self._lower_in_order(formula)
         return self._lowered[cell]
 
     # Order.
@@ -276,10 +272,18 @@ class _ModelLowering:
                     stack.append((precedent, self._open_precedents(precedent)))
                     break
             else:
+                if formula.cell not in self._lowered:
+                    try:
+                        self._lower_formula(formula)
+                    except _CycleFoundError as found:
+                        if self._active:
+                            raise
+                        self._lower_cycle(found.cell)
+                        if formula.cell not in self._lowered:  # it only feeds on the chain
+                            stack[-1] = (formula, self._open_precedents(formula))
+                            continue
                 stack.pop()
                 del waiting[formula.cell]
-                if formula.cell not in self._lowered:
-                    self._lower_formula(formula)
 
     def _open_precedents(self, formula: Formula) -> Iterator[CellRef]:
         for area in self.graph.precedents(formula):
@@ -337,7 +341,7 @@ class _ModelLowering:
     # Cycles.
 
     def _lower_cycle(self, start: CellRef) -> None:
-        chain = [cell for cell in strongly_connected(self.graph, start) if cell in self._affected]
+        chain = strongly_connected(self.graph, start, self._is_known)
         if not self._iterate:
             raise CircularReferenceError(
                 Problem(
@@ -358,6 +362,10 @@ class _ModelLowering:
                     self.cell(precedent)
         self._loops.append(tuple(chain))
         self._emit_loop(formulas, inside)
+
+    def _is_known(self, cell: CellRef) -> bool:
+        """Whether a cell does not vary or has been lowered."""
+        return cell in self._lowered or cell not in self._affected
 
     def _emit_loop(self, formulas: list[Formula], inside: set[CellRef]) -> None:
         feedback = self._read_early(formulas, inside)
@@ -410,7 +418,7 @@ class _ModelLowering:
         if isinstance(value, Numeric) or (
             isinstance(value, Known) and isinstance(value.value, float)
         ):
-            return self.emitter.exact_number(value)
+            return self.emitter.number(value)
         raise UnlowerableError("a circular chain through text or logicals")
 
     def _start_value(self, cell: CellRef) -> float:

@@ -118,7 +118,7 @@ def _choose(lowering: Lowering, node: Call, whole: bool) -> Lowered:
     if isinstance(index, Block):
         raise UnlowerableError("CHOOSE over arrays")
     emitter = lowering.emitter
-    operand = emitter.exact_number(index)
+    operand = emitter.number(index)
     if isinstance(operand, Constant):
         if is_error(operand):
             return Known(decode_error(operand.value))

@@ -191,12 +191,12 @@ def _constant_error(operand: Operand | StackOperand) -> ErrorValue | None:
 
 
 def _number_argument(given: Arguments, _position: int, value: Lowered) -> Operand:
-    return given.emitter.exact_number(value)
+    return given.emitter.number(value)
 
 
 def _scalar_argument(given: Arguments, _position: int, value: Lowered) -> Operand:
     if isinstance(value, Numeric) or (isinstance(value, Known) and isinstance(value.value, float)):
-        return given.emitter.exact_number(value)
+        return given.emitter.number(value)
     raise UnlowerableError("a value that is no number in all draws")
 
 
@@ -252,4 +252,5 @@ _PREPARATIONS: dict[ArgumentKind, Callable[[Arguments, int, Lowered], Operand | 
     ArgumentKind.ARRAY_VALUES: _stack_argument,
     ArgumentKind.MATRIX: _stack_argument,
     ArgumentKind.OPERAND: _stack_argument,
+    ArgumentKind.ARRAY_OPERAND: _stack_argument,
 }

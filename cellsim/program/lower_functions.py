@@ -6,14 +6,12 @@ and the function's kernel over draws is to be tried.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable
 
-from cellsim.program.emit import is_error
-from cellsim.program.ir import Constant, Op, Operand, constant
+from cellsim.program.ir import Constant, Op, Operand
 from cellsim.program.lower_branches import is_error_flag
 from cellsim.program.lower_calls import (
     Arguments,
-    item_operands,
 )
 from cellsim.program.lower_references import (
     computed_reference,
@@ -24,6 +22,17 @@ from cellsim.program.lower_references import (
     transpose_rule,
     xlookup_rule,
 )
+from cellsim.program.lower_sums import (
+    average_rule,
+    count_all_rule,
+    count_rule,
+    extreme_rule,
+    items_of,
+    net_present_value_rule,
+    product_rule,
+    sum_of_products_rule,
+    sum_rule,
+)
 from cellsim.program.lowered import (
     Choice,
     Flagged,
@@ -32,173 +41,9 @@ from cellsim.program.lowered import (
     Numeric,
     Varied,
 )
-from cellsim.values import ErrorValue, Reference, decode_error
+from cellsim.values import ErrorValue
 
 Rule = Callable[[Arguments], Lowered | None]
-
-_ZERO = constant(0.0)
-
-
-# Sums and other functions of the numbers in ranges.
-
-
-def _summed(emitter_arguments: Arguments) -> list[Operand]:
-    """The numbers that SUM adds, in order; what is a number in some draws only counts as 0 elsewhere."""
-    given = emitter_arguments
-    operands: list[Operand] = []
-    for position, value in enumerate(given.values):
-        if not given.is_range(position):
-            operands.append(given.emitter.number(value))
-            continue
-        for item in _items(given, position):
-            operands += (
-                [_summand(given, item)]
-                if isinstance(item, Choice)
-                else item_operands(given.emitter, item)
-            )
-    return operands
-
-
-def _items(given: Arguments, position: int) -> Iterable[Lowered]:
-    """The items of an argument; those of a union area by area."""
-    value = given.values[position]
-    if isinstance(value, Known) and isinstance(value.value, Reference):
-        for area in value.value.areas:
-            yield from given.lowering.cells.area_block(area).items
-        return
-    yield from given.block(position).items
-
-
-def _summand(given: Arguments, item: Lowered) -> Operand:
-    """What an item of a range adds to a sum."""
-    if isinstance(item, Choice):
-        then, otherwise = _summand(given, item.then), _summand(given, item.otherwise)
-        return given.emitter.builder.emit(Op.SELECT, item.flag, then, otherwise)
-    operands = item_operands(given.emitter, item)
-    return operands[0] if operands else _ZERO
-
-
-def add_up(given: Arguments, operands: Iterable[Operand]) -> Operand:
-    """The sum of operands, from left to right."""
-    total: Operand = _ZERO
-    for operand in operands:
-        if isinstance(total, Constant) and total.value == 0:
-            total = operand
-        else:
-            total = given.emitter.arithmetic_operands("+", total, operand)
-    return total
-
-
-def _sum(given: Arguments) -> Lowered:
-    return given.emitter.as_lowered(add_up(given, _summed(given)))
-
-
-def _average(given: Arguments) -> Lowered | None:
-    if any(
-        isinstance(item, Choice)
-        for p in range(len(given.values))
-        for item in _range_items(given, p)
-    ):
-        return None
-    operands = _summed(given)
-    if not operands:
-        return Known(ErrorValue.DIV0)
-    count = constant(float(len(operands)))
-    return given.emitter.as_lowered(
-        given.emitter.arithmetic_operands("/", add_up(given, operands), count)
-    )
-
-
-def _range_items(given: Arguments, position: int) -> Iterable[Lowered]:
-    return _items(given, position) if given.is_range(position) else ()
-
-
-def _extreme(op: Op) -> Rule:
-    def rule(given: Arguments) -> Lowered | None:
-        if any(
-            isinstance(item, Choice)
-            for p in range(len(given.values))
-            for item in _range_items(given, p)
-        ):
-            return None
-        operands = _summed(given)
-        if not operands:
-            return Known(0.0)
-        fixed = [operand for operand in operands if isinstance(operand, Constant)]
-        varying = [operand for operand in operands if not isinstance(operand, Constant)]
-        failing = [operand for operand in fixed if is_error(operand)]
-        if failing:
-            return Known(decode_error(failing[0].value)) if not varying else None
-        pick = min if op is Op.MINIMUM else max
-        result: Operand | None = (
-            constant(pick(operand.value for operand in fixed)) if fixed else None
-        )
-        for operand in varying:
-            result = operand if result is None else given.emitter.builder.emit(op, result, operand)
-        return given.emitter.as_lowered(result or _ZERO)
-
-    return rule
-
-
-def _count_all(given: Arguments) -> Lowered | None:
-    count = 0
-    for position in range(len(given.values)):
-        for item in _items(given, position):
-            if isinstance(item, Varied):
-                return None
-            count += not (isinstance(item, Known) and item.value is None)
-    return Known(float(count))
-
-
-def _sum_of_products(given: Arguments) -> Lowered | None:
-    blocks = [given.block(position) for position in range(len(given.values))]
-    if len({(block.rows, block.columns) for block in blocks}) != 1:
-        return Known(ErrorValue.VALUE)
-    products: list[Operand] = []
-    for items in zip(*(block.items for block in blocks), strict=True):
-        product: Operand | None = None
-        for item in items:
-            factor = _summand(given, item)
-            product = (
-                factor
-                if product is None
-                else given.emitter.arithmetic_operands("*", product, factor)
-            )
-        products.append(product or _ZERO)
-    return given.emitter.as_lowered(add_up(given, products))
-
-
-def _product(given: Arguments) -> Lowered | None:
-    if any(
-        isinstance(item, Choice)
-        for p in range(len(given.values))
-        for item in _range_items(given, p)
-    ):
-        return None
-    result: Operand | None = None
-    for operand in _summed(given):
-        result = (
-            operand if result is None else given.emitter.arithmetic_operands("*", result, operand)
-        )
-    return given.emitter.as_lowered(result or _ZERO)
-
-
-def _net_present_value(given: Arguments) -> Lowered | None:
-    """NPV by Horner's rule from the last flow back."""
-    emitter = given.emitter
-    flows: list[Operand] = []
-    for position, value in enumerate(given.values[1:], start=1):
-        if not given.is_range(position):
-            flows.append(emitter.number(value))
-            continue
-        for item in _items(given, position):
-            flows += item_operands(emitter, item)
-    growth = emitter.arithmetic_operands("+", emitter.number(given.values[0]), constant(1.0))
-    total: Operand | None = None
-    for flow in reversed(flows):
-        summed = flow if total is None else emitter.arithmetic_operands("+", total, flow)
-        total = emitter.arithmetic_operands("/", summed, growth)
-    return None if total is None else emitter.as_lowered(total)
 
 
 # Logic and information.
@@ -212,7 +57,7 @@ def _conjunction(op: Op) -> Rule:
             if not given.is_range(position):
                 flags.append(emitter.flag(value))
                 continue
-            for item in _items(given, position):
+            for item in items_of(given, position):
                 if isinstance(item, (Choice, Varied)):
                     return None
                 if isinstance(item, Known) and not isinstance(
@@ -264,12 +109,10 @@ def _as_number(given: Arguments) -> Lowered | None:
     return value if isinstance(value, Numeric) else None
 
 
-def _operation(op: Op, exact: bool = False) -> Rule:
+def _operation(op: Op) -> Rule:
     def rule(given: Arguments) -> Lowered | None:
         emitter = given.emitter
-        operand = (
-            emitter.exact_number(given.values[0]) if exact else emitter.number(given.values[0])
-        )
+        operand = emitter.number(given.values[0])
         if isinstance(operand, Constant):
             return None
         return Numeric(emitter.builder.emit(op, operand))
@@ -282,14 +125,15 @@ def _power(given: Arguments) -> Lowered:
 
 
 RULES: dict[str, Rule] = {
-    "SUM": _sum,
-    "AVERAGE": _average,
-    "MIN": _extreme(Op.MINIMUM),
-    "MAX": _extreme(Op.MAXIMUM),
-    "COUNTA": _count_all,
-    "SUMPRODUCT": _sum_of_products,
-    "PRODUCT": _product,
-    "NPV": _net_present_value,
+    "SUM": sum_rule,
+    "AVERAGE": average_rule,
+    "MIN": extreme_rule(Op.MINIMUM),
+    "MAX": extreme_rule(Op.MAXIMUM),
+    "COUNT": count_rule,
+    "COUNTA": count_all_rule,
+    "SUMPRODUCT": sum_of_products_rule,
+    "PRODUCT": product_rule,
+    "NPV": net_present_value_rule,
     "AND": _conjunction(Op.AND),
     "OR": _conjunction(Op.OR),
     "NOT": _not,
@@ -300,9 +144,9 @@ RULES: dict[str, Rule] = {
     "ISBLANK": _never_for_numbers,
     "N": _as_number,
     "ABS": _operation(Op.ABSOLUTE),
-    "SQRT": _operation(Op.SQRT, exact=True),
+    "SQRT": _operation(Op.SQRT),
     "EXP": _operation(Op.EXP),
-    "LN": _operation(Op.LN, exact=True),
+    "LN": _operation(Op.LN),
     "POWER": _power,
     "ROW": of_references,
     "ROWS": of_references,

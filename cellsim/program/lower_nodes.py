@@ -23,6 +23,7 @@ from cellsim.formula.tree import (
     TextLiteral,
     Unary,
 )
+from cellsim.functions.borrowed import find_borrowed
 from cellsim.functions.registry import (
     LIFTED,
     WHOLE_ARRAY,
@@ -33,12 +34,13 @@ from cellsim.functions.registry import (
 from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
-from cellsim.program.ir import Expression, Kind
+from cellsim.program.ir import Expression, Kind, Merge, Operand, constant
 from cellsim.program.lower_branches import LAZY_RULES, block_item
 from cellsim.program.lower_calls import Arguments, call_over_draws
 from cellsim.program.lower_functions import RULES
 from cellsim.program.lowered import (
     Block,
+    Choice,
     Flagged,
     Known,
     Lowered,
@@ -46,7 +48,7 @@ from cellsim.program.lowered import (
     UnlowerableError,
     Varied,
 )
-from cellsim.values import Array, ErrorValue, Reference, Value
+from cellsim.values import Array, ErrorValue, LambdaValue, Reference, Scalar, Value
 
 _LARGEST_BLOCK = 2_000_000
 _MOST_NESTED_NAMES = 64
@@ -114,10 +116,9 @@ class NodeLowering:
         if isinstance(tree, Binary) and tree.operator in {"+", "-"}:
             left = self.operand(tree.left, whole=whole)
             right = self.operand(tree.right, whole=whole)
-            result = self._binary_values(tree, left, right)
-            if isinstance(result, Numeric) and not isinstance(left, (Block, Varied)):
-                return Numeric(result.operand, self.emitter.number(left))
-            return result
+            if isinstance(left, (Block, Varied)) or isinstance(right, Block):
+                return self._binary_values(tree, left, right)
+            return self.emitter.last_arithmetic(tree.operator, left, right)
         return self.lower(tree, whole=whole)
 
     def lower(self, node: Node, *, whole: bool) -> Lowered:
@@ -237,8 +238,34 @@ class NodeLowering:
         if isinstance(value, Varied):
             return value.operand, Kind.OBJECT
         if isinstance(value, Numeric):
-            return self.emitter.settled(value), Kind.NUMBER
-        raise UnlowerableError("it reads a cell that is text in some draws")
+            return value.operand, Kind.NUMBER
+        if isinstance(value, Choice):
+            return self._merged(value), Kind.OBJECT
+        raise UnlowerableError("it reads a cell that is an array")
+
+    def _merged(self, value: Choice) -> Operand:
+        """The register of objects that holds whichever value a choice has."""
+        operands: list[Operand] = []
+        kinds: list[Kind | None] = []
+        known: list[tuple[type, Scalar]] = []
+        for branch in (value.then, value.otherwise):
+            if isinstance(branch, Known):
+                content = branch.value
+                if isinstance(content, (Reference, LambdaValue)):
+                    raise UnlowerableError("it reads a cell that is a reference")
+                operands.append(constant(0.0))
+                kinds.append(None)
+                known.append((type(content), content))
+                continue
+            if isinstance(branch, Flagged):  # its number, so that it can be an error
+                operand, kind = self.emitter.number(branch), Kind.FLAG
+            else:
+                operand, kind = self._readable(branch)
+            operands.append(operand)
+            kinds.append(kind)
+            known.append((type(None), None))
+        merge = Merge((kinds[0], kinds[1]), (known[0], known[1]))
+        return self.emitter.builder.emit_merge((value.flag, operands[0], operands[1]), merge)
 
     # The kinds of node, one method each.
 
@@ -344,7 +371,7 @@ class NodeLowering:
                 return self._let(node, whole)
             if self.scope is None and self.is_static(node):
                 return self.static_value(node, whole=whole)
-            raise UnlowerableError(f"{node.name} has no form over draws")
+            raise UnlowerableError(self._why_not_lowered(node))
         if self.scope is None and self.is_static(node):
             return self.static_value(node, whole=whole)
         arguments = self._arguments(node, function, whole)
@@ -356,6 +383,15 @@ class NodeLowering:
         if lifted:
             return self._call_by_item(node, function, arguments, lifted, whole)
         return self._call_with(node, function, arguments, whole)
+
+    def _why_not_lowered(self, node: Call) -> str:
+        """Why a call that is not in the registry is left to the reference evaluator."""
+        is_named = self.cells.graph.resolver.name(node.name, None, self.cell.sheet) is not None
+        if is_named or node.name in {"LAMBDA", "ISOMITTED"}:
+            return f"{node.name} has no form over draws"
+        if find_borrowed(node.name) is not None:
+            return f"{node.name} is evaluated by the formulas library"
+        return f"no function {node.name} is known here, so it gives #NAME?"
 
     def _arguments(self, node: Call, function: FunctionRecord, whole: bool) -> list[Lowered]:
         if not function.least <= len(node.arguments) <= function.most:

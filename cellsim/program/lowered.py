@@ -25,13 +25,9 @@ class Numeric:
 
     Attributes:
         operand: The register.
-        cancels_against: For a formula's last sum or difference, its left operand: where the result
-            is tiny beside it, it counts as zero. Looked at only where a tiny number makes a
-            difference (comparisons, rounding), see `Emitter.settled`.
     """
 
     operand: Register
-    cancels_against: Operand | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -10,8 +10,8 @@ Guarantees:
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -19,26 +19,56 @@ import numpy.typing as npt
 
 from cellsim.program.buffers import Buffers, plan_buffers
 from cellsim.program.calculation import Calculation
+from cellsim.program.cancellation import (
+    PLAIN_OPS,
+    Magnitudes,
+    doubt_limits,
+    is_doubtful,
+)
 from cellsim.program.careful import careful_step
 from cellsim.program.fast import fast_step
-from cellsim.program.ir import Instruction, Loop, Op, Operand, Program, Register
+from cellsim.program.ir import Instruction, Kind, Loop, Op, Operand, Program, Register
 from cellsim.values import ErrorValue, encode_error
 
 FloatArray = npt.NDArray[np.float64]
 Step = Callable[[], Any]
+After = Callable[[int], None]
 
 _SETTLED = 1e-14
 _MORE_PASSES = 20
+_FEWEST_MEASURED = 256
+"""Magnitudes are taken from blocks of at least so many draws."""
+_MOST_USELESS = 4
+"""After so many blocks in a row that had to be run again, the shortcut is no longer tried."""
 
 
 class GoCarefully(Exception):  # noqa: N818  (a change of pace, not a failure)
     """An error has come up in a block: go on with the careful steps."""
 
 
+class _LookAgain(Exception):  # noqa: N818  (likewise)
+    """A number may be what a cancellation has left: run the block again, looking at each."""
+
+
 @dataclass(slots=True)
 class _Steps:
     fast: list[Step]
     careful: list[Step]
+
+
+@dataclass(slots=True)
+class _Shortcut:
+    """Fast steps that do not look at cancellation, see `cellsim.program.cancellation`.
+
+    Attributes:
+        steps: One for each instruction; those after which a number may be in doubt raise _LookAgain.
+        limits: How near zero registers may come.
+        useless: How many blocks in a row had to be run again.
+    """
+
+    steps: list[Step]
+    limits: Mapping[int, float]
+    useless: int = 0
 
 
 class BlockEvaluator:
@@ -66,6 +96,8 @@ class BlockEvaluator:
         self._writes = [
             (i.target, *(i.detail.carried if i.op is Op.LOOP else ())) for i in program.instructions
         ]
+        self._shortcut: _Shortcut | None = None
+        self._may_cut = any(instruction.op in PLAIN_OPS for instruction in program.instructions)
         self._inputs = [self._buffers.array(number) for number in range(len(program.inputs))]
         self._outputs = [self._buffers.operand(operand) for operand, _ in program.outputs]
 
@@ -93,25 +125,105 @@ class BlockEvaluator:
             for buffer in self._inputs:
                 buffer[np.isinf(buffer)] = encode_error(ErrorValue.NUM)
         with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
-            done = _run_fast(self._steps.fast) if finite else 0
-            if done < len(self._steps.fast):
-                self._run_mixed(done, all_failing=not finite)
-
-    def _run_mixed(self, start: int, *, all_failing: bool) -> None:
-        """Go on from a step: carefully where an operand may hold an error, fast elsewhere."""
-        failing = set(range(len(self._inputs))) if all_failing else set()
-        instructions = self._program.instructions
-        for place in range(start, len(instructions)):
-            reads = self._reads[place]
-            if failing.isdisjoint(reads):
+            shortcut = self._shortcut
+            if shortcut is not None and shortcut.useless <= _MOST_USELESS:
                 try:
-                    self._steps.fast[place]()
+                    self._run_steps(shortcut.steps, finite, self._watch)
+                except _LookAgain:
+                    shortcut.useless += 1
+                    self.poison.clear()
+                else:
+                    shortcut.useless = 0
+                    return
+            elif shortcut is None and self._may_cut and self.draws >= _FEWEST_MEASURED:
+                self._run_measured(finite)
+                return
+            self._run_steps(self._steps.fast, finite)
+
+    def _run_steps(self, steps: Sequence[Step], finite: bool, after: After | None = None) -> None:
+        """Run fast steps up to the first fault, then carefully where an operand may hold an error."""
+        done = _run_fast(steps) if finite else 0
+        if done < len(steps):
+            self._run_mixed(steps, done, finite, after)
+
+    def _run_mixed(
+        self, steps: Sequence[Step], start: int, finite: bool, after: After | None = None
+    ) -> None:
+        """Go on from a step: carefully where an operand may hold an error, fast elsewhere.
+
+        Args:
+            steps: The fast steps.
+            start: The first instruction to run.
+            finite: Whether no input holds an error.
+            after: Called after each step that was run carefully, with its instruction's place.
+        """
+        failing = set() if finite else set(range(len(self._inputs)))
+        for place in range(start, len(steps)):
+            if failing.isdisjoint(self._reads[place]):
+                try:
+                    steps[place]()
                     continue
                 except (FloatingPointError, GoCarefully):
                     pass  # this instruction is the first to fail on its own
             with np.errstate(all="ignore"):
                 self._steps.careful[place]()
+                if after is not None:
+                    after(place)
             failing.update(self._writes[place])
+
+    def _run_measured(self, finite: bool) -> None:
+        """Run with every cancellation looked at; later blocks may take the shortcut."""
+        magnitudes = Magnitudes()
+        for number, buffer in enumerate(self._inputs):
+            magnitudes.record(number, buffer)
+
+        def record(place: int) -> None:
+            if self._program.instructions[place].kind is Kind.NUMBER:
+                for register in self._writes[place]:
+                    magnitudes.record(register, self._buffers.array(register))
+
+        def measured(place: int, step: Step) -> Step:
+            def run() -> None:
+                step()
+                record(place)
+
+            return run
+
+        steps = [measured(place, step) for place, step in enumerate(self._steps.fast)]
+        self._run_steps(steps, finite, record)
+        limits = doubt_limits(self._program, magnitudes)
+        self._shortcut = _Shortcut(self._shorter_steps(limits), limits)
+
+    def _shorter_steps(self, limits: Mapping[int, float]) -> list[Step]:
+        outputs = (operand for operand, _ in self._program.outputs)
+        given_out = {operand.number for operand in outputs if isinstance(operand, Register)}
+        steps: list[Step] = []
+        for place, instruction in enumerate(self._program.instructions):
+            step = self._steps.fast[place]
+            plain = PLAIN_OPS.get(instruction.op)
+            if plain is not None and instruction.target not in given_out:  # results show zeros
+                relaxed = replace(instruction, op=plain)
+                step = fast_step(relaxed, self._buffers, self._base, GoCarefully)
+            watched = [register for register in self._writes[place] if register in limits]
+            steps.append(self._watched(step, watched, limits) if watched else step)
+        return steps
+
+    def _watched(self, step: Step, registers: list[int], limits: Mapping[int, float]) -> Step:
+        pairs = [(self._buffers.array(register), limits[register]) for register in registers]
+
+        def run() -> None:
+            step()
+            if any(is_doubtful(values, limit) for values, limit in pairs):
+                raise _LookAgain
+
+        return run
+
+    def _watch(self, place: int) -> None:
+        """After a careful step on the shortcut: a number in doubt ends it."""
+        limits = self._shortcut.limits if self._shortcut is not None else {}
+        for register in self._writes[place]:
+            if register in limits and is_doubtful(self._buffers.array(register), limits[register]):
+                raise _LookAgain
 
     def _build(self, instructions: Sequence[Instruction]) -> _Steps:
         fast: list[Step] = []

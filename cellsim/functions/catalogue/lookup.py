@@ -8,6 +8,8 @@ from cellsim.functions.coercion import to_number
 from cellsim.functions.dispatch import values_of
 from cellsim.functions.registry import (
     AnyScalar,
+    ArrayOperand,
+    ArrayValues,
     Context,
     FloatArray,
     Lazy,
@@ -190,7 +192,9 @@ def _gather(
 
 
 @spreadsheet_function("LOOKUP")
-def lookup_in_vector(key: ScalarValue, values: Values, results: Operand | None = None) -> Value:
+def lookup_in_vector(
+    key: ScalarValue, values: ArrayValues, results: ArrayOperand | None = None
+) -> Value:
     """The value beside the last item not above a key."""
     by_column = values.rows >= values.columns
     if 1 in (values.rows, values.columns):
@@ -266,7 +270,7 @@ def _line(results: Value, place: int, context: Context, *, along_rows: bool, cou
 @spreadsheet_function("INDEX", gives_reference=True)
 def item_at_place(
     context: Context,
-    where: Operand,
+    where: ArrayOperand,
     row: AnyScalar = None,
     column: AnyScalar = None,
     area: Whole = 1,
