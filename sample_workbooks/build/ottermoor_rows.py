@@ -28,7 +28,7 @@ GUIDE = (
     ),
     (
         "The candidate was licensed in from a partner, who is paid when stages succeed and when sales "
-        "pass certain heights, and a royalty on sales.",
+        "pass certain heights, and gets a royalty on sales.",
         False,
     ),
     ("How to read it", True),

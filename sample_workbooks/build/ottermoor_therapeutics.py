@@ -7,6 +7,7 @@ values. The texts, inputs and rows are in ottermoor_rows.py.
 from __future__ import annotations
 
 import datetime as dt
+import math
 import re
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -40,11 +41,14 @@ FIRST_STAGE = 8
 """Row of the first stage on Development; the launch follows the last one."""
 LAUNCH = FIRST_STAGE + len(STAGES)
 
-TITLE = Font(bold=True, size=14)
-STRONG = Font(bold=True)
-QUIET = Font(italic=True, color="FF5B6770")
+PLAIN = Font(name="Calibri", size=11)
+TITLE = Font(name="Calibri", bold=True, size=14)
+STRONG = Font(name="Calibri", bold=True, size=11)
+QUIET = Font(name="Calibri", italic=True, size=11, color="FF5B6770")
 HEADER = PatternFill("solid", fgColor="FFE7ECEF")
 LINE = Border(bottom=Side(style="thin", color="FF22313F"))
+BESIDE = Alignment(horizontal="left", indent=1)
+"""Texts to the right of numbers."""
 WRAPPED = Alignment(wrap_text=True, vertical="top")
 
 _REFERENCE = re.compile(r"\b([iptrs])\.(\w+)")
@@ -163,18 +167,19 @@ def _put(sheet: Worksheet, address: str, value: float | str | dt.date, number_fo
 
 
 def _guide(sheet: Worksheet) -> None:
-    sheet.column_dimensions["A"].width = 110
+    sheet.column_dimensions["A"].width = 92
     for row, (text, strong) in enumerate(GUIDE, start=1):
         cell = sheet.cell(row, 1, text)
-        cell.font = TITLE if row == 1 else STRONG if strong else Font()
+        cell.font = TITLE if row == 1 else STRONG if strong else PLAIN
         cell.alignment = WRAPPED
+        sheet.row_dimensions[row].height = 15 * math.ceil(len(text) / 95) + 6 * strong
 
 
 def _inputs(sheet: Worksheet, places: Places) -> None:
     _head(sheet, "Every number that may be changed.", {"B": 40, "C": 14, "D": 15, "E": 38})
     _header(sheet, 4, 2, ("Input", "Value", "Unit", "Note"))
     for column in "DE":
-        sheet[f"{column}4"].alignment = Alignment(horizontal="left")
+        sheet[f"{column}4"].alignment = BESIDE
     sheet.freeze_panes = "C5"
     for row, line in enumerate(INPUTS, start=5):
         if isinstance(line, str):
@@ -186,6 +191,7 @@ def _inputs(sheet: Worksheet, places: Places) -> None:
         _put(sheet, f"C{row}", value, number_format)
         sheet[f"D{row}"], sheet[f"E{row}"] = unit or None, note or None
         sheet[f"E{row}"].font = QUIET
+        sheet[f"D{row}"].alignment = sheet[f"E{row}"].alignment = BESIDE
 
 
 def _find_rows(sheet: str, rows: Sequence[Row | str], top: int, places: Places) -> None:
@@ -201,7 +207,7 @@ def _years(sheet: Worksheet, rows: Sequence[Row | str], top: int, places: Places
         "Market": "Sales and costs on the footing that the drug is launched.",
         "Valuation": "Cash flows and present values: by chance, and for the flags on Inputs.",
     }
-    _head(sheet, about[sheet.title], {"B": 38, "C": 14} | widths)
+    _head(sheet, about[sheet.title], {"B": 44, "C": 14} | widths)
     sheet.freeze_panes = "C1" if sheet.title == "Development" else f"D{top + 1}"
     for row, line in enumerate(rows, start=top):
         if isinstance(line, str):
@@ -226,7 +232,7 @@ def _years(sheet: Worksheet, rows: Sequence[Row | str], top: int, places: Places
 def _stages(sheet: Worksheet, places: Places) -> None:
     sheet["B4"] = "A stage starts only if all before it succeeded. Flags come from Inputs."
     _header(sheet, FIRST_STAGE - 1, 2, ("Stage", *(header for header, *_ in STAGE_TABLE)))
-    sheet.row_dimensions[FIRST_STAGE - 1].height = 45
+    sheet.row_dimensions[FIRST_STAGE - 1].height = 62
     for n, stage in enumerate(STAGES, start=1):
         row = FIRST_STAGE + n - 1
         sheet[f"B{row}"] = stage
@@ -320,7 +326,7 @@ def _results(sheet: Worksheet, places: Places) -> None:
     sheet.freeze_panes = "C5"
     _header(sheet, 4, 2, ("Result", "Value", "Unit", "Note"))
     for column in "DE":
-        sheet[f"{column}4"].alignment = Alignment(horizontal="left")
+        sheet[f"{column}4"].alignment = BESIDE
     million, stages = "EUR million", f"Development!$B${FIRST_STAGE}:$B${LAUNCH - 1}"
     lines = (
         ("Risk-adjusted value (rNPV)", "=s.rnpv", million, AMOUNT, "Mean over all ways it can end"),
@@ -361,13 +367,13 @@ def _results(sheet: Worksheet, places: Places) -> None:
             "General",
             "Stop if the risk-adjusted value is not above zero; thin below 0.25 for each EUR",
         ),
-        ("Check: rNPV by NPV", "=ROUND(C5-s.npv,6)", million, AMOUNT, "0 if both agree"),
-        ("Check: rNPV by ways of ending", "=ROUND(C5-s.ends_mean,6)", million, AMOUNT, "Likewise"),
+        ("Check: rNPV by NPV", "=ROUND(C5-s.npv,6)", million, "0.0", "0 if both agree"),
+        ("Check: rNPV by ways of ending", "=ROUND(C5-s.ends_mean,6)", million, "0.0", "Likewise"),
         (
             "Check: cost outside the 25 years",
             f"=ROUND(Development!D{LAUNCH}-SUM(r.spent),6)",
             million,
-            AMOUNT,
+            "0.0",
             "0 if every stage ends within them",
         ),
     )
@@ -376,6 +382,7 @@ def _results(sheet: Worksheet, places: Places) -> None:
         _put(sheet, f"C{row}", places.formula(text, sheet.title), number_format)
         sheet[f"D{row}"], sheet[f"E{row}"] = unit or None, note or None
         sheet[f"E{row}"].font = QUIET
+        sheet[f"D{row}"].alignment = sheet[f"E{row}"].alignment = BESIDE
 
 
 if __name__ == "__main__":
