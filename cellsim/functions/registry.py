@@ -203,6 +203,7 @@ DrawsKernel: TypeAlias = Callable[..., FloatArray | None]
 
 _FUNCTIONS: dict[str, FunctionRecord] = {}
 _OVER_DRAWS: dict[str, DrawsKernel] = {}
+_PICKING: set[str] = set()
 _MOST_ARGUMENTS = 255
 _RESULTS: dict[object, str] = {float: "number", int: "number", str: "text", bool: "logical"}
 
@@ -265,7 +266,9 @@ def spreadsheet_function(
     return register
 
 
-def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
+def over_draws(
+    *names: str, picks_items: bool = False
+) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     """Register the form of a function that works on all draws of a block at once.
 
     It takes the same arguments as the kernel does. `Number` and `Whole` arguments are float arrays
@@ -277,6 +280,11 @@ def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     kernel must neither raise nor hang on it. Arguments must not be written to. A kernel may return
     None to say that it cannot serve these arguments: they are then taken draw by draw.
 
+    Args:
+        names: The functions.
+        picks_items: Whether it finds or picks items of its `Stack` arguments, so that an error in an
+            item that is not picked does not matter; the kernel answers for errors inside stacks itself.
+
     Raises:
         ValueError: A name is registered twice.
     """
@@ -286,6 +294,8 @@ def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
             if name in _OVER_DRAWS:
                 raise ValueError(f"{name} has two kernels over draws")
             _OVER_DRAWS[name] = kernel
+            if picks_items:
+                _PICKING.add(name)
         return kernel
 
     return register
@@ -314,6 +324,11 @@ def find_function(name: str) -> FunctionRecord | None:
 def find_over_draws(name: str) -> DrawsKernel | None:
     """The kernel over draws of that name, or None."""
     return _OVER_DRAWS.get(name)
+
+
+def picks_items(name: str) -> bool:
+    """Whether the kernel over draws of that name answers for errors inside its stacks itself."""
+    return name in _PICKING
 
 
 def all_functions() -> dict[str, FunctionRecord]:

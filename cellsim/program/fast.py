@@ -292,12 +292,10 @@ def expression_runner(
 
     def run() -> None:
         with np.errstate(all="ignore"):
-            values = evaluator.evaluate(columns, len(out))
-        if instruction.kind is Kind.NUMBER:
-            out[:] = as_numbers(values)
-        else:
-            for place, value in enumerate(values):
-                out[place] = value
+            if instruction.kind is Kind.NUMBER:
+                out[:] = evaluator.evaluate_numbers(columns, len(out))
+            else:
+                out[:] = evaluator.evaluate(columns, len(out))
 
     return run
 
@@ -339,6 +337,9 @@ def object_converter(values: AnyArray, out: AnyArray, *, date_1904: bool) -> Ste
             return encode_error(fault.error)
 
     def step() -> None:
-        out[:] = [number(value) for value in values]
+        if set(map(type, values)) <= {float}:  # the ordinary case, without a call for each draw
+            out[:] = values.astype(np.float64)
+        else:
+            out[:] = [number(value) for value in values]
 
     return step

@@ -21,6 +21,13 @@ MODELS: dict[str, dict[str, object]] = {
     "choose": {"A1": 1, "B1": "=CHOOSE(A1+2,10,20,30)", "C1": "=B1+1"},
     "index with an uncertain place": {"A1": 1, "D1": 5, "D2": 7, "D3": 9, "C1": "=INDEX(D1:D3,A1+2)"},
     "lookup with an uncertain key": {"A1": 1, "D1": -2, "D2": 0, "D3": 2, "E1": 5, "E2": 6, "E3": 7, "C1": "=VLOOKUP(A1,D1:E3,2)"},
+    "error in a table beside the item looked up": {
+        "A1": 1, "A2": 2, "D1": -1, "D2": 0, "D3": 1, "E1": 10, "E2": "=1/A1", "E3": 30,
+        "C1": "=VLOOKUP(ROUND(A2,0),D1:E3,2,FALSE)",
+    },
+    "error among the keys of a lookup": {
+        "A1": 1, "A2": 2, "D1": -1, "D2": "=1/A1", "D3": 1, "C1": "=MATCH(ROUND(A2,0),D1:D3,0)",
+    },
     "exact lookup": {"A1": 1, "D1": -1, "D2": 0, "D3": 1, "E1": 5, "E2": 6, "E3": 7, "C1": "=INDEX(E1:E3,MATCH(ROUND(A1,0),D1:D3,0))"},
     "text in a sum": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A2,"")', "C1": "=SUM(B1:B2)+COUNTA(B1:B2)"},
     "powers": {"A1": 1, "A2": 2, "C1": "=(1+A2)^3+(1+A2)^-4+ABS(A1)^0.25+2^A1"},
