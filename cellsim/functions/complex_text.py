@@ -12,9 +12,7 @@ from cellsim.values import ErrorValue, Fault, Scalar
 _DECIMAL = r"(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?"
 _REAL = re.compile(rf"(?P<real>[-+]?{_DECIMAL})\Z")
 _IMAGINARY = re.compile(rf"(?P<imaginary>[-+]?(?:{_DECIMAL})?)(?P<unit>[ij])\Z")
-_BOTH = re.compile(
-    rf"(?P<real>[-+]?{_DECIMAL})(?P<imaginary>[-+](?:{_DECIMAL})?)(?P<unit>[ij])\Z"
-)
+_BOTH = re.compile(rf"(?P<real>[-+]?{_DECIMAL})(?P<imaginary>[-+](?:{_DECIMAL})?)(?P<unit>[ij])\Z")
 
 
 @dataclass(frozen=True, slots=True)

@@ -22,7 +22,8 @@ Whole64 = npt.NDArray[np.int64]
 def _outside(number: Numbers) -> npt.NDArray[np.bool_]:
     """Where a number is none of the 48-bit whole numbers."""
     values = np.asarray(number, dtype=np.float64)
-    return ~((values >= 0) & (values <= _LARGEST) & (values == np.trunc(values)))
+    inside = (values >= 0) & (values <= _LARGEST) & (values == np.trunc(values))
+    return np.logical_not(inside)
 
 
 def _whole(number: Numbers, bad: npt.NDArray[np.bool_]) -> Whole64:

@@ -8,7 +8,14 @@ from collections.abc import Callable, Iterator
 
 from cellsim.functions.complex_text import Complex, common_unit, complex_text, to_complex
 from cellsim.functions.dispatch import values_of
-from cellsim.functions.registry import ComplexNumber, Context, Number, Operand, Text, spreadsheet_function
+from cellsim.functions.registry import (
+    ComplexNumber,
+    Context,
+    Number,
+    Operand,
+    Text,
+    spreadsheet_function,
+)
 from cellsim.values import Array, ErrorValue, Fault, Reference, Value
 
 _NUM = ErrorValue.NUM
