@@ -21,8 +21,10 @@ from cellsim.api.study import Progress as Report
 from cellsim.api.study import open_study
 from cellsim.cli.tables import print_table, shown_number, shown_value
 from cellsim.errors import Problem, RunError
+from cellsim.report.cell_groups import grouped
 from cellsim.values import ErrorValue
 
+_MOST_SLOW = 5
 SHOWN_PROBABILITIES = (0.1, 0.5, 0.9)
 
 
@@ -138,8 +140,11 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
     typer.echo(
         f"model check: {check.agreeing:,} of {check.compared:,} formulas agree with their stored values"
     )
-    for place, reason in records.record.slow_cells[:5]:
-        typer.echo(f"slow: {place}: {reason}")
+    slow = grouped(records.record.slow_cells)
+    for place, reason, count in slow[:_MOST_SLOW]:
+        typer.echo(f"slow: {place}{f' ({count:,} cells)' if count > 1 else ''}: {reason}")
+    if len(slow) > _MOST_SLOW:
+        typer.echo(f"slow: and {len(slow) - _MOST_SLOW:,} more, see the sheet Model check")
     split = ", ".join(f"{stage} {value:.2f}" for stage, value in records.record.timings.items())
     typer.echo(f"{records.record.draws:,} draws in {seconds:.2f} s ({split}, write {writing:.2f})")
     typer.echo(f"written: {target}")

@@ -7,6 +7,7 @@ coerced before the kernel sees it, so that a kernel holds nothing but its own ar
 | --- | --- | --- |
 | `Number`, `Whole` | float, or int truncated toward zero | element by element |
 | `Text`, `Logical` | str, bool | element by element |
+| `ComplexNumber` | Complex: a number with the letter of its imaginary unit | element by element |
 | `ScalarValue` | a value that is no error, uncoerced | element by element |
 | `AnyScalar` | a value that may be an error | element by element |
 | `NumberItems` | list of floats, by the rule of SUM | numbers in them count, all else is passed over |
@@ -38,6 +39,7 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.complex_text import Complex
 from cellsim.values import Array, LambdaValue, Reference, Scalar, Value
 
 
@@ -48,6 +50,7 @@ class ArgumentKind(enum.Enum):
     WHOLE = "whole"
     TEXT = "text"
     LOGICAL = "logical"
+    COMPLEX = "complex"
     SCALAR = "scalar"
     ANY_SCALAR = "any scalar"
     NUMBER_ITEMS = "number items"
@@ -67,6 +70,7 @@ LIFTED = frozenset(
         ArgumentKind.WHOLE,
         ArgumentKind.TEXT,
         ArgumentKind.LOGICAL,
+        ArgumentKind.COMPLEX,
         ArgumentKind.SCALAR,
         ArgumentKind.ANY_SCALAR,
     }
@@ -82,6 +86,7 @@ Number = Annotated[float, ArgumentKind.NUMBER]
 Whole = Annotated[int, ArgumentKind.WHOLE]
 Text = Annotated[str, ArgumentKind.TEXT]
 Logical = Annotated[bool, ArgumentKind.LOGICAL]
+ComplexNumber = Annotated[Complex, ArgumentKind.COMPLEX]
 ScalarValue = Annotated[float | str | bool | None, ArgumentKind.SCALAR]
 AnyScalar = Annotated[Scalar, ArgumentKind.ANY_SCALAR]
 NumberItems = Annotated[list[float], ArgumentKind.NUMBER_ITEMS]

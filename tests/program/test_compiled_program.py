@@ -52,6 +52,11 @@ MODELS: dict[str, dict[str, object]] = {
     "logical or text read draw by draw": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "C1": '=IF(ISLOGICAL(B2),7,IF(ISTEXT(B2),LEN(B2),B2))+COUNTIF(B1:B2,">1")'},
     "condition that fails read draw by draw": {"A1": 1, "B1": '=IF(1/A1>0,A1,"none")', "C1": '=LEN(IFERROR(B1,"failed"))+MAX(B1:B1)'},
     "array formula": {"A1": 1, "A2": 2, "C1": "=SUMPRODUCT((A1:A2>0)*A1:A2)"},
+    "units": {"A1": 1, "A2": 2, "D1": "F", "C1": '=CONVERT(A1,D1,"C")+CONVERT(1/A2,"mi","km")+CONVERT(A1,"C","C")'},
+    "units that do not fit": {"A1": 1, "C1": '=CONVERT(1/A1,"m","kg")'},
+    "units of a logical": {"A1": 1, "C1": '=CONVERT(A1>0,"m","km")'},
+    "a unit that varies": {"A1": 1, "C1": '=CONVERT(2,IF(A1>0,"m","km"),"m")'},
+    "bits and steps": {"A1": 1, "A2": 2, "C1": "=IFERROR(BITAND(INT(A2),3),-1)+GESTEP(A1,0.5)+DELTA(A1)+ERF(A1,A2)"},
     "let": {"A1": 1, "A2": 2, "C1": "=LET(x,A1+1,y,x*A2,y-x)"},
 }  # fmt: skip
 
