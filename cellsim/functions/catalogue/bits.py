@@ -22,8 +22,10 @@ Whole64 = npt.NDArray[np.int64]
 def _outside(number: Numbers) -> npt.NDArray[np.bool_]:
     """Where a number is none of the 48-bit whole numbers."""
     values = np.asarray(number, dtype=np.float64)
-    inside = (values >= 0) & (values <= _LARGEST) & (values == np.trunc(values))
-    return np.logical_not(inside)
+    inside: npt.NDArray[np.bool_] = (
+        (values >= 0) & (values <= _LARGEST) & (values == np.trunc(values))
+    )
+    return ~inside
 
 
 def _whole(number: Numbers, bad: npt.NDArray[np.bool_]) -> Whole64:
