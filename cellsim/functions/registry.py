@@ -283,7 +283,8 @@ def over_draws(
     a spreadsheet error is `encode_error(...)` in its draw. Where an argument is a NaN (an error
     already), the result of that draw does not matter: the error is put there afterwards, but the
     kernel must neither raise nor hang on it. Arguments must not be written to. A kernel may return
-    None to say that it cannot serve these arguments: they are then taken draw by draw.
+    None to say that it cannot serve these arguments: they are then taken draw by draw. A keyword
+    parameter `date_1904` gets the workbook's date system.
 
     Args:
         names: The functions.

@@ -6,6 +6,7 @@ that can give an error without such a fault raise the given exception themselves
 
 from __future__ import annotations
 
+import inspect
 from collections.abc import Callable, Sequence
 from functools import partial
 from typing import Any
@@ -194,6 +195,8 @@ def kernel_runner(call: KernelCall, buffers: Buffers, base: Calculation) -> Call
     kernel = find_over_draws(call.function)
     if kernel is None:
         raise LookupError(call.function)
+    if "date_1904" in inspect.signature(kernel).parameters:
+        kernel = partial(kernel, date_1904=base.date_1904)
     gather = [_argument(argument, buffers) for argument in call.arguments]
 
     def run() -> AnyArray:

@@ -51,6 +51,8 @@ MODELS: dict[str, dict[str, object]] = {
     "text or a number read draw by draw": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "C1": '=LARGE(B1:B3,1)+LEN(B1&"")'},
     "logical or text read draw by draw": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "C1": '=IF(ISLOGICAL(B2),7,IF(ISTEXT(B2),LEN(B2),B2))+COUNTIF(B1:B2,">1")'},
     "condition that fails read draw by draw": {"A1": 1, "B1": '=IF(1/A1>0,A1,"none")', "C1": '=LEN(IFERROR(B1,"failed"))+MAX(B1:B1)'},
+    "index with a place of at least one": {"A1": 1, "A2": 2, "D1": "=A1", "D2": "=A2+A1", "D3": "=1/A1", "C1": "=INDEX(D1:D3,MIN(3,MAX(1,ROUND(A2,0))))+SUM(INDEX(D1:D2,MATCH(A1,{-9,0,1},1)))"},
+    "index with a place that may be nought": {"A1": 1, "A2": 2, "D1": "=A1", "D2": "=A2", "C1": "=SUM(INDEX(D1:D2,MAX(0,MIN(2,ROUND(A2,0)))))"},
     "array formula": {"A1": 1, "A2": 2, "C1": "=SUMPRODUCT((A1:A2>0)*A1:A2)"},
     "units": {"A1": 1, "A2": 2, "D1": "F", "C1": '=CONVERT(A1,D1,"C")+CONVERT(1/A2,"mi","km")+CONVERT(A1,"C","C")'},
     "units that do not fit": {"A1": 1, "C1": '=CONVERT(1/A1,"m","kg")'},
