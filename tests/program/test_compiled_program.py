@@ -59,6 +59,8 @@ MODELS: dict[str, dict[str, object]] = {
     "units of a logical": {"A1": 1, "C1": '=CONVERT(A1>0,"m","km")'},
     "a unit that varies": {"A1": 1, "C1": '=CONVERT(2,IF(A1>0,"m","km"),"m")'},
     "bits and steps": {"A1": 1, "A2": 2, "C1": "=IFERROR(BITAND(INT(A2),3),-1)+GESTEP(A1,0.5)+DELTA(A1)+ERF(A1,A2)"},
+    "logicals that add-in functions refuse": {"A1": 1, "A2": 2, "B1": "=A1>0", "C1": "=IFERROR(ERF(B1),7)+IFERROR(DELTA(TRUE,A1),9)+IFERROR(ERF(IF(A1>0,A2>1,A2)),11)"},
+    "ranges that add-in functions refuse": {"A1": 1, "A2": 2, "C1": "=IFERROR(ERF(A1:A2),7)+IFERROR(GESTEP(A2,A1:A2),9)"},
     "let": {"A1": 1, "A2": 2, "C1": "=LET(x,A1+1,y,x*A2,y-x)"},
 }  # fmt: skip
 

@@ -1,4 +1,9 @@
-"""Bessel functions, the error function, and steps."""
+"""Bessel functions, the error function, and steps.
+
+Stored Bessel values of spreadsheet programs are off in the eighth digit where they come from short
+polynomials: I0(1) is stored as Abramowitz and Stegun 9.8.1 gives it, to the last digit. The functions
+here are exact to double precision instead.
+"""
 
 from __future__ import annotations
 
