@@ -281,3 +281,30 @@ def test_shortest_interval_of_the_mass_calibration(tmp_path: Path) -> None:
     start = int(np.argmin(widths))
     assert abs(widths[start] - 0.2991) < 0.001
     assert abs(y[start] - 1.0834) < 0.006
+
+
+def test_gauge_block_of_jcgm_101_9_5(tmp_path: Path) -> None:
+    """Student, arcsine and curvilinear trapezoid inputs (6.4 of the standard), built in the workbook.
+
+    838 nm with a standard uncertainty of 35.8 nm; symmetric 99 % interval [744.2, 931.6], recomputed.
+    """
+    flat = 'distribution = "uniform"\nlow = 0\nhigh = 1'
+    inputs = dict.fromkeys(("t1", "t2", "t3", "t4", "arc", "c1", "c2", "c3", "c4"), flat)
+    inputs["alpha"] = 'distribution = "uniform"\nlow = 9.5e-6\nhigh = 13.5e-6'
+    inputs["theta"] = 'distribution = "normal"\nmean = -0.1\nsd = 0.2'
+    trapezoid = "({low}-{d}+2*{d}*{r})+{s}*(-2*({low}-{d}+2*{d}*{r}))"
+    d_alpha = trapezoid.format(low="-1E-6", d="1E-7", r="A6", s="A7")
+    d_theta = trapezoid.format(low="-0.05", d="0.025", r="A8", s="A9")
+    length = "(50000623+25*T.INV(A1,18))"
+    formula = (
+        f"={length}+(215+6*T.INV(A2,24))+4*T.INV(A3,5)+7*T.INV(A4,8)"
+        f"-{length}*(({d_alpha})*(A11+0.5*SIN(2*PI()*A5))+A10*({d_theta}))-50000000"
+    )
+    y = run(tmp_path, formula.replace("T.INV", "_xlfn.T.INV"), inputs)
+    close(float(y.mean()), 838.0, 35.808 / DRAWS**0.5)
+    close(float(y.std()), 35.808, 35.808 / (1.9 * DRAWS) ** 0.5)
+    for probability, end in ((0.005, 744.2), (0.995, 931.6)):
+        assert (
+            abs(float(np.quantile(y, probability)) - end)
+            < 4.5 * quantile_error(y, probability) + 0.1
+        )
