@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy.special import betainc, betaincinv, betaln, gamma, gammainc, gammaincinv, xlog1py, xlogy
+from scipy.special import betainc, gamma, gammainc, gammaincinv
 
 from cellsim.functions.encoded import FloatArray, Numbers, checked, numeric_function
+from cellsim.functions.probability_tails import beta_shares
 from cellsim.functions.registry import Logical, Number
-from cellsim.functions.saddle_point import binomial_mass, log_gamma, poisson_mass
+from cellsim.functions.saddle_point import beta_density, log_gamma, poisson_mass
 from cellsim.values import ErrorValue
 
 _NUM = ErrorValue.NUM
@@ -15,12 +16,6 @@ _NUM = ErrorValue.NUM
 
 def _floats(*numbers: Numbers) -> list[FloatArray]:
     return [np.asarray(number, dtype=np.float64) for number in numbers]
-
-
-def _beta_density(share: FloatArray, rest: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
-    direct = np.exp(xlogy(a - 1, share) + xlog1py(b - 1, -share) - betaln(a, b))
-    expanded = (a + b - 1) * binomial_mass(a - 1, a + b - 2, share, rest)
-    return np.where((a <= 2) | (b <= 2), direct, expanded)
 
 
 @numeric_function("BETA.DIST")
@@ -36,7 +31,7 @@ def beta_distribution(
     at, a, b, start, end = _floats(x, alpha, beta, low, high)
     width = end - start
     share = (at - start) / width
-    density = _beta_density(share, (end - at) / width, a, b) / width
+    density = beta_density(share, (end - at) / width, a, b) / width
     return checked(
         np.where(np.asarray(cumulative) != 0, betainc(a, b, share), density),
         ((a <= 0) | (b <= 0) | (at < start) | (at > end) | (start >= end), _NUM),
@@ -62,7 +57,7 @@ def beta_quantile(
     """The quantile of the beta distribution between two limits."""
     p, a, b, start, end = _floats(probability, alpha, beta, low, high)
     return checked(
-        start + (end - start) * betaincinv(a, b, p),
+        start + (end - start) * beta_shares(a, b, p, 1 - p)[0],
         ((p <= 0) | (p > 1) | (a <= 0) | (b <= 0) | (start >= end), _NUM),
     )
 

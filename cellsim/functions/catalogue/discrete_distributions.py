@@ -16,7 +16,10 @@ _LARGEST_COUNT = 2.0**53
 """Beyond it whole numbers have gaps and cannot be counted."""
 
 _TIE = 2e-14
-"""A cumulative probability that reaches another but for rounding reaches it."""
+"""A cumulative probability that reaches another but for rounding reaches it; relative."""
+
+_HALF_DIGIT = 2.0**-53
+"""By so much a limit near 1 may have been rounded."""
 
 
 def _float(number: Numbers) -> FloatArray:
@@ -88,7 +91,7 @@ def binomial_quantile(trials: Whole, probability: Number, alpha: Number) -> Floa
 def _reaches(k: FloatArray, n: FloatArray, p: FloatArray, limit: FloatArray) -> Condition:
     """Whether the cumulative probability of k reaches a limit, judged by the smaller tail."""
     by_below = _binomial_below(k, n, p) >= limit * (1 - _TIE)
-    by_above = _binomial_above(k, n, p) <= (1 - limit) * (1 + _TIE)
+    by_above = _binomial_above(k, n, p) <= (1 - limit) * (1 + _TIE) + _HALF_DIGIT
     # An upper tail below the least positive number counts as zero, yet certainty comes with n only.
     certain = (k >= n) | (p == 0)
     return np.where(limit < 0.5, by_below, np.where(limit == 1, certain, by_above))
