@@ -21,7 +21,7 @@ from scipy.special import (
     stdtr,
 )
 
-from cellsim.functions.encoded import FloatArray, Numbers
+from cellsim.functions.encoded import FloatArray, Numbers, apart
 from cellsim.functions.saddle_point import beta_density, log_beta
 
 
@@ -29,7 +29,14 @@ def gamma_quantile_above(shape: Numbers, probability: Numbers) -> FloatArray:
     """The standard gamma quantile that is exceeded with a probability in (0, 1]."""
     p = np.asarray(probability, dtype=np.float64)
     # 1 - p is exact from one half on, where the inverse of the upper tail is not reliable.
-    return np.where(p < 0.5, gammainccinv(shape, p), gammaincinv(shape, 1 - p))
+    a, above = np.broadcast_arrays(np.asarray(shape, dtype=np.float64), p)
+    return apart(
+        above < 0.5,
+        gammainccinv,
+        lambda a, p: gammaincinv(a, 1 - p),
+        a,
+        above,
+    )
 
 
 def chi_squared_above(x: Numbers, freedom: Numbers) -> FloatArray:
@@ -46,15 +53,29 @@ def f_shares(x: Numbers, first: Numbers, second: Numbers) -> tuple[FloatArray, F
 def f_below(x: Numbers, first: Numbers, second: Numbers) -> FloatArray:
     """The probability that an F variable with these degrees of freedom is at most x >= 0."""
     share, rest = f_shares(x, first, second)
-    a, b = np.asarray(first) / 2, np.asarray(second) / 2
-    return np.where(share < 0.5, betainc(a, b, share), betaincc(b, a, rest))
+    return _beta_below(np.asarray(first) / 2, np.asarray(second) / 2, share, rest)
 
 
 def f_above(x: Numbers, first: Numbers, second: Numbers) -> FloatArray:
     """The probability that an F variable with these degrees of freedom exceeds x >= 0."""
     share, rest = f_shares(x, first, second)
-    a, b = np.asarray(first) / 2, np.asarray(second) / 2
-    return np.where(share < 0.5, betaincc(a, b, share), betainc(b, a, rest))
+    return _beta_below(np.asarray(second) / 2, np.asarray(first) / 2, rest, share)
+
+
+def _beta_below(a: Numbers, b: Numbers, share: FloatArray, rest: FloatArray) -> FloatArray:
+    """The cumulative beta distribution at a share, from whichever of the two has more digits."""
+    first, second, at, beyond = np.broadcast_arrays(
+        *(np.asarray(number, dtype=np.float64) for number in (a, b, share, rest))
+    )
+    return apart(
+        at < 0.5,
+        lambda a, b, x, _: betainc(a, b, x),
+        lambda a, b, _, y: betaincc(b, a, y),
+        first,
+        second,
+        at,
+        beyond,
+    )
 
 
 def beta_shares(
@@ -95,10 +116,10 @@ def _beta_shares_of_tail(
     """
     leading = np.exp((np.log(p) + np.log(a) + log_beta(a, b)) / a)
     series = leading * (1 + (b - 1) / (a + 1) * leading)
-    found = betaincinv(a, b, p)
     small = leading * (1 + b) < _SMALL
+    found = betaincinv(a, b, p)
     share = np.where(small, series, np.where(np.isnan(found), leading, found))
-    rest = np.where(share < 0.9, 1 - share, betainccinv(b, a, p))
+    rest = apart(share < 0.9, lambda x, *_: 1 - x, lambda _, *of: betainccinv(*of), share, b, a, p)
     far = ~small & (p < _RARE)
     lost = far & ~(np.abs(np.log(betainc(a, b, share) / p)) < 1)
     if np.any(lost):

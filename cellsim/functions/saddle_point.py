@@ -90,6 +90,14 @@ def poisson_mass(x: Numbers, mean: Numbers) -> FloatArray:
     return np.where(np.isposinf(m) & np.isfinite(given), 0.0, found)
 
 
+def gamma_density(x: Numbers, shape: Numbers) -> FloatArray:
+    """The density of the standard gamma distribution for x >= 0; infinite or NaN at a pole."""
+    a = np.asarray(shape, dtype=np.float64)
+    low = a < 1
+    mass = poisson_mass(np.where(low, a, a - 1), x)
+    return np.where(low, a / np.asarray(x) * mass, mass)
+
+
 def binomial_mass(x: Numbers, n: Numbers, p: Numbers, q: Numbers) -> FloatArray:
     """The binomial coefficient of n over x times p^x q^(n - x), for 0 <= x <= n, whole or not.
 

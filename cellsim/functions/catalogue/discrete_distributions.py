@@ -3,9 +3,17 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy.special import betainc, betaincc, gammaincc
+from scipy.special import betainc, betaincc, gammaincc, ndtri
 
-from cellsim.functions.encoded import Condition, FloatArray, Numbers, checked, numeric_function
+from cellsim.functions.encoded import (
+    Condition,
+    FloatArray,
+    Numbers,
+    apart,
+    checked,
+    chosen,
+    numeric_function,
+)
 from cellsim.functions.hypergeometric import hypergeometric_below, hypergeometric_mass
 from cellsim.functions.registry import Logical, Number, Whole
 from cellsim.functions.saddle_point import binomial_mass, poisson_mass
@@ -30,10 +38,6 @@ def _truncated(number: Numbers) -> FloatArray:
     return np.trunc(_float(number))
 
 
-def _is_set(flag: Numbers) -> Condition:
-    return np.not_equal(flag, 0)
-
-
 def _binomial_below(k: FloatArray, n: FloatArray, p: FloatArray) -> FloatArray:
     """The probability of at most k successes; 0 for negative k."""
     found = betaincc(k + 1, n - k, p)
@@ -52,7 +56,9 @@ def binomial(
 ) -> FloatArray:
     """The binomial distribution: cumulative, or the probability of so many successes."""
     k, n, p = _truncated(successes), _truncated(trials), _float(probability)
-    found = np.where(_is_set(cumulative), _binomial_below(k, n, p), binomial_mass(k, n, p, 1 - p))
+    found = chosen(
+        cumulative, lambda: _binomial_below(k, n, p), lambda: binomial_mass(k, n, p, 1 - p)
+    )
     return checked(found, ((k < 0) | (k > n) | (p < 0) | (p > 1) | (n > _LARGEST_COUNT), _NUM))
 
 
@@ -79,22 +85,41 @@ def binomial_quantile(trials: Whole, probability: Number, alpha: Number) -> Floa
     """The least number of successes whose cumulative probability reaches a limit."""
     n, p, limit = np.broadcast_arrays(_truncated(trials), _float(probability), _float(alpha))
     outside = (n < 0) | (n > _LARGEST_COUNT) | (p < 0) | (p > 1) | (limit < 0) | (limit > 1)
-    low, high = np.zeros(n.shape), np.where(outside | np.isnan(p * limit), 0.0, n)
+    outside = outside | np.isnan(n) | np.isnan(p) | np.isnan(limit)
+    most = np.where(outside, 0.0, n)
+    low, high = _near_quantile(most, p, limit)
+    high = np.where(_reaches(high, n, p, limit), high, most)
+    low = np.where(_reaches(low - 1, n, p, limit), 0.0, np.minimum(low, high))
     while np.any(low < high):
         middle = np.floor((low + high) / 2)
         reached = _reaches(middle, n, p, limit)
-        low, high = np.where(reached, low, middle + 1), np.where(reached, middle, high)
-        high = np.maximum(low, high)
-    return checked(low, (outside | np.isnan(p * limit), _NUM))
+        # Where the two have met, the middle is the answer, which its own test must not move.
+        low, high = (
+            np.where(reached | (low == high), low, middle + 1),
+            np.where(reached, middle, high),
+        )
+    return checked(low, (outside, _NUM))
+
+
+def _near_quantile(
+    n: FloatArray, p: FloatArray, limit: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Two counts that mostly enclose the quantile, by the expansion of Cornish and Fisher."""
+    z = ndtri(limit)
+    guess = n * p + np.sqrt(n * p * (1 - p)) * z + (np.square(z) - 1) * (1 - 2 * p) / 6
+    guess = np.where(np.isfinite(guess), np.floor(guess), 0.0)
+    return np.clip(guess - 1, 0.0, n), np.clip(guess + 2, 0.0, n)
 
 
 def _reaches(k: FloatArray, n: FloatArray, p: FloatArray, limit: FloatArray) -> Condition:
     """Whether the cumulative probability of k reaches a limit, judged by the smaller tail."""
-    by_below = _binomial_below(k, n, p) >= limit * (1 - _TIE)
-    by_above = _binomial_above(k, n, p) <= (1 - limit) * (1 + _TIE) + _HALF_DIGIT
+    low = limit < 0.5
+    tail = apart(low, betaincc, betainc, k + 1, n - k, p)
+    by_below = tail >= limit * (1 - _TIE)
+    by_above = tail <= (1 - limit) * (1 + _TIE) + _HALF_DIGIT
     # An upper tail below the least positive number counts as zero, yet certainty comes with n only.
-    certain = (k >= n) | (p == 0)
-    return np.where(limit < 0.5, by_below, np.where(limit == 1, certain, by_above))
+    found = np.where(low, by_below, by_above & ((limit < 1) | (p == 0)))
+    return np.asarray((k >= n) | ((k >= 0) & found) | ((k < 0) & (limit == 0)))
 
 
 def _failures(
@@ -112,8 +137,12 @@ def negative_binomial(
 ) -> FloatArray:
     """The number of failures before so many successes: cumulative, or the probability of it."""
     f, s, p, outside = _failures(failures, successes, probability)
-    mass = s / (s + f) * binomial_mass(s, s + f, p, 1 - p)
-    return checked(np.where(_is_set(cumulative), betainc(s, f + 1, p), mass), (outside, _NUM))
+    found = chosen(
+        cumulative,
+        lambda: np.asarray(betainc(s, f + 1, p), dtype=np.float64),
+        lambda: s / (s + f) * binomial_mass(s, s + f, p, 1 - p),
+    )
+    return checked(found, (outside, _NUM))
 
 
 @numeric_function("NEGBINOMDIST")
@@ -127,7 +156,7 @@ def negative_binomial_mass(failures: Whole, successes: Whole, probability: Numbe
 def poisson(count: Whole, mean: Number, cumulative: Logical) -> FloatArray:
     """The Poisson distribution: cumulative, or the probability of a count."""
     k, m = _truncated(count), _float(mean)
-    found = np.where(_is_set(cumulative), gammaincc(k + 1, m), poisson_mass(k, m))
+    found = chosen(cumulative, lambda: gammaincc(k + 1, m), lambda: poisson_mass(k, m))
     return checked(found, ((k < 0) | (m < 0), _NUM))
 
 
@@ -150,9 +179,12 @@ def hypergeometric(
     """Marked items in a sample without replacement: cumulative, or the probability of so many."""
     x, n, m, total = (_truncated(part) for part in (successes, sample, marked, population))
     outside = _cannot_draw(x, n, m, total)
-    wanted = _is_set(cumulative) & ~outside
-    summed = hypergeometric_below(np.where(wanted, x, -1.0), n, m, total)
-    found = np.where(wanted, summed, hypergeometric_mass(x, n, m, total))
+    # What is outside is not summed: it might never end.
+    found = chosen(
+        cumulative,
+        lambda: hypergeometric_below(np.where(outside, -1.0, x), n, m, total),
+        lambda: hypergeometric_mass(x, n, m, total),
+    )
     return checked(found, (outside, _NUM))
 
 
