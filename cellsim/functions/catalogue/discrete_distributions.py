@@ -1,4 +1,4 @@
-"""Distributions of counts: binomial, negative binomial, Poisson, hypergeometric."""
+"""Distributions of counts: binomial, negative binomial, Poisson, hypergeometric, and any given one."""
 
 from __future__ import annotations
 
@@ -13,9 +13,19 @@ from cellsim.functions.encoded import (
     checked,
     chosen,
     numeric_function,
+    single,
 )
 from cellsim.functions.hypergeometric import hypergeometric_below, hypergeometric_mass
-from cellsim.functions.registry import Logical, Number, Whole
+from cellsim.functions.least_squares import paired_numbers
+from cellsim.functions.registry import (
+    ArrayValues,
+    Logical,
+    Number,
+    Stack,
+    Whole,
+    over_draws,
+    spreadsheet_function,
+)
 from cellsim.functions.saddle_point import binomial_mass, poisson_mass
 from cellsim.values import ErrorValue
 
@@ -195,3 +205,34 @@ def hypergeometric_count(
     """The probability of so many marked items in a sample without replacement."""
     x, n, m, total = (_truncated(part) for part in (successes, sample, marked, population))
     return checked(hypergeometric_mass(x, n, m, total), (_cannot_draw(x, n, m, total), _NUM))
+
+
+def _between(
+    values: FloatArray, shares: FloatArray, low: Numbers, high: Numbers | None
+) -> FloatArray:
+    """PROB of items along the first axis; sums are taken one by one, so that draws stay apart."""
+    if not len(values):
+        return checked(0.0, (True, _NUM))
+    wrong = ((shares <= 0) | (shares > 1)).any(axis=0)
+    wrong = wrong | (np.abs(np.cumsum(shares, axis=0)[-1] - 1) > 1e-9)
+    within = (values >= low) & (values <= (low if high is None else high))
+    return checked(np.cumsum(np.where(within, shares, 0.0), axis=0)[-1], (wrong, _NUM))
+
+
+@spreadsheet_function("PROB")
+def probability_between(
+    values: ArrayValues, probabilities: ArrayValues, low: Number, high: Number | None = None
+) -> float | ErrorValue:
+    """The probability that a value lies between two limits."""
+    pairs = paired_numbers(values, probabilities)
+    return single(_between)(*(np.array(numbers) for numbers in pairs), low, high)
+
+
+@over_draws("PROB")
+def probability_between_over_draws(
+    values: Stack, probabilities: Stack, low: Numbers, high: Numbers | None = None
+) -> FloatArray:
+    """PROB over draws."""
+    if len(values.data) != len(probabilities.data):
+        return checked(0.0, (True, ErrorValue.NA))
+    return _between(values.data, probabilities.data, low, high)
