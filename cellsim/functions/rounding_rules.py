@@ -7,6 +7,7 @@ so the digits that count are the first 15 significant ones.
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 import numpy.typing as npt
@@ -52,15 +53,46 @@ def round_half_away(number: float, digits: int) -> float:
 
 def round_half_away_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
     """`round_half_away` on arrays; digits already cut to whole numbers."""
+    return _round_over_draws(number, digits, _half_away)
+
+
+def round_up_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
+    """`round_up` on arrays; digits already cut to whole numbers."""
+    return _round_over_draws(number, digits, _up)
+
+
+def round_down_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
+    """`round_down` on arrays; digits already cut to whole numbers."""
+    return _round_over_draws(number, digits, _down)
+
+
+def _half_away(shifted: FloatArray) -> FloatArray:
+    whole = np.floor(shifted)
+    fraction = shifted - whole
+    return whole + ((fraction >= 0.5) | (0.5 - fraction <= shifted * _NEARLY))
+
+
+def _up(shifted: FloatArray) -> FloatArray:
+    whole = np.floor(shifted)
+    return whole + (shifted - whole > shifted * _NEARLY)
+
+
+def _down(shifted: FloatArray) -> FloatArray:
+    whole = np.floor(shifted)
+    return whole + (whole + 1 - shifted <= shifted * _NEARLY)
+
+
+def _round_over_draws(
+    number: FloatArray, digits: FloatArray | float, to_whole: Callable[[FloatArray], FloatArray]
+) -> FloatArray:
+    """Shift, make whole, shift back, by the same steps as for single numbers; NaN stays NaN."""
     numbers = np.asarray(number, dtype=np.float64)
     places = np.asarray(digits, dtype=np.float64)
     up = np.where(places >= 0, _power_array(np.maximum(places, 0)), 1.0)
     down = np.where(places < 0, _power_array(np.maximum(-places, 0)), 1.0)
     size = np.abs(numbers)
     shifted = np.where(places >= 0, size * up, size / down)
-    whole = np.floor(shifted)
-    fraction = shifted - whole
-    whole = whole + ((fraction >= 0.5) | (0.5 - fraction <= shifted * _NEARLY))
+    whole = to_whole(shifted)
     back = np.where(places >= 0, whole / up, whole * down)
     result = np.where(shifted < 2.0**52, np.copysign(back, numbers), numbers)
     return np.where(

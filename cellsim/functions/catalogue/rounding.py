@@ -10,9 +10,11 @@ from cellsim.functions.registry import FloatArray, Number, Whole, over_draws, sp
 from cellsim.functions.rounding_rules import (
     nearly_whole,
     round_down,
+    round_down_over_draws,
     round_half_away,
     round_half_away_over_draws,
     round_up,
+    round_up_over_draws,
 )
 from cellsim.values import ErrorValue, Fault, encode_error
 
@@ -47,30 +49,22 @@ def truncate(number: Number, digits: Whole = 0) -> float:
     return round_down(number, digits)
 
 
-def _each(scalar: object, number: FloatArray, digits: FloatArray | float) -> FloatArray:
-    numbers, places = np.broadcast_arrays(np.asarray(number, dtype=np.float64), np.trunc(digits))
-    fine = np.isfinite(numbers) & np.isfinite(places)
-    out = np.full(numbers.shape, np.nan)
-    out[fine] = [scalar(float(n), int(p)) for n, p in zip(numbers[fine], places[fine], strict=True)]  # type: ignore[operator]
-    return out
-
-
 @over_draws("ROUNDUP")
-def round_up_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
+def round_away_from_zero_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
     """ROUNDUP over draws."""
-    return _each(round_up, number, digits)
+    return round_up_over_draws(number, np.trunc(digits))
 
 
 @over_draws("ROUNDDOWN")
-def round_down_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
+def round_toward_zero_over_draws(number: FloatArray, digits: FloatArray | float) -> FloatArray:
     """ROUNDDOWN over draws."""
-    return _each(round_down, number, digits)
+    return round_down_over_draws(number, np.trunc(digits))
 
 
 @over_draws("TRUNC")
 def truncate_over_draws(number: FloatArray, digits: FloatArray | float = 0.0) -> FloatArray:
     """TRUNC over draws."""
-    return _each(round_down, number, digits)
+    return round_down_over_draws(number, np.trunc(digits))
 
 
 @spreadsheet_function("INT")
