@@ -40,12 +40,16 @@ class Exceedance:
         below: Share of draws strictly below it.
         equal: Draws equal to it.
         above: Share of draws strictly above it.
+        mean_above: Mean of the draws strictly above it; None if there are none.
+        mean_others: Mean of the draws at or below it; None if there are none.
     """
 
     value: float
     below: Share
     equal: int
     above: Share
+    mean_above: float | None
+    mean_others: float | None
 
 
 def wilson_share(hits: int, count: int, confidence: float = 0.95) -> Share:
@@ -78,7 +82,7 @@ def exceedance(ordered: FloatArray, value: float, confidence: float = 0.95) -> E
         confidence: Confidence level of the intervals.
 
     Returns:
-        The shares below and above, and the number equal.
+        The shares below and above, the number equal, and the means on both sides.
     """
     count = len(ordered)
     below = int(np.searchsorted(ordered, value, side="left"))
@@ -88,4 +92,11 @@ def exceedance(ordered: FloatArray, value: float, confidence: float = 0.95) -> E
         wilson_share(below, count, confidence),
         up_to - below,
         wilson_share(count - up_to, count, confidence),
+        _mean(ordered[up_to:]),
+        _mean(ordered[:up_to]),
     )
+
+
+def _mean(values: FloatArray) -> float | None:
+    """The mean; divided before it is summed, so that numbers near the largest double do not overflow."""
+    return float(np.sum(values / len(values))) if len(values) else None

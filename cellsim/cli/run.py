@@ -21,8 +21,10 @@ from cellsim.api.study import Progress as Report
 from cellsim.api.study import open_study
 from cellsim.cli.tables import print_table, shown_number, shown_value
 from cellsim.errors import Problem, RunError
+from cellsim.report.cell_groups import grouped
 from cellsim.values import ErrorValue
 
+_MOST_SLOW = 5
 SHOWN_PROBABILITIES = (0.1, 0.5, 0.9)
 
 
@@ -114,13 +116,13 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
         kept = values[np.isfinite(values)]
         name = f"{record.name} ({record.unit})" if record.unit else record.name
         base = (
-            shown_number(record.base)
+            shown_number(record.base, record.unit)
             if isinstance(record.base, float)
             else shown_value(record.base)
         )
-        mean = shown_number(float(kept.mean())) if len(kept) else "-"
+        mean = shown_number(float(kept.mean()), record.unit) if len(kept) else "-"
         spread = [
-            shown_number(float(quantiles[record.name].iloc[k]))
+            shown_number(float(quantiles[record.name].iloc[k]), record.unit)
             for k in range(len(SHOWN_PROBABILITIES))
         ]
         rows.append((name, base, mean, *spread, f"{len(values) - len(kept):,}"))
@@ -130,15 +132,19 @@ def _print(outcome: Result, target: Path, seconds: float, writing: float) -> Non
         for threshold in record.thresholds:
             if len(kept):
                 above = float((kept > threshold.value).mean())
-                typer.echo(
-                    f"{record.name} above {threshold.text} ({shown_number(threshold.value)}): {above:.2%} of draws"
-                )
+                value = shown_number(threshold.value, record.unit)
+                value += " %" if record.unit == "%" else ""
+                source = f" ({threshold.text})" if threshold.text.startswith("=") else ""
+                typer.echo(f"{record.name} above {value}{source}: {above:.2%} of draws")
     check = records.check
     typer.echo(
         f"model check: {check.agreeing:,} of {check.compared:,} formulas agree with their stored values"
     )
-    for place, reason in records.record.slow_cells[:5]:
-        typer.echo(f"slow: {place}: {reason}")
+    slow = grouped(records.record.slow_cells)
+    for place, reason, count in slow[:_MOST_SLOW]:
+        typer.echo(f"slow: {place}{f' ({count:,} cells)' if count > 1 else ''}: {reason}")
+    if len(slow) > _MOST_SLOW:
+        typer.echo(f"slow: and {len(slow) - _MOST_SLOW:,} more, see the sheet Model check")
     split = ", ".join(f"{stage} {value:.2f}" for stage, value in records.record.timings.items())
     typer.echo(f"{records.record.draws:,} draws in {seconds:.2f} s ({split}, write {writing:.2f})")
     typer.echo(f"written: {target}")

@@ -42,10 +42,14 @@ def shown_value(value: Scalar) -> str:
     return f'"{value}"'
 
 
-def shown_number(number: float) -> str:
-    """A figure with about six significant digits and thousands separators."""
+def shown_number(number: float, unit: str = "") -> str:
+    """A figure with about six significant digits and thousands separators; in hundredths if the unit is %."""
     if number != number:
         return "-"
+    if unit == "%":
+        number *= 100
+    if number == 0:
+        return "0"
     if number and not 1e-4 <= abs(number) < 1e12:
         return f"{number:.5e}"
     digits = max(0, 5 - len(str(int(abs(number))))) if abs(number) >= 1 else 6

@@ -11,6 +11,9 @@ import math
 from cellsim.functions.number_text import number_from_text
 from cellsim.values import Array, ErrorValue, Fault, Scalar
 
+_MOST_DECIMALS = 19
+"""Numbers that need more decimals are written with an exponent: stored complex numbers show 19, never 20."""
+
 
 def to_number(value: Scalar, *, date_1904: bool = False) -> float:
     """A scalar in an arithmetic place: blank is 0, logicals are 1 and 0, numeric text is parsed.
@@ -80,7 +83,9 @@ def general_text(number: float) -> str:
             return text
         decimals = max(0, 14 - exponent)
         plain = f"{float(text):.{min(decimals, 300)}f}"
-        return plain.rstrip("0").rstrip(".") if "." in plain else plain
+        plain = plain.rstrip("0").rstrip(".") if "." in plain else plain
+        if len(plain.partition(".")[2]) <= _MOST_DECIMALS:
+            return plain
     mantissa, _, power = f"{number:.14e}".partition("e")
     mantissa = mantissa.rstrip("0").rstrip(".")
     sign = "-" if power[0] == "-" else "+"

@@ -9,6 +9,7 @@ from typing import Any, TypeAlias
 import numpy as np
 
 from cellsim.functions.coercion import numbers_in, to_logical, to_number, to_text
+from cellsim.functions.complex_text import to_complex
 from cellsim.functions.registry import (
     LIFTED,
     ArgumentKind,
@@ -195,6 +196,7 @@ _COERCIONS: dict[ArgumentKind, Callable[[Any, Context], Any]] = {
     ArgumentKind.WHOLE: _whole_number,
     ArgumentKind.TEXT: lambda value, _context: to_text(value),
     ArgumentKind.LOGICAL: lambda value, _context: to_logical(value),
+    ArgumentKind.COMPLEX: lambda value, _context: to_complex(value),
     ArgumentKind.SCALAR: _not_an_error,
     ArgumentKind.ANY_SCALAR: lambda value, _context: value,
     ArgumentKind.NUMBER_ITEMS: _number_items,

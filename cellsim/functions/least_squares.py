@@ -17,6 +17,17 @@ FloatArray = npt.NDArray[np.float64]
 _RANK_TOLERANCE = 1e-12
 
 
+def refuse_errors(*items: Scalar) -> None:
+    """Refuse errors among the data of statistics that take pairs or samples.
+
+    Raises:
+        Fault: The first error among them; #NUM! in place of #NULL!, as stored values show.
+    """
+    for item in items:
+        if isinstance(item, ErrorValue):
+            raise Fault(ErrorValue.NUM if item is ErrorValue.NULL else item)
+
+
 def paired_numbers(first: Array, second: Array) -> tuple[list[float], list[float]]:
     """The pairs of which both are numbers.
 
@@ -28,9 +39,7 @@ def paired_numbers(first: Array, second: Array) -> tuple[list[float], list[float
     x: list[float] = []
     y: list[float] = []
     for a, b in zip(first.items, second.items, strict=True):
-        for item in (a, b):
-            if isinstance(item, ErrorValue):
-                raise Fault(item)
+        refuse_errors(a, b)
         if type(a) is float and type(b) is float:
             x.append(a)
             y.append(b)

@@ -7,6 +7,7 @@ coerced before the kernel sees it, so that a kernel holds nothing but its own ar
 | --- | --- | --- |
 | `Number`, `Whole` | float, or int truncated toward zero | element by element |
 | `Text`, `Logical` | str, bool | element by element |
+| `ComplexNumber` | Complex: a number with the letter of its imaginary unit | element by element |
 | `ScalarValue` | a value that is no error, uncoerced | element by element |
 | `AnyScalar` | a value that may be an error | element by element |
 | `NumberItems` | list of floats, by the rule of SUM | numbers in them count, all else is passed over |
@@ -38,6 +39,7 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.cells import CellRef, RangeRef
+from cellsim.functions.complex_text import Complex
 from cellsim.values import Array, LambdaValue, Reference, Scalar, Value
 
 
@@ -48,6 +50,7 @@ class ArgumentKind(enum.Enum):
     WHOLE = "whole"
     TEXT = "text"
     LOGICAL = "logical"
+    COMPLEX = "complex"
     SCALAR = "scalar"
     ANY_SCALAR = "any scalar"
     NUMBER_ITEMS = "number items"
@@ -67,6 +70,7 @@ LIFTED = frozenset(
         ArgumentKind.WHOLE,
         ArgumentKind.TEXT,
         ArgumentKind.LOGICAL,
+        ArgumentKind.COMPLEX,
         ArgumentKind.SCALAR,
         ArgumentKind.ANY_SCALAR,
     }
@@ -82,6 +86,7 @@ Number = Annotated[float, ArgumentKind.NUMBER]
 Whole = Annotated[int, ArgumentKind.WHOLE]
 Text = Annotated[str, ArgumentKind.TEXT]
 Logical = Annotated[bool, ArgumentKind.LOGICAL]
+ComplexNumber = Annotated[Complex, ArgumentKind.COMPLEX]
 ScalarValue = Annotated[float | str | bool | None, ArgumentKind.SCALAR]
 AnyScalar = Annotated[Scalar, ArgumentKind.ANY_SCALAR]
 NumberItems = Annotated[list[float], ArgumentKind.NUMBER_ITEMS]
@@ -203,6 +208,7 @@ DrawsKernel: TypeAlias = Callable[..., FloatArray | None]
 
 _FUNCTIONS: dict[str, FunctionRecord] = {}
 _OVER_DRAWS: dict[str, DrawsKernel] = {}
+_PICKING: set[str] = set()
 _MOST_ARGUMENTS = 255
 _RESULTS: dict[object, str] = {float: "number", int: "number", str: "text", bool: "logical"}
 
@@ -265,7 +271,9 @@ def spreadsheet_function(
     return register
 
 
-def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
+def over_draws(
+    *names: str, picks_items: bool = False
+) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     """Register the form of a function that works on all draws of a block at once.
 
     It takes the same arguments as the kernel does. `Number` and `Whole` arguments are float arrays
@@ -275,7 +283,13 @@ def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     a spreadsheet error is `encode_error(...)` in its draw. Where an argument is a NaN (an error
     already), the result of that draw does not matter: the error is put there afterwards, but the
     kernel must neither raise nor hang on it. Arguments must not be written to. A kernel may return
-    None to say that it cannot serve these arguments: they are then taken draw by draw.
+    None to say that it cannot serve these arguments: they are then taken draw by draw. A keyword
+    parameter `date_1904` gets the workbook's date system.
+
+    Args:
+        names: The functions.
+        picks_items: Whether it finds or picks items of its `Stack` arguments, so that an error in an
+            item that is not picked does not matter; the kernel answers for errors inside stacks itself.
 
     Raises:
         ValueError: A name is registered twice.
@@ -286,6 +300,8 @@ def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
             if name in _OVER_DRAWS:
                 raise ValueError(f"{name} has two kernels over draws")
             _OVER_DRAWS[name] = kernel
+            if picks_items:
+                _PICKING.add(name)
         return kernel
 
     return register
@@ -314,6 +330,11 @@ def find_function(name: str) -> FunctionRecord | None:
 def find_over_draws(name: str) -> DrawsKernel | None:
     """The kernel over draws of that name, or None."""
     return _OVER_DRAWS.get(name)
+
+
+def picks_items(name: str) -> bool:
+    """Whether the kernel over draws of that name answers for errors inside its stacks itself."""
+    return name in _PICKING
 
 
 def all_functions() -> dict[str, FunctionRecord]:

@@ -42,6 +42,18 @@ class _CycleFoundError(Exception):
         self.cells = cells
 
 
+class _FedByCycleError(Exception):
+    """A cell that feeds a cycle reads a cell of it: it belongs to the cycle.
+
+    Attributes:
+        cells: The cell and those by which it does.
+    """
+
+    def __init__(self, cells: tuple[CellRef, ...]) -> None:
+        super().__init__()
+        self.cells = cells
+
+
 @dataclass(frozen=True, slots=True)
 class Cycle:
     """Cells that depend on each other in a circle.
@@ -107,6 +119,7 @@ class Calculation:
         self._areas: dict[RangeRef, Array] = {}
         self._ready: set[RangeRef] = set()
         self._active: dict[CellRef, None] = {}
+        self._pending: frozenset[CellRef] = frozenset()  # cells of the cycles being fed
         self._moving: frozenset[CellRef] = frozenset()  # cells of the cycle being solved
         self._moving_areas: dict[RangeRef, bool] = {}
         self.lock = threading.RLock()
@@ -245,6 +258,8 @@ class Calculation:
             formula, precedents = stack[-1]
             for cell in precedents:
                 if cell in waiting or cell in self._active or self._is_done(cell):
+                    continue
+                if cell in self._pending:
                     continue  # a chain that closes here may still turn out not to be followed
                 precedent = self._graph.formula(cell)
                 if precedent is not None:
@@ -274,6 +289,8 @@ class Calculation:
         if cell in self._active:
             chain = list(self._active)
             raise _CycleFoundError(tuple(chain[chain.index(cell) :]))
+        if cell in self._pending:
+            raise _FedByCycleError(tuple(self._active))
         self._active[cell] = None
         try:
             self._store(formula, self._value_of(formula))
@@ -378,12 +395,8 @@ class Calculation:
         cells = strongly_connected(self._graph, chain[0], self._is_done)
         if not set(chain) <= set(cells):
             cells = (*cells, *(cell for cell in chain if cell not in set(cells)))
+        cells = self._feed_cycle(cells)
         formulas = [formula for cell in cells if (formula := self._graph.formula(cell)) is not None]
-        inside = set(cells)
-        for formula in formulas:  # what feeds the cycle from outside comes first
-            for precedent in self._open_precedents(formula):
-                if precedent not in inside:
-                    self.cell_value(*precedent)
         passes, settled = self._iterate(formulas, from_stored=False)
         if any(
             isinstance(self._values[f.cell.sheet][f.cell.row, f.cell.column], ErrorValue)
@@ -393,6 +406,27 @@ class Calculation:
             if not any(isinstance(value, ErrorValue) for value in stored.values()):
                 passes, settled = self._iterate(formulas, from_stored=True)
         self.findings.cycles.append(Cycle(tuple(cells), passes, settled))
+
+    def _feed_cycle(self, cells: tuple[CellRef, ...]) -> tuple[CellRef, ...]:
+        """Calculate what feeds a cycle from outside; the cycle's cells, those that it turns out to have more."""
+        before = self._pending
+        while True:
+            self._pending = before | frozenset(cells)
+            try:
+                for cell in cells:
+                    formula = self._graph.formula(cell)
+                    for precedent in self._open_precedents(formula) if formula is not None else ():
+                        if precedent not in self._pending and not self._is_done(precedent):
+                            self.cell_value(*precedent)
+            except _FedByCycleError as found:  # through references that are computed
+                more = tuple(cell for cell in found.cells if cell not in self._pending)
+                if not more:
+                    raise
+                cells = (*more, *cells)
+            else:
+                return cells
+            finally:
+                self._pending = before
 
     def _iterate(self, formulas: list[Formula], *, from_stored: bool) -> tuple[int, bool]:
         for formula in formulas:

@@ -14,6 +14,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
+from cellsim.functions.registry import picks_items
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.cancellation import add_last
@@ -25,7 +26,7 @@ from cellsim.program.fast import (
     merge_values,
     object_converter,
 )
-from cellsim.program.ir import Constant, Instruction, Op, Operand
+from cellsim.program.ir import Constant, Instruction, KernelCall, Op, Operand, StackOperand
 from cellsim.values import ErrorValue, encode_error
 
 Step = Callable[[], Any]
@@ -53,8 +54,12 @@ def careful_step(
     bound = _Bound(instruction, operands, out, poison)
     op = instruction.op
     if op is Op.CALL:
-        run = kernel_runner(instruction.detail, buffers, base)
-        return lambda: _call(bound, run)
+        call: KernelCall = instruction.detail
+        run = kernel_runner(call, buffers, base)
+        if picks_items(call.function):
+            single = [item for item in call.arguments if not isinstance(item, StackOperand)]
+            operands = [buffers.operand(operand) for operand in single]
+        return lambda: _call(out, operands, run)
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)
         return lambda: _interpret(bound, evaluate)
@@ -211,13 +216,12 @@ def _if_na(bound: _Bound) -> None:
     bound.out[:] = np.where(is_na(value), instead, value)
 
 
-def _call(bound: _Bound, run: Callable[[], AnyArray]) -> None:
-    bound.out[:] = run()
-    out = bound.out
+def _call(out: AnyArray, failing: Sequence[AnyArray], run: Callable[[], AnyArray]) -> None:
+    out[:] = run()
     infinite = np.isinf(out)
     if infinite.any():
         out[infinite] = _NUM
-    _put_errors(out, bound.operands)
+    _put_errors(out, failing)
 
 
 def _interpret(_bound: _Bound, evaluate: Step) -> None:

@@ -105,20 +105,39 @@ class ExpressionEvaluator:
 
     def evaluate(
         self, columns: Sequence[npt.NDArray[np.generic] | float], draws: int
-    ) -> list[Scalar]:
+    ) -> npt.NDArray[np.object_]:
         """The value in each draw.
 
         Args:
             columns: The values of the cells that the expression reads: arrays of shape (draws,), or
                 one number for all draws.
             draws: Number of draws.
+
+        Returns:
+            Shape (draws,), a `Scalar` each.
         """
+        found, places = self._evaluate_distinct(columns, draws)
+        values = np.empty(len(found), dtype=object)
+        values[:] = found
+        return values if places is None else values[places]
+
+    def evaluate_numbers(
+        self, columns: Sequence[npt.NDArray[np.generic] | float], draws: int
+    ) -> FloatArray:
+        """As `evaluate`, by the rule of `as_numbers`."""
+        found, places = self._evaluate_distinct(columns, draws)
+        numbers = as_numbers(found)
+        return numbers if places is None else numbers[places]
+
+    def _evaluate_distinct(
+        self, columns: Sequence[npt.NDArray[np.generic] | float], draws: int
+    ) -> tuple[list[Scalar], npt.NDArray[np.intp] | None]:
+        """Values, and for each draw the place of its value; None where each draw has its own."""
         representatives, places = _distinct(columns, draws)
         with self._base.lock:
             if representatives is None:
-                return [self._value(columns, draw) for draw in range(draws)]
-            values = [self._value(columns, int(draw)) for draw in representatives]
-        return [values[place] for place in places]
+                return [self._value(columns, draw) for draw in range(draws)], None
+            return [self._value(columns, int(draw)) for draw in representatives], places
 
     def _value(self, columns: Sequence[npt.NDArray[np.generic] | float], draw: int) -> Scalar:
         varying = {
@@ -167,13 +186,15 @@ def _distinct(
         return None, nothing
     if not arrays:
         return np.zeros(1, dtype=np.intp), np.zeros(draws, dtype=np.intp)
-    bits = np.stack(
-        [array.astype(np.float64, copy=False).view(np.uint64) for array in arrays], axis=1
-    )
-    _, first, inverse = np.unique(bits, axis=0, return_index=True, return_inverse=True)
-    if len(first) * 2 > draws:
-        return None, nothing
-    return first, inverse.reshape(-1)
+    first, places = nothing, np.zeros(draws, dtype=np.intp)
+    for array in arrays:
+        bits = array.astype(np.float64, copy=False).view(np.uint64)
+        different, of_array = np.unique(bits, return_inverse=True)
+        pairs = places * len(different) + of_array.reshape(-1)
+        _, first, places = np.unique(pairs, return_index=True, return_inverse=True)
+        if len(first) * 2 > draws:
+            return None, nothing
+    return first, places.reshape(-1)
 
 
 def as_numbers(values: Sequence[Scalar]) -> FloatArray:

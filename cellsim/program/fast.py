@@ -6,6 +6,7 @@ that can give an error without such a fault raise the given exception themselves
 
 from __future__ import annotations
 
+import inspect
 from collections.abc import Callable, Sequence
 from functools import partial
 from typing import Any
@@ -194,6 +195,8 @@ def kernel_runner(call: KernelCall, buffers: Buffers, base: Calculation) -> Call
     kernel = find_over_draws(call.function)
     if kernel is None:
         raise LookupError(call.function)
+    if "date_1904" in inspect.signature(kernel).parameters:
+        kernel = partial(kernel, date_1904=base.date_1904)
     gather = [_argument(argument, buffers) for argument in call.arguments]
 
     def run() -> AnyArray:
@@ -292,12 +295,10 @@ def expression_runner(
 
     def run() -> None:
         with np.errstate(all="ignore"):
-            values = evaluator.evaluate(columns, len(out))
-        if instruction.kind is Kind.NUMBER:
-            out[:] = as_numbers(values)
-        else:
-            for place, value in enumerate(values):
-                out[place] = value
+            if instruction.kind is Kind.NUMBER:
+                out[:] = evaluator.evaluate_numbers(columns, len(out))
+            else:
+                out[:] = evaluator.evaluate(columns, len(out))
 
     return run
 
@@ -339,6 +340,9 @@ def object_converter(values: AnyArray, out: AnyArray, *, date_1904: bool) -> Ste
             return encode_error(fault.error)
 
     def step() -> None:
-        out[:] = [number(value) for value in values]
+        if set(map(type, values)) <= {float}:  # the ordinary case, without a call for each draw
+            out[:] = values.astype(np.float64)
+        else:
+            out[:] = [number(value) for value in values]
 
     return step

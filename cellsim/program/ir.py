@@ -265,6 +265,8 @@ class Builder:
         self.instructions: list[Instruction] = []
         self.registers = len(self.inputs)
         self._known: dict[object, Register] = {}
+        self._writers: dict[int, Instruction] = {}
+        self._seen = 0
         self._outer: list[tuple[list[Instruction], dict[object, Register]]] = []
 
     def emit(self, op: Op, *operands: Operand, kind: Kind | None = None) -> Register:
@@ -302,6 +304,14 @@ class Builder:
             self._known[key] = register
         return register
 
+    def writer(self, register: Register) -> Instruction | None:
+        """The instruction that writes a register; None for an input or one of an outer loop."""
+        if self._seen < len(self.instructions):
+            for instruction in self.instructions[self._seen :]:
+                self._writers[instruction.target] = instruction
+            self._seen = len(self.instructions)
+        return self._writers.get(register.number)
+
     def new_register(self) -> Register:
         """A register that nothing writes yet."""
         register = Register(self.registers)
@@ -312,12 +322,14 @@ class Builder:
         """Begin the body of a loop: what follows is kept apart until it is closed."""
         self._outer.append((self.instructions, self._known))
         self.instructions = []
+        self._seen = 0
         self._known = dict(self._known)
 
     def close_loop(self) -> tuple[Instruction, ...]:
         """End the body of a loop and give its instructions."""
         body = tuple(self.instructions)
         self.instructions, self._known = self._outer.pop()
+        self._seen = 0
         return body
 
     def emit_loop(self, loop: Loop, operands: tuple[Operand, ...]) -> Register:

@@ -18,7 +18,16 @@ from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import Frame
 from cellsim.program.ir import Constant, KernelCall, Operand, StackOperand, constant
-from cellsim.program.lowered import Block, Flagged, Known, Lowered, Numeric, UnlowerableError
+from cellsim.program.lowered import (
+    Block,
+    Choice,
+    Flagged,
+    Known,
+    Lowered,
+    Numeric,
+    UnlowerableError,
+    Varied,
+)
 from cellsim.values import Array, ErrorValue, Reference, Scalar, Value, encode_error
 
 
@@ -149,6 +158,18 @@ def as_lowered(value: Value) -> Lowered:
     if isinstance(value, Array):
         return Block(value.rows, value.columns, tuple(Known(item) for item in value.items))
     return Known(value)
+
+
+def may_be_refused(value: Lowered) -> bool:
+    """Whether a value may be a logical or several cells, which strict functions refuse."""
+    if isinstance(value, Choice):
+        return may_be_refused(value.then) or may_be_refused(value.otherwise)
+    if isinstance(value, Known):
+        content = value.value
+        if isinstance(content, Reference):
+            return len(content.areas) != 1 or content.areas[0].size > 1
+        return isinstance(content, bool)
+    return isinstance(value, (Flagged, Varied))
 
 
 def call_over_draws(given: Arguments) -> Lowered:

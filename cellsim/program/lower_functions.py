@@ -8,10 +8,12 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from cellsim.program.ir import Constant, Op, Operand
+from cellsim.functions.conversions import find_conversion
+from cellsim.program.ir import Constant, Op, Operand, constant
 from cellsim.program.lower_branches import is_error_flag
 from cellsim.program.lower_calls import (
     Arguments,
+    static_argument,
 )
 from cellsim.program.lower_references import (
     computed_reference,
@@ -124,6 +126,29 @@ def _power(given: Arguments) -> Lowered:
     return given.emitter.arithmetic("^", given.values[0], given.values[1])
 
 
+def _converted(given: Arguments) -> Lowered | None:
+    """CONVERT between units that are the same in all draws, by the kernel's own arithmetic."""
+    number = given.values[0]
+    units = [static_argument(given.lowering, value) for value in given.values[1:]]
+    if not isinstance(number, Numeric) or len(units) != 2:
+        return None
+    from_unit, to_unit = units
+    if not isinstance(from_unit, str) or not isinstance(to_unit, str):
+        return None
+    conversion = find_conversion(from_unit, to_unit)
+    if conversion is None:
+        return None  # whether #N/A or an error of the number comes first, the reference says
+    emitter = given.emitter
+    found = emitter.number(number)
+    for operator, part in (
+        ("*", conversion.factor),
+        ("+", conversion.shift),
+        ("/", conversion.divisor),
+    ):
+        found = emitter.arithmetic_operands(operator, found, constant(part))
+    return emitter.as_lowered(found)
+
+
 RULES: dict[str, Rule] = {
     "SUM": sum_rule,
     "AVERAGE": average_rule,
@@ -148,6 +173,7 @@ RULES: dict[str, Rule] = {
     "EXP": _operation(Op.EXP),
     "LN": _operation(Op.LN),
     "POWER": _power,
+    "CONVERT": _converted,
     "ROW": of_references,
     "ROWS": of_references,
     "COLUMN": of_references,

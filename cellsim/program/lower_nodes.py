@@ -36,7 +36,7 @@ from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
 from cellsim.program.ir import Expression, Kind, Merge, Operand, constant
 from cellsim.program.lower_branches import LAZY_RULES, block_item
-from cellsim.program.lower_calls import Arguments, call_over_draws
+from cellsim.program.lower_calls import Arguments, call_over_draws, may_be_refused
 from cellsim.program.lower_functions import RULES
 from cellsim.program.lowered import (
     Block,
@@ -129,18 +129,28 @@ class NodeLowering:
         """
         return _LOWERINGS[type(node)](self, node, whole)
 
-    def operand(self, node: Node, *, whole: bool) -> Lowered:
+    def operand(self, node: Node, *, whole: bool, strict: bool = False) -> Lowered:
         """An expression in a place for single values; several cells intersect unless `whole`.
 
         Where there is no form over draws for it and it gives a single value, it is left to the
         reference evaluator, draw by draw.
+
+        Raises:
+            UnlowerableError: The place is one of a `strict` function, and the value such that it
+                may be refused in some draws.
         """
+        refused = False
         try:
-            return self.dereference(self.lower(node, whole=whole), whole=whole)
+            value = self.lower(node, whole=whole)
+            refused = strict and may_be_refused(value)
+            value = self.dereference(value, whole=whole)
         except UnlowerableError as problem:
             if self.scope is not None or whole:
                 raise  # variables or arrays are not there for the reference evaluator: it takes more
-            return self.interpreted(node, whole=whole, reason=problem.reason)
+            value = self.interpreted(node, whole=whole, reason=problem.reason)
+        if refused or (strict and may_be_refused(value)):
+            raise UnlowerableError("a logical or a range where the function takes neither")
+        return value
 
     def dereference(self, value: Lowered, *, whole: bool) -> Lowered:
         """What a known reference refers to, other values as they are."""
@@ -400,7 +410,7 @@ class NodeLowering:
         for position, argument in enumerate(node.arguments):
             kind = function.parameter(position).kind
             if kind in LIFTED:
-                arguments.append(self.operand(argument, whole=whole))
+                arguments.append(self.operand(argument, whole=whole, strict=function.strict))
             elif kind in {ArgumentKind.LAZY, ArgumentKind.FUNCTION}:
                 raise UnlowerableError(f"{node.name} has no form over draws")
             else:

@@ -7,7 +7,7 @@ from collections.abc import Callable
 from cellsim.functions.dispatch import call_function
 from cellsim.functions.registry import find_function
 from cellsim.program.emit import is_error
-from cellsim.program.ir import Constant
+from cellsim.program.ir import Builder, Constant, KernelCall, Op, Operand, StackOperand
 from cellsim.program.lower_branches import block_item
 from cellsim.program.lower_calls import (
     Arguments,
@@ -18,6 +18,7 @@ from cellsim.program.lowered import (
     Block,
     Known,
     Lowered,
+    Numeric,
     UnlowerableError,
 )
 from cellsim.values import ErrorValue, Reference
@@ -53,7 +54,7 @@ def index_rule(given: Arguments) -> Lowered | None:
     places = given.values[1:]
     first = given.values[0]
     if isinstance(first, Known) and isinstance(first.value, Reference):
-        return of_references(given)
+        return of_references(given) or _index_in_cells(given, first.value)
     if not isinstance(first, Block) or not all(isinstance(place, Known) for place in places):
         return None
     numbers = [int(given.emitter.number(place).value) for place in places]  # type: ignore[union-attr]
@@ -63,6 +64,51 @@ def index_rule(given: Arguments) -> Lowered | None:
     if not (1 <= row <= first.rows and 1 <= column <= first.columns):
         return None
     return first.items[(row - 1) * first.columns + column - 1]
+
+
+def _index_in_cells(given: Arguments, cells: Reference) -> Lowered | None:
+    """INDEX at a place that varies, if it never asks for a whole row or column by a place of 0."""
+    if len(cells.areas) != 1 or not 2 <= len(given.values) <= 3:
+        return None
+    area = cells.areas[0]
+    if len(given.values) == 2 and area.rows > 1 and area.columns > 1:
+        return None
+    places = [given.emitter.number(value) for value in given.values[1:]]
+    if not all(_is_at_least_one(given.emitter.builder, place) for place in places):
+        return None
+    operands: list[Operand] = []
+    for item in given.lowering.cells.area_block(area).items:
+        if not isinstance(item, Numeric) and not (
+            isinstance(item, Known) and isinstance(item.value, (float, ErrorValue))
+        ):
+            return None
+        operands.append(given.emitter.number(item))
+    stack = StackOperand(area.rows, area.columns, tuple(operands), plain=False)
+    return Numeric(given.emitter.builder.emit_call(KernelCall("INDEX", (stack, *places))))
+
+
+_COUNTING_FUNCTIONS = frozenset({"MATCH", "XMATCH", "MONTH", "WEEKNUM"})
+_DEEPEST_BOUND = 12
+
+
+def _is_at_least_one(builder: Builder, operand: Operand, depth: int = 0) -> bool:
+    """Whether a number is 1 or more in all draws in which it is no error."""
+    if isinstance(operand, Constant):
+        return operand.value >= 1
+    instruction = builder.writer(operand)
+    if instruction is None or depth > _DEEPEST_BOUND:
+        return False
+    bounds = (_is_at_least_one(builder, part, depth + 1) for part in instruction.operands)
+    op = instruction.op
+    if op is Op.CALL:
+        return instruction.detail.function in _COUNTING_FUNCTIONS
+    if op is Op.MAXIMUM:
+        return any(bounds)
+    if op in {Op.MINIMUM, Op.MULTIPLY, Op.IF_ERROR, Op.IF_NA, Op.ADD, Op.ADD_LAST}:
+        return all(bounds)
+    if op is Op.SELECT:
+        return all(list(bounds)[1:])
+    return False
 
 
 def transpose_rule(given: Arguments) -> Lowered:

@@ -134,5 +134,7 @@ def _scale(number_format: str, unit: str, summary: Summary | None, base: float |
         low, _, high = central_range(summary)
         largest = max(abs(low), abs(high)) or largest
         spread = (high - low) / 2.563 or summary.moments.sd or 0.0
-    separate = summary is not None and summary.histogram.separate
-    return scale_of(number_format, unit, largest, spread, separate=separate)
+    bins = summary.histogram if summary is not None else None
+    separate = bins is not None and bins.separate
+    whole = bins is not None and bool(np.all(bins.lower == np.rint(bins.lower)))
+    return scale_of(number_format, unit, largest, spread, separate=separate, whole=whole)

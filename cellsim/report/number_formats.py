@@ -145,6 +145,29 @@ def is_number_code(code: str) -> bool:
     return not is_date_code(code) and any(kind == "digit" for kind, _ in _tokens(code) or [])
 
 
+def zero_showing_code(code: str) -> str:
+    """The code with zero written as a number where it would be a dash or nothing.
+
+    Accounting formats such as `#,##0;-#,##0;-` suit a table that is read in columns. On an axis, in a
+    sentence and as a threshold a zero must be seen.
+
+    Args:
+        code: A stored code.
+
+    Returns:
+        The code, its section for zero replaced by that for positive numbers if it has no digit.
+    """
+    sections = _sections(_tokens(code) or [])
+    conditional = any(
+        kind == "bracket" and spelling[1] in "<>=" for part in sections for kind, spelling in part
+    )
+    if len(sections) < 3 or conditional or any(kind == "digit" for kind, _ in sections[2]):
+        return code
+    sections[2] = sections[0]
+    shown = ";".join("".join(spelling for _, spelling in section) for section in sections)
+    return shown if len(shown) <= LONGEST_CODE else code
+
+
 def suited_code(largest: float, spread: float) -> str:
     """A code for numbers without one: three significant digits of their spread.
 

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from cellsim.functions.number_format import format_value
 from cellsim.report.number_formats import (
+    COUNT,
     GENERAL,
     SCIENTIFIC,
     finer_code,
@@ -14,11 +15,14 @@ from cellsim.report.number_formats import (
     is_number_code,
     safe_code,
     suited_code,
+    zero_showing_code,
 )
 from cellsim.report.plain_text import one_line
 
 _DAYS = "#,##0.0"
 _LONGEST = 14
+_MINUS = "\u2212"
+"""A minus that no line breaks after, as it may after a hyphen."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,12 +83,20 @@ class Scale:
             return "no number"
         shown = format_value(value, code)
         text = shown.strip() if isinstance(shown, str) and shown.strip() else f"{value:.6g}"
+        if text.startswith("-"):
+            text = f"{_MINUS}{text[1:]}"
         unit = one_line(unit, 24)
         return text if not unit or unit in text else f"{text} {unit}"
 
 
 def scale_of(
-    number_format: str, unit: str, largest: float, spread: float, *, separate: bool = False
+    number_format: str,
+    unit: str,
+    largest: float,
+    spread: float,
+    *,
+    separate: bool = False,
+    whole: bool = False,
 ) -> Scale:
     """The scale of a quantity.
 
@@ -94,6 +106,7 @@ def scale_of(
         largest: Largest usual size of its values.
         spread: Its standard deviation, or 0.
         separate: Whether it takes a few separate values only.
+        whole: Whether these are whole numbers.
 
     Returns:
         The model's own code where it can be stored and shows numbers, with decimals added where it
@@ -102,9 +115,13 @@ def scale_of(
     code = safe_code(number_format)
     if is_date_code(code):
         return Scale(code, code, _DAYS, unit)
+    finer = ""
     if code == GENERAL or not is_number_code(code) or _is_long(code, largest):
-        code = suited_code(largest, spread)
-    finer = finer_code(code, spread)
+        code = finer = suited_code(largest, spread)
+        if separate and whole and code != SCIENTIFIC:
+            code = COUNT
+    code = zero_showing_code(code)
+    finer = finer_code(finer or code, spread)
     digits = 2 - math.floor(math.log10(spread)) if spread > 0 else None
     return Scale(code if separate else finer, finer, finer, unit, digits)
 

@@ -147,7 +147,15 @@ def _base_sentence(output: OutputFigures) -> str:
 def _threshold_sentence(output: OutputFigures, text: str, about: Exceedance) -> str:
     shown = output.scale.text(about.value)
     origin = f" ({one_line(text, 40)})" if text.startswith("=") else ""
-    return f"{share_text(about.above)} of the draws lie above {shown}{origin}."
+    sentence = f"{share_text(about.above)} of the draws lie above {shown}{origin}."
+    summary = output.summary
+    if about.mean_above is None or about.mean_others is None or summary is None:
+        return sentence
+    if summary.histogram.separate and len(summary.histogram.counts) <= _FEW_VALUES:
+        return sentence  # each value and its share are named already
+    code = output.scale.mean_code
+    means = [output.scale.estimate_text(m, code) for m in (about.mean_above, about.mean_others)]
+    return f"{sentence} Their mean is {means[0]}, that of the others {means[1]}."
 
 
 def cautions(results: RunResults, figures: Figures) -> list[str]:
@@ -156,6 +164,7 @@ def cautions(results: RunResults, figures: Figures) -> list[str]:
         *_failure_cautions(results, figures),
         *_check_cautions(results.check),
         *_precision_cautions(figures),
+        *_mean_cautions(figures),
         *_base_cautions(figures),
         *[c for item in figures.inputs if (c := _input_caution(item)) is not None],
     ]
@@ -233,6 +242,25 @@ def _precision_caution(output: OutputFigures) -> str | None:
             f"{widest / 2:.0%} either way."
         )
     return None
+
+
+def _mean_cautions(figures: Figures) -> list[str]:
+    """Means that no ordinary draw comes near, as where a few successes pay for many failures."""
+    found = []
+    for output in figures.outputs:
+        summary = output.summary
+        if summary is None or summary.histogram.separate:
+            continue
+        low, _, high = central_range(summary)
+        mean = summary.moments.mean
+        if not low <= mean <= high:
+            side = "above" if mean > high else "below"
+            found.append(
+                f"The mean of {output.title} ({output.scale.estimate_text(mean, output.scale.mean_code)}) lies {side} at "
+                "least 90 % of its draws: a few far-off draws carry it, and the central 80 % say nothing about these. "
+                "Look at Distribution and at the far rows of Quantiles."
+            )
+    return found[:_MOST_NAMED] + _rest(len(found), "means like this")
 
 
 def _base_cautions(figures: Figures) -> list[str]:

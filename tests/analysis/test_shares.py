@@ -23,3 +23,17 @@ def test_interval_is_wilsons(hits: int, count: int) -> None:
 def test_draws_equal_to_the_threshold_are_neither_above_nor_below() -> None:
     found = exceedance(np.array([1.0, 2.0, 2.0, 2.0, 5.0]), 2.0)
     assert (found.below.hits, found.equal, found.above.hits) == (1, 3, 1)
+
+
+def test_means_on_both_sides_are_those_of_the_draws() -> None:
+    draws = np.sort(np.random.default_rng(5).normal(1.0, 4.0, 1001))
+    found = exceedance(draws, 0.5)
+    assert found.mean_above == pytest.approx(draws[draws > 0.5].mean(), rel=1e-12)
+    assert found.mean_others == pytest.approx(draws[draws <= 0.5].mean(), rel=1e-12)
+
+
+def test_a_side_without_draws_has_no_mean_and_huge_draws_do_not_overflow() -> None:
+    huge = np.full(10, 1.7e308)
+    assert exceedance(huge, 0.0).mean_others is None
+    assert exceedance(huge, 0.0).mean_above == pytest.approx(1.7e308, rel=1e-12)
+    assert exceedance(huge, 1.75e308).mean_above is None

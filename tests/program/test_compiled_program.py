@@ -21,6 +21,13 @@ MODELS: dict[str, dict[str, object]] = {
     "choose": {"A1": 1, "B1": "=CHOOSE(A1+2,10,20,30)", "C1": "=B1+1"},
     "index with an uncertain place": {"A1": 1, "D1": 5, "D2": 7, "D3": 9, "C1": "=INDEX(D1:D3,A1+2)"},
     "lookup with an uncertain key": {"A1": 1, "D1": -2, "D2": 0, "D3": 2, "E1": 5, "E2": 6, "E3": 7, "C1": "=VLOOKUP(A1,D1:E3,2)"},
+    "error in a table beside the item looked up": {
+        "A1": 1, "A2": 2, "D1": -1, "D2": 0, "D3": 1, "E1": 10, "E2": "=1/A1", "E3": 30,
+        "C1": "=VLOOKUP(ROUND(A2,0),D1:E3,2,FALSE)",
+    },
+    "error among the keys of a lookup": {
+        "A1": 1, "A2": 2, "D1": -1, "D2": "=1/A1", "D3": 1, "C1": "=MATCH(ROUND(A2,0),D1:D3,0)",
+    },
     "exact lookup": {"A1": 1, "D1": -1, "D2": 0, "D3": 1, "E1": 5, "E2": 6, "E3": 7, "C1": "=INDEX(E1:E3,MATCH(ROUND(A1,0),D1:D3,0))"},
     "text in a sum": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A2,"")', "C1": "=SUM(B1:B2)+COUNTA(B1:B2)"},
     "powers": {"A1": 1, "A2": 2, "C1": "=(1+A2)^3+(1+A2)^-4+ABS(A1)^0.25+2^A1"},
@@ -44,7 +51,16 @@ MODELS: dict[str, dict[str, object]] = {
     "text or a number read draw by draw": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "C1": '=LARGE(B1:B3,1)+LEN(B1&"")'},
     "logical or text read draw by draw": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "C1": '=IF(ISLOGICAL(B2),7,IF(ISTEXT(B2),LEN(B2),B2))+COUNTIF(B1:B2,">1")'},
     "condition that fails read draw by draw": {"A1": 1, "B1": '=IF(1/A1>0,A1,"none")', "C1": '=LEN(IFERROR(B1,"failed"))+MAX(B1:B1)'},
+    "index with a place of at least one": {"A1": 1, "A2": 2, "D1": "=A1", "D2": "=A2+A1", "D3": "=1/A1", "C1": "=INDEX(D1:D3,MIN(3,MAX(1,ROUND(A2,0))))+SUM(INDEX(D1:D2,MATCH(A1,{-9,0,1},1)))"},
+    "index with a place that may be nought": {"A1": 1, "A2": 2, "D1": "=A1", "D2": "=A2", "C1": "=SUM(INDEX(D1:D2,MAX(0,MIN(2,ROUND(A2,0)))))"},
     "array formula": {"A1": 1, "A2": 2, "C1": "=SUMPRODUCT((A1:A2>0)*A1:A2)"},
+    "units": {"A1": 1, "A2": 2, "D1": "F", "C1": '=CONVERT(A1,D1,"C")+CONVERT(1/A2,"mi","km")+CONVERT(A1,"C","C")'},
+    "units that do not fit": {"A1": 1, "C1": '=CONVERT(1/A1,"m","kg")'},
+    "units of a logical": {"A1": 1, "C1": '=CONVERT(A1>0,"m","km")'},
+    "a unit that varies": {"A1": 1, "C1": '=CONVERT(2,IF(A1>0,"m","km"),"m")'},
+    "bits and steps": {"A1": 1, "A2": 2, "C1": "=IFERROR(BITAND(INT(A2),3),-1)+GESTEP(A1,0.5)+DELTA(A1)+ERF(A1,A2)"},
+    "logicals that add-in functions refuse": {"A1": 1, "A2": 2, "B1": "=A1>0", "C1": "=IFERROR(ERF(B1),7)+IFERROR(DELTA(TRUE,A1),9)+IFERROR(ERF(IF(A1>0,A2>1,A2)),11)"},
+    "ranges that add-in functions refuse": {"A1": 1, "A2": 2, "C1": "=IFERROR(ERF(A1:A2),7)+IFERROR(GESTEP(A2,A1:A2),9)"},
     "let": {"A1": 1, "A2": 2, "C1": "=LET(x,A1+1,y,x*A2,y-x)"},
 }  # fmt: skip
 

@@ -4,7 +4,13 @@ from __future__ import annotations
 
 import pytest
 
-from cellsim.report.number_formats import finer_code, is_date_code, safe_code, suited_code
+from cellsim.report.number_formats import (
+    finer_code,
+    is_date_code,
+    safe_code,
+    suited_code,
+    zero_showing_code,
+)
 from cellsim.report.scale import scale_of
 
 SOUND = [
@@ -55,6 +61,24 @@ def test_numbers_without_a_format_get_one_that_suits_them(
     assert suited_code(largest, spread) == code
 
 
+@pytest.mark.parametrize(
+    ("code", "expected"),
+    [
+        ("#,##0;-#,##0;-", "#,##0;-#,##0;#,##0"),
+        ("0.0;-0.0;", "0.0;-0.0;0.0"),
+        ('0.0"x";-0.0"x";"none";@', '0.0"x";-0.0"x";0.0"x";@'),
+        ("0.0;-0.0;0", "0.0;-0.0;0"),
+        ("0.0;-0.0", "0.0;-0.0"),
+        ('[>=1000]#,##0,"k";[<0]-0;"-"', '[>=1000]#,##0,"k";[<0]-0;"-"'),
+        ("General", "General"),
+    ],
+)
+def test_a_zero_is_written_as_a_number(code: str, expected: str) -> None:
+    """Sections are positive; negative; zero; text (ECMA-376 Part 1, 18.8.31)."""
+    assert zero_showing_code(code) == expected
+    assert safe_code(expected) == expected
+
+
 def test_spread_of_dates_is_in_days() -> None:
     scale = scale_of("yyyy-mm-dd", "", 46_000, 30)
     assert is_date_code(scale.code)
@@ -66,7 +90,7 @@ def test_spread_of_dates_is_in_days() -> None:
     ("code", "unit", "value", "text"),
     [
         ("0.0%", "%", 0.1234, "12.3%"),
-        ("0.00", "EUR", -4.256, "-4.26 EUR"),
+        ("0.00", "EUR", -4.256, "\u22124.26 EUR"),
         ('#,##0.00 "EUR"', "EUR", 1234.5, "1,234.50 EUR"),
         ("#,##0", "t", 1234567.0, "1,234,567 t"),
     ],
@@ -79,8 +103,8 @@ def test_sentence_shows_number_sign_and_unit_once(
 
 def test_estimates_are_rounded_to_what_the_spread_makes_sense_of() -> None:
     scale = scale_of("#,##0", "EUR", 8e6, 3.1e6)
-    assert scale.estimate_text(-2_695_291.0) == "-2,700,000 EUR"
-    assert scale.text(-2_695_291.0) == "-2,695,291 EUR"
+    assert scale.estimate_text(-2_695_291.0) == "\u22122,700,000 EUR"
+    assert scale.text(-2_695_291.0) == "\u22122,695,291 EUR"
 
 
 def test_missing_number_is_said_in_words() -> None:

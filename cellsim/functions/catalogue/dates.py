@@ -2,7 +2,17 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from cellsim.functions.coercion import to_number
+from cellsim.functions.dates_over_draws import (
+    FloatArray,
+    Numbers,
+    calendar_of,
+    date_of_parts,
+    moved_by_months,
+    part,
+)
 from cellsim.functions.day_counts import (
     add_months,
     days_360,
@@ -19,6 +29,7 @@ from cellsim.functions.registry import (
     Number,
     Text,
     Whole,
+    over_draws,
     spreadsheet_function,
 )
 from cellsim.functions.serial_dates import LAST_SERIAL, OFFSET_1904
@@ -75,6 +86,57 @@ def end_of_month(context: Context, date: Number, months: Whole) -> float:
     """The last day of the month some months later."""
     year, month, _ = add_months(_date(context, date), months)
     return to_serial(year, month, days_in_month(year, month), date_1904=context.date_1904)
+
+
+@over_draws("DATE")
+def date_from_parts_over_draws(
+    year: Numbers, month: Numbers, day: Numbers, *, date_1904: bool = False
+) -> FloatArray:
+    """DATE over draws."""
+    return date_of_parts(year, month, day, date_1904=date_1904)
+
+
+@over_draws("YEAR")
+def year_over_draws(date: Numbers, *, date_1904: bool = False) -> FloatArray:
+    """YEAR over draws."""
+    dates = calendar_of(date, date_1904=date_1904)
+    return part(dates.year, dates)
+
+
+@over_draws("MONTH")
+def month_over_draws(date: Numbers, *, date_1904: bool = False) -> FloatArray:
+    """MONTH over draws."""
+    dates = calendar_of(date, date_1904=date_1904)
+    return part(dates.month % 12 + 1, dates)
+
+
+@over_draws("DAY")
+def day_over_draws(date: Numbers, *, date_1904: bool = False) -> FloatArray:
+    """DAY over draws."""
+    dates = calendar_of(date, date_1904=date_1904)
+    return part(dates.day, dates)
+
+
+@over_draws("EDATE")
+def months_later_over_draws(
+    date: Numbers, months: Numbers, *, date_1904: bool = False
+) -> FloatArray:
+    """EDATE over draws."""
+    return moved_by_months(date, months, date_1904=date_1904, to_the_end=False)
+
+
+@over_draws("EOMONTH")
+def end_of_month_over_draws(
+    date: Numbers, months: Numbers, *, date_1904: bool = False
+) -> FloatArray:
+    """EOMONTH over draws."""
+    return moved_by_months(date, months, date_1904=date_1904, to_the_end=True)
+
+
+@over_draws("DAYS")
+def days_between_over_draws(end: Numbers, start: Numbers) -> FloatArray:
+    """DAYS over draws."""
+    return np.asarray(np.trunc(end) - np.trunc(start))
 
 
 @spreadsheet_function("YEARFRAC", strict=True)

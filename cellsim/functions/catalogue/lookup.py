@@ -64,7 +64,7 @@ def match_place(key: ScalarValue, values: Values, kind: Whole = 1) -> float:
     return float(_place(key, items, kind) + 1)
 
 
-@over_draws("MATCH")
+@over_draws("MATCH", picks_items=True)
 def match_place_over_draws(
     key: FloatArray, values: Stack, kind: FloatArray | float = 1.0
 ) -> FloatArray | None:
@@ -146,7 +146,7 @@ def lookup_in_rows(
     return table.at(row - 1, column)
 
 
-@over_draws("VLOOKUP")
+@over_draws("VLOOKUP", picks_items=True)
 def lookup_in_columns_over_draws(
     key: FloatArray, table: Stack, column: FloatArray | float, approximate: FloatArray | float = 1.0
 ) -> FloatArray | None:
@@ -158,7 +158,7 @@ def lookup_in_columns_over_draws(
     return None if places is None else _gather(table, places, column)
 
 
-@over_draws("HLOOKUP")
+@over_draws("HLOOKUP", picks_items=True)
 def lookup_in_rows_over_draws(
     key: FloatArray, table: Stack, row: FloatArray | float, approximate: FloatArray | float = 1.0
 ) -> FloatArray | None:
@@ -326,7 +326,7 @@ def _cell_at(
     )
 
 
-@over_draws("INDEX")
+@over_draws("INDEX", picks_items=True)
 def item_at_place_over_draws(
     where: Stack, row: FloatArray | float = 0.0, column: FloatArray | float | None = None
 ) -> FloatArray | None:

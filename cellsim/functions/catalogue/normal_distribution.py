@@ -5,9 +5,17 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from scipy.special import ndtr, ndtri
+from scipy.special import erf, ndtr, ndtri
 
-from cellsim.functions.registry import FloatArray, Logical, Number, over_draws, spreadsheet_function
+from cellsim.functions.encoded import checked, numeric_function
+from cellsim.functions.registry import (
+    FloatArray,
+    Logical,
+    Number,
+    Whole,
+    over_draws,
+    spreadsheet_function,
+)
 from cellsim.values import ErrorValue, encode_error
 
 _DENSITY = 1 / math.sqrt(2 * math.pi)
@@ -53,49 +61,61 @@ def normal_quantile(probability: Number, mean: Number, deviation: Number) -> flo
     return mean + deviation * float(ndtri(probability))
 
 
-@spreadsheet_function("PHI")
-def standard_density(z: Number) -> float:
+@numeric_function("PHI")
+def standard_density(z: Number) -> FloatArray:
     """The density of the standard normal distribution."""
-    return _density(z)
+    return checked(_DENSITY * np.exp(-np.square(z) / 2))
 
 
-@spreadsheet_function("GAUSS")
-def above_the_median(z: Number) -> float:
+@numeric_function("GAUSS")
+def above_the_median(z: Number) -> FloatArray:
     """The standard normal probability between the median and a value."""
-    return float(ndtr(z)) - 0.5
+    return checked(erf(np.asarray(z, dtype=np.float64) / math.sqrt(2)) / 2)
 
 
-@spreadsheet_function("CONFIDENCE", "CONFIDENCE.NORM")
-def confidence_half_width(alpha: Number, deviation: Number, size: Number) -> float | ErrorValue:
+@numeric_function("STANDARDIZE")
+def standard_score(number: Number, centre: Number, deviation: Number) -> FloatArray:
+    """How many standard deviations a number lies from a mean."""
+    spread = np.asarray(deviation, dtype=np.float64)
+    return checked((number - np.asarray(centre)) / spread, (spread <= 0, ErrorValue.NUM))
+
+
+@numeric_function("CONFIDENCE", "CONFIDENCE.NORM")
+def confidence_half_width(alpha: Number, deviation: Number, size: Whole) -> FloatArray:
     """Half the width of a normal confidence interval of a mean."""
-    if not 0 < alpha < 1 or deviation <= 0 or int(size) < 1:
-        return ErrorValue.NUM
-    return -float(ndtri(alpha / 2)) * deviation / math.sqrt(int(size))
+    level, spread, n = np.asarray(alpha), np.asarray(deviation), np.trunc(size)
+    return checked(
+        -ndtri(level / 2) * spread / np.sqrt(n),
+        ((level <= 0) | (level >= 1) | (spread <= 0) | (n < 1), ErrorValue.NUM),
+    )
 
 
-@spreadsheet_function("LOGNORM.DIST")
-def lognormal(
-    x: Number, mean: Number, deviation: Number, cumulative: Logical
-) -> float | ErrorValue:
+@numeric_function("LOGNORM.DIST")
+def lognormal(x: Number, mean: Number, deviation: Number, cumulative: Logical) -> FloatArray:
     """The lognormal distribution: cumulative, or its density."""
-    if x <= 0 or deviation <= 0:
-        return ErrorValue.NUM
-    z = (math.log(x) - mean) / deviation
-    return float(ndtr(z)) if cumulative else _density(z) / (deviation * x)
+    at, spread = np.asarray(x, dtype=np.float64), np.asarray(deviation, dtype=np.float64)
+    z = (np.log(at) - mean) / spread
+    density = _DENSITY * np.exp(-np.square(z) / 2) / (spread * at)
+    found = np.where(np.not_equal(cumulative, 0), ndtr(z), density)
+    return checked(found, ((at <= 0) | (spread <= 0), ErrorValue.NUM))
 
 
-@spreadsheet_function("LOGNORMDIST")
-def lognormal_cumulative(x: Number, mean: Number, deviation: Number) -> float | ErrorValue:
+@numeric_function("LOGNORMDIST")
+def lognormal_cumulative(x: Number, mean: Number, deviation: Number) -> FloatArray:
     """The cumulative lognormal distribution."""
-    return lognormal(x, mean, deviation, True)
+    at, spread = np.asarray(x, dtype=np.float64), np.asarray(deviation, dtype=np.float64)
+    z = (np.log(at) - mean) / spread
+    return checked(ndtr(z), ((at <= 0) | (spread <= 0), ErrorValue.NUM))
 
 
-@spreadsheet_function("LOGNORM.INV", "LOGINV")
-def lognormal_quantile(probability: Number, mean: Number, deviation: Number) -> float | ErrorValue:
+@numeric_function("LOGNORM.INV", "LOGINV")
+def lognormal_quantile(probability: Number, mean: Number, deviation: Number) -> FloatArray:
     """The lognormal quantile."""
-    if not 0 < probability < 1 or deviation <= 0:
-        return ErrorValue.NUM
-    return math.exp(mean + deviation * float(ndtri(probability)))
+    p, spread = np.asarray(probability, dtype=np.float64), np.asarray(deviation)
+    return checked(
+        np.exp(mean + spread * ndtri(p)),
+        ((p <= 0) | (p >= 1) | (spread <= 0), ErrorValue.NUM),
+    )
 
 
 @over_draws("NORMSDIST")
@@ -121,12 +141,12 @@ def normal_over_draws(
     z = (x - mean) / np.asarray(deviation)
     density = _DENSITY * np.exp(-np.square(z) / 2) / deviation
     found = np.where(np.asarray(cumulative) != 0, ndtr(z), density)
-    return np.where(np.asarray(deviation) <= 0, _NUM, found)
+    return checked(found, (np.asarray(deviation) <= 0, ErrorValue.NUM))
 
 
 def _inside(probability: FloatArray | float) -> FloatArray:
     p = np.asarray(probability, dtype=np.float64)
-    return np.where((p > 0) & (p < 1), ndtri(np.clip(p, 1e-300, 1 - 1e-16)), _NUM)
+    return np.where((p > 0) & (p < 1), ndtri(p), _NUM)
 
 
 @over_draws("NORM.S.INV", "NORMSINV")
@@ -140,6 +160,5 @@ def normal_quantile_over_draws(
     probability: FloatArray, mean: FloatArray | float, deviation: FloatArray | float
 ) -> FloatArray:
     """NORM.INV over draws."""
-    z = _inside(probability)
-    found = np.where(np.isnan(z), z, mean + deviation * z)
-    return np.where(np.asarray(deviation) <= 0, _NUM, found)
+    found = mean + deviation * _inside(probability)
+    return checked(found, (np.asarray(deviation) <= 0, ErrorValue.NUM))

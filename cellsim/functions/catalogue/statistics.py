@@ -457,12 +457,6 @@ def sample_excess_kurtosis(*numbers: NumberItems) -> float | ErrorValue:
     )
 
 
-@spreadsheet_function("STANDARDIZE")
-def standard_score(number: Number, centre: Number, deviation: Number) -> float | ErrorValue:
-    """How many standard deviations a number lies from a mean."""
-    return (number - centre) / deviation if deviation > 0 else ErrorValue.NUM
-
-
 @spreadsheet_function("FREQUENCY")
 def frequencies(numbers: NumberItems, limits: NumberItems) -> Array:
     """How many numbers lie up to each limit and above the last, down a column."""

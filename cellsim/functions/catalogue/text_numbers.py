@@ -100,7 +100,7 @@ def fixed_decimals(number: Number, decimals: Whole = 2, no_commas: Logical = Fal
     return f"-{text}" if number < 0 and not _is_nothing(text) else text
 
 
-@spreadsheet_function("DOLLAR")
+@spreadsheet_function("DOLLAR", "USDOLLAR")
 def as_amount(number: Number, decimals: Whole = 2) -> str:
     """A number as an amount of dollars, in brackets below zero."""
     text = _fixed(number, decimals, commas=True)

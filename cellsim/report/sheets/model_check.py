@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from cellsim.report.book import Book
+from cellsim.report.cell_groups import grouped
 from cellsim.report.page import Page
 from cellsim.report.places import MODEL_CHECK
 from cellsim.results import ModelCheck
@@ -36,8 +37,8 @@ def write(book: Book) -> None:
         [(name, reason, cells) for name, cells, reason in check.unsupported],
     )  # fmt: skip
     row = _write_pairs(
-        page, row, "Slow cells, evaluated draw by draw or taken from the file", ("Cell", "Reason"),
-        [(place, reason, None) for place, reason in book.results.record.slow_cells],
+        page, row, "Slow cells, evaluated draw by draw or taken from the file", ("Where", "Reason", "Cells"),
+        grouped(book.results.record.slow_cells),
     )  # fmt: skip
     if check.notes:
         page.heading(row, "Notes", _LAST)
@@ -89,9 +90,9 @@ def _write_pairs(
     row: int,
     heading: str,
     titles: Sequence[str],
-    rows: Sequence[tuple[str, str, int | None]],
+    rows: Sequence[tuple[str, str, int]],
 ) -> int:
-    """A table of a name, a reason and perhaps a count; nothing if it is empty."""
+    """A table of a name, a reason and a count; nothing if it is empty."""
     if not rows:
         return row
     page.heading(row, heading, _LAST)
@@ -101,8 +102,7 @@ def _write_pairs(
         page.text(row, 0, name, "wrapped")
         page.text(row, 1, reason, "wrapped")
         page.fit_row(row, [(name, page.widths[0]), (reason, page.widths[1])])
-        if count is not None:
-            page.count(row, 2, count)
+        page.count(row, 2, count)
         row += 1
     if len(rows) > _MOST:
         page.paragraph(row, f"{len(rows) - _MOST:,} more are not listed.", _LAST)
