@@ -238,10 +238,9 @@ class Study:
 
     def _noted(self, check: ModelCheck, engine: BlockEngine) -> ModelCheck:
         notes = list(check.notes)
-        notes += [
-            f"The circular chain of {len(cells)} cells from {cells[0]} on is solved by iteration in every draw."
-            for cells in self.compiled.loops
-        ]
+        loops = self.compiled.loops
+        if loops:
+            notes.append(_circles(loops))
         if engine.unsettled:
             notes.append(f"In {engine.unsettled} draws a circular chain had not settled.")
         return dataclasses.replace(check, notes=tuple(notes))
@@ -343,6 +342,17 @@ class Study:
                 for expression in program.slow
             ),
         )
+
+
+def _circles(loops: Sequence[tuple[CellRef, ...]]) -> str:
+    """What is said of circular chains: one sentence, however many there are."""
+    first, longest = loops[0][0], max(len(cells) for cells in loops)
+    if len(loops) == 1:
+        return f"The circular chain of {longest} cells from {first} on is solved by iteration in every draw."
+    return (
+        f"{len(loops):,} circular chains of up to {longest} cells, the first from {first} on, are solved by "
+        "iteration in every draw."
+    )
 
 
 def _silent(_stage: str, _done: int, _whole: int) -> None:

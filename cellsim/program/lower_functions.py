@@ -15,6 +15,7 @@ from cellsim.program.lower_calls import (
     Arguments,
     static_argument,
 )
+from cellsim.program.lower_conditional_sums import CONDITIONAL_RULES
 from cellsim.program.lower_references import (
     computed_reference,
     index_rule,
@@ -150,6 +151,7 @@ def _converted(given: Arguments) -> Lowered | None:
 
 
 RULES: dict[str, Rule] = {
+    **CONDITIONAL_RULES,
     "SUM": sum_rule,
     "AVERAGE": average_rule,
     "MIN": extreme_rule(Op.MINIMUM),

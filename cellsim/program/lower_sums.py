@@ -6,7 +6,7 @@ with a flag that says in which draws it counts.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 
 from cellsim.program.emit import is_error
@@ -22,7 +22,7 @@ _LARGEST = 1.7976931348623157e308
 
 
 @dataclass(frozen=True, slots=True)
-class _Item:
+class CountedItem:
     """A number that may count.
 
     Attributes:
@@ -44,38 +44,39 @@ def items_of(given: Arguments, position: int) -> Iterable[Lowered]:
     yield from given.block(position).items
 
 
-def _numbers(given: Arguments, first: int = 0) -> list[_Item]:
+def _numbers(given: Arguments, first: int = 0) -> list[CountedItem]:
     """The numbers of the arguments from a place on, in order."""
-    found: list[_Item] = []
+    found: list[CountedItem] = []
     for position, value in enumerate(given.values[first:], start=first):
         if not given.is_range(position):
-            found.append(_Item(_ONE, given.emitter.number(value)))
+            found.append(CountedItem(_ONE, given.emitter.number(value)))
             continue
-        items = (_item(given, item) for item in items_of(given, position))
+        items = (counted_item(given, item) for item in items_of(given, position))
         found += [item for item in items if item.counts != _ZERO]
     return found
 
 
-def _item(given: Arguments, item: Lowered) -> _Item:
+def counted_item(given: Arguments, item: Lowered) -> CountedItem:
+    """An item of a range as a number that may count."""
     if isinstance(item, Choice):
-        then, otherwise = _item(given, item.then), _item(given, item.otherwise)
+        then, otherwise = counted_item(given, item.then), counted_item(given, item.otherwise)
         emit = given.emitter.builder.emit
-        return _Item(
+        return CountedItem(
             emit(Op.SELECT_FLAG, item.flag, then.counts, otherwise.counts),
             emit(Op.SELECT, item.flag, then.value, otherwise.value),
         )
     operands = item_operands(given.emitter, item)
-    return _Item(_ONE, operands[0]) if operands else _Item(_ZERO, _ZERO)
+    return CountedItem(_ONE, operands[0]) if operands else CountedItem(_ZERO, _ZERO)
 
 
-def _instead(given: Arguments, item: _Item, neutral: Operand) -> Operand:
+def _instead(given: Arguments, item: CountedItem, neutral: Operand) -> Operand:
     """The number of an item, another where it does not count."""
     if isinstance(item.counts, Constant) or neutral == _ZERO:
         return item.value
     return given.emitter.builder.emit(Op.SELECT, item.counts, item.value, neutral)
 
 
-def _any_counts(given: Arguments, items: Iterable[_Item]) -> Operand:
+def _any_counts(given: Arguments, items: Iterable[CountedItem]) -> Operand:
     result: Operand = _ZERO
     for item in items:
         result = given.emitter.logical(Op.OR, result, item.counts)
@@ -95,20 +96,29 @@ def add_up(given: Arguments, operands: Iterable[Operand]) -> Operand:
 
 def sum_rule(given: Arguments) -> Lowered:
     """SUM."""
-    return given.emitter.as_lowered(add_up(given, (item.value for item in _numbers(given))))
+    return sum_of(given, _numbers(given))
+
+
+def sum_of(given: Arguments, items: Sequence[CountedItem]) -> Lowered:
+    """The sum of what counts."""
+    return given.emitter.as_lowered(add_up(given, (item.value for item in items)))
 
 
 def average_rule(given: Arguments) -> Lowered:
-    """AVERAGE: #DIV/0! where nothing counts."""
-    items = _numbers(given)
+    """AVERAGE."""
+    return average_of(given, _numbers(given))
+
+
+def average_of(given: Arguments, items: Sequence[CountedItem]) -> Lowered:
+    """The mean of what counts; #DIV/0! where nothing does."""
     if not items:
         return Known(ErrorValue.DIV0)
     total = add_up(given, (item.value for item in items))
-    count = _how_many(given, (item.counts for item in items))
+    count = how_many(given, (item.counts for item in items))
     return given.emitter.as_lowered(given.emitter.arithmetic_operands("/", total, count))
 
 
-def _how_many(given: Arguments, flags: Iterable[Operand]) -> Operand:
+def how_many(given: Arguments, flags: Iterable[Operand]) -> Operand:
     """The number of flags that are set."""
     always = 0
     sometimes: list[Operand] = []
@@ -123,31 +133,29 @@ def _how_many(given: Arguments, flags: Iterable[Operand]) -> Operand:
 
 
 def extreme_rule(op: Op) -> Callable[[Arguments], Lowered | None]:
-    """MIN or MAX: zero where nothing counts."""
+    """MIN or MAX."""
+    return lambda given: extreme_of(op, given, _numbers(given))
+
+
+def extreme_of(op: Op, given: Arguments, items: Sequence[CountedItem]) -> Lowered | None:
+    """The least or greatest of what counts; zero where nothing does."""
     pick = min if op is Op.MINIMUM else max
     neutral = constant(_LARGEST if op is Op.MINIMUM else -_LARGEST)
-
-    def rule(given: Arguments) -> Lowered | None:
-        items = _numbers(given)
-        operands = [_instead(given, item, neutral) for item in items]
-        fixed = [operand for operand in operands if isinstance(operand, Constant)]
-        varying = [operand for operand in operands if not isinstance(operand, Constant)]
-        failing = [operand for operand in fixed if is_error(operand)]
-        if failing:
-            return Known(decode_error(failing[0].value)) if not varying else None
-        result: Operand | None = (
-            constant(pick(operand.value for operand in fixed)) if fixed else None
-        )
-        for operand in varying:
-            result = operand if result is None else given.emitter.builder.emit(op, result, operand)
-        if result is None:
-            return Known(0.0)
-        if not any(isinstance(item.counts, Constant) for item in items):
-            some = _any_counts(given, items)
-            result = given.emitter.builder.emit(Op.SELECT, some, result, _ZERO)
-        return given.emitter.as_lowered(result)
-
-    return rule
+    operands = [_instead(given, item, neutral) for item in items]
+    fixed = [operand for operand in operands if isinstance(operand, Constant)]
+    varying = [operand for operand in operands if not isinstance(operand, Constant)]
+    failing = [operand for operand in fixed if is_error(operand)]
+    if failing:
+        return Known(decode_error(failing[0].value)) if not varying else None
+    result: Operand | None = constant(pick(operand.value for operand in fixed)) if fixed else None
+    for operand in varying:
+        result = operand if result is None else given.emitter.builder.emit(op, result, operand)
+    if result is None:
+        return Known(0.0)
+    if not any(isinstance(item.counts, Constant) for item in items):
+        some = _any_counts(given, items)
+        result = given.emitter.builder.emit(Op.SELECT, some, result, _ZERO)
+    return given.emitter.as_lowered(result)
 
 
 def count_rule(given: Arguments) -> Lowered | None:
@@ -159,13 +167,15 @@ def count_rule(given: Arguments) -> Lowered | None:
                 return None
             if isinstance(value, Known) and not isinstance(value.value, (float, ErrorValue)):
                 return None  # numbers in text count here, and other rules of single values
-            flags.append(_is_no_error(given, _item(given, value)))
+            flags.append(_is_no_error(given, counted_item(given, value)))
             continue
-        flags += [_is_no_error(given, _item(given, item)) for item in items_of(given, position)]
-    return given.emitter.as_lowered(_how_many(given, flags))
+        flags += [
+            _is_no_error(given, counted_item(given, item)) for item in items_of(given, position)
+        ]
+    return given.emitter.as_lowered(how_many(given, flags))
 
 
-def _is_no_error(given: Arguments, item: _Item) -> Operand:
+def _is_no_error(given: Arguments, item: CountedItem) -> Operand:
     """The flag of the draws in which an item counts and is no error; itself never an error."""
     if isinstance(item.value, Constant):
         return _ZERO if is_error(item.value) or item.counts == _ZERO else _ONE
@@ -195,7 +205,7 @@ def sum_of_products_rule(given: Arguments) -> Lowered:
     for items in zip(*(block.items for block in blocks), strict=True):
         product: Operand | None = None
         for item in items:
-            factor = _item(given, item).value
+            factor = counted_item(given, item).value
             product = (
                 factor
                 if product is None

@@ -71,8 +71,9 @@ INPUTS: list[tuple[int, str, object, str, str, str]] = [
     (47, "Depreciation", 20, "0", "years", "Straight line"),
     (48, "Customers pay after", 30, "0", "days", ""),
     (49, "Suppliers are paid after", 45, "0", "days", ""),
-    (51, "Cost of equity", 0.075, "0.0%", "a year", ""),
-    (52, "Project discount rate", 0.055, "0.0%", "a year", ""),
+    (50, "Cash kept in hand", 150, "#,##0", "EUR thousand", "Carries the winter months"),
+    (52, "Cost of equity", 0.075, "0.0%", "a year", ""),
+    (53, "Project discount rate", 0.055, "0.0%", "a year", ""),
 ]  # fmt: skip
 
 PROFILE = [0.028, 0.046, 0.083, 0.112, 0.129, 0.134, 0.135, 0.118, 0.091, 0.062, 0.036, 0.026]
@@ -114,7 +115,7 @@ ROWS: dict[int, tuple[str, str, str, str, str | None, str | None]] = {
     37: ("Cash before tax after debt service", "EUR thousand", "={c}10*({c}24-{c}25-{c}27-{c}33-{c}36)", "#,##0.0", "sum", None),
     38: ("Cash swept to the loan", "EUR thousand", "=MIN({c}32-{c}36,MAX(0,Inputs!$C$41*{c}37))", "#,##0.0", "sum", None),
     39: ("Loan at the end", "EUR thousand", "={c}32+{c}31+{c}35-{c}36-{c}38", "#,##0", None, None),
-    41: ("Depreciation", "EUR thousand", "=IF(AND({c}8>0,{c}8<=12*Inputs!$C$47),Inputs!$C$27/(12*Inputs!$C$47),0)", "#,##0.0", "sum", None),
+    41: ("Depreciation", "EUR thousand", "=IF(AND({c}8>0,{c}8<=12*Inputs!$C$47),(Inputs!$C$27+$D$35)/(12*Inputs!$C$47),0)", "#,##0.0", "sum", None),
     42: ("Profit before tax", "EUR thousand", "={c}24-{c}41-{c}25-{c}10*{c}33", "#,##0.0", "sum", None),
     43: ("Losses at the start", "EUR thousand", "={p}43+{p}44-{p}45", "#,##0", None, "=0"),
     44: ("Loss made", "EUR thousand", "=MAX(-{c}42,0)", "#,##0.0", "sum", None),
@@ -122,21 +123,27 @@ ROWS: dict[int, tuple[str, str, str, str, str | None, str | None]] = {
     46: ("Tax", "EUR thousand", "=Inputs!$C$46*(MAX({c}42,0)-{c}45)", "#,##0.0", "sum", None),
     49: ("Cash flow available for debt service", "EUR thousand", "={c}24-{c}25-{c}27-{c}46", "#,##0.0", "sum", None),
     50: ("Debt service as agreed", "EUR thousand", "={c}10*({c}33+{c}36)", "#,##0.0", "sum", None),
-    51: ("Cash at the start", "EUR thousand", "={p}55", "#,##0", None, "=0"),
+    51: ("Cash at the start", "EUR thousand", "={p}56", "#,##0", None, "=0"),
     52: ("Cash before distribution", "EUR thousand", "={c}51+{c}49-{c}50-{c}38+IF({c}5=Inputs!$C$9,Inputs!$C$43,0)", "#,##0.0", None, None),
-    53: ("Reserve to be kept", "EUR thousand", "=IF({c}7=1,Inputs!$C$43,IF({c}39>0.5,Inputs!$C$42*{c}50,0))", "#,##0.0", None, None),
+    53: ("Reserve to be kept", "EUR thousand", "=IF({c}7=1,Inputs!$C$43,MAX({c}10*Inputs!$C$50,IF({c}39>0.5,Inputs!$C$42*{c}50,0)))", "#,##0.0", None, None),
     54: ("Distribution", "EUR thousand", "=MAX(0,{c}52-{c}53)", "#,##0.0", "sum", None),
-    55: ("Cash at the end", "EUR thousand", "={c}52-{c}54", "#,##0.0", None, None),
-    57: ("Paid in by shareholders", "EUR thousand", "={c}30-{c}31+IF({c}5=Inputs!$C$9,Inputs!$C$43,0)", "#,##0.0", "sum", None),
-    58: ("Shareholders' cash flow", "EUR thousand", "={c}54-{c}57", "#,##0.0", "sum", None),
-    59: ("Shareholders' cash flow so far", "EUR thousand", "={p}59+{c}58", "#,##0", None, "={c}58"),
-    60: ("Project cash flow after tax", "EUR thousand", "={c}49-{c}30", "#,##0.0", "sum", None),
-    62: ("Debt service cover, twelve months", "", '=IF(AND({c}8>=12,{c}32>0.5),SUM({far}49:{c}49)/SUM({far}50:{c}50),"")', "0.00", None, '=""'),
-    63: ("Cover below the covenant", "flag", "=IF(ISNUMBER({c}62),IF({c}62<Inputs!$C$44,1,0),0)", "0", "sum", None),
+    55: ("Shortfall paid in by shareholders", "EUR thousand", "=MAX(0,-{c}52)", "#,##0.0", "sum", None),
+    56: ("Cash at the end", "EUR thousand", "={c}52-{c}54+{c}55", "#,##0.0", None, None),
+    58: ("Paid in by shareholders", "EUR thousand", "={c}30-{c}31+IF({c}5=Inputs!$C$9,Inputs!$C$43,0)+{c}55", "#,##0.0", "sum", None),
+    59: ("Shareholders' cash flow", "EUR thousand", "={c}54-{c}58", "#,##0.0", "sum", None),
+    60: ("Shareholders' cash flow so far", "EUR thousand", "={p}60+{c}59", "#,##0", None, "={c}59"),
+    61: ("Project cash flow after tax", "EUR thousand", "={c}49-{c}30", "#,##0.0", "sum", None),
+    63: ("Debt service cover, twelve months", "", '=IF(AND({c}8>=12,{c}32>0.5),SUM({far}49:{c}49)/SUM({far}50:{c}50),"")', "0.00", None, '=""'),
+    64: ("Cover below the covenant", "flag", "=IF(ISNUMBER({c}63),IF({c}63<Inputs!$C$44,1,0),0)", "0", "sum", None),
+    65: ("Within the term of the loan", "flag", "=IF(AND({c}8>0,{c}8<=12*Inputs!$C$40),1,0)", "0", "sum", None),
+    66: ("Discount factor at the loan's rate", "", "=IF({c}8>0,{p}66/(1+(Inputs!$C$37+Inputs!$C$38)/12),1)", "0.000", None, "=1"),
+    68: ("Plant at book value", "EUR thousand", "={p}68+{c}30+{c}35-{c}41", "#,##0", None, "={c}30+{c}35-{c}41"),
+    69: ("Shareholders' funds", "EUR thousand", "={p}69+{c}58-{c}54+{c}42-{c}46", "#,##0", None, "={c}58-{c}54+{c}42-{c}46"),
+    70: ("Assets less loan and shareholders' funds", "must be 0", "=ROUND({c}68+{c}26+{c}56-{c}39-{c}69,6)", "0", None, None),
 }  # fmt: skip
 SECTIONS = {
-    3: "Timing", 12: "Operation", 28: "Construction and loan", 40: "Tax", 48: "Cash", 56: "Shareholders and project",
-    61: "Cover",
+    3: "Timing", 12: "Operation", 28: "Construction and loan", 40: "Tax", 48: "Cash", 57: "Shareholders and project",
+    62: "Cover", 67: "Balance sheet",
 }  # fmt: skip
 
 
@@ -157,7 +164,7 @@ def fill_guide(sheet: Worksheet) -> None:
     )
     lines = [
         "Inputs: every number that may be changed, on a pale ground, with a price scenario and a delay of the start.",
-        "Monthly: construction, then twenty-five years of operation, one formula a row filled across; loan, tax, cash and shareholders.",
+        "Monthly: construction, then twenty-five years of operation, one formula a row filled across; loan, tax, cash, shareholders, balance sheet.",
         "Annual: the months summed by calendar year.",
         "Returns: internal rates of return, present values, debt service cover, payback, and checks that must be zero.",
         "Interest is charged on the average of a month's opening and closing loan. The closing loan depends on the cash sweep and on",
@@ -178,6 +185,7 @@ def fill_inputs(sheet: Worksheet) -> None:
     for row, label, value, code, unit, note in INPUTS:
         sheet[f"B{row}"], sheet[f"C{row}"] = label, value
         sheet[f"D{row}"], sheet[f"E{row}"] = unit or None, note or None
+        sheet[f"D{row}"].alignment = Alignment(indent=1)
         sheet[f"C{row}"].number_format = code
         if not isinstance(value, str) or value.startswith("=DATE"):
             sheet[f"C{row}"].fill = INPUT
@@ -187,7 +195,7 @@ def fill_inputs(sheet: Worksheet) -> None:
         26: "Costs",
         35: "Loan",
         45: "Tax and payment terms",
-        50: "Valuation",
+        51: "Valuation",
     }.items():
         sheet[f"B{row}"] = text
         sheet[f"B{row}"].font = BOLD
@@ -244,13 +252,14 @@ def fill_monthly(sheet: Worksheet) -> None:
     for column in range(FIRST, LAST + 1):
         sheet.column_dimensions[get_column_letter(column)].width = 9.5
     sheet.freeze_panes = "F5"
+    sheet.print_title_cols, sheet.print_title_rows = "A:D", "3:4"
 
 
 ANNUAL = [
     ("Energy sold, MWh", 13, "#,##0"), ("Revenue", 18, "#,##0"), ("Operating cost", 23, "#,##0"),
     ("Operating profit before depreciation", 24, "#,##0"), ("Construction spending", 30, "#,##0"), ("Tax", 46, "#,##0"),
     ("Cash flow for debt service", 49, "#,##0"), ("Debt service as agreed", 50, "#,##0"), ("Cash swept to the loan", 38, "#,##0"),
-    ("Shareholders' cash flow", 58, "#,##0"),
+    ("Shareholders' cash flow", 59, "#,##0"),
 ]  # fmt: skip
 
 
@@ -284,6 +293,7 @@ def fill_annual(sheet: Worksheet) -> None:
         cell.font, cell.fill = BOLD, HEADING
         cell.alignment = Alignment(wrap_text=True, vertical="top")
         sheet.column_dimensions[get_column_letter(column)].width = 15 if column > 1 else 9
+    sheet.row_dimensions[4].height = 44
     sheet.freeze_panes = "B5"
 
 
@@ -296,25 +306,30 @@ def fill_returns(sheet: Worksheet) -> None:
         return f"Monthly!{first}{row}:{last}{row}"
 
     lines: list[tuple[int, str, str, str, str]] = [
-        (4, "Shareholders' rate of return a year", f"=(1+IRR({across(58)},0.006))^12-1", "0.00%", ""),
-        (5, "The same by dates", f"=XIRR({across(58)},{across(4)})", "0.00%", ""),
-        (6, "Project rate of return a year, after tax", f"=(1+IRR({across(60)},0.005))^12-1", "0.00%", ""),
-        (7, "Net present value for shareholders", f"=NPV((1+Inputs!C51)^(1/12)-1,{across(58)})", "#,##0", "EUR thousand"),
-        (8, "Net present value of the project", f"=NPV((1+Inputs!C52)^(1/12)-1,{across(60)})", "#,##0", "EUR thousand"),
-        (9, "Lowest debt service cover", f"=MIN({across(62)})", "0.00", ""),
-        (10, "Average debt service cover", f"=AVERAGE({across(62)})", "0.00", ""),
-        (11, "Months with cover below the covenant", "=Monthly!D63", "0", "months"),
+        (4, "Shareholders' rate of return a year", f"=(1+IRR({across(59)},0.006))^12-1", "0.00%", ""),
+        (5, "The same by dates", f"=XIRR({across(59)},{across(4)})", "0.00%", ""),
+        (6, "Project rate of return a year, after tax", f"=(1+IRR({across(61)},0.005))^12-1", "0.00%", ""),
+        (7, "Net present value for shareholders", f"=NPV((1+Inputs!C52)^(1/12)-1,{across(59)})", "#,##0", "EUR thousand"),
+        (8, "Net present value of the project", f"=NPV((1+Inputs!C53)^(1/12)-1,{across(61)})", "#,##0", "EUR thousand"),
+        (9, "Lowest debt service cover", f"=MIN({across(63)})", "0.00", ""),
+        (10, "Average debt service cover", f"=AVERAGE({across(63)})", "0.00", ""),
+        (11, "Months with cover below the covenant", "=Monthly!D64", "0", "months"),
         (12, "Largest loan", f"=MAX({across(39)})", "#,##0", "EUR thousand"),
         (13, "Month in which the loan is repaid", f'=IFERROR(INDEX({across(4)},MATCH(1,INDEX(({across(39)}<0.5)*({across(8)}>0),0),0)),"not repaid")', "mmm yyyy", ""),
-        (14, "Month in which shareholders have their money back", f'=IFERROR(INDEX({across(4)},MATCH(1,INDEX(({across(59)}>=0)*({across(8)}>0),0),0)),"never")', "mmm yyyy", ""),
-        (15, "Lowest cash at a month's end", f"=MIN({across(55)})", "#,##0", "EUR thousand"),
-        (16, "Cost of energy, discounted", f"=SUMPRODUCT(({across(23)}+{across(30)}+{across(25)})/(1+Inputs!C52)^({across(5)}/12))/SUMPRODUCT({across(13)}/(1+Inputs!C52)^({across(5)}/12))*1000", "0.00", "EUR/MWh"),
+        (14, "Month in which shareholders have their money back", f'=IFERROR(INDEX({across(4)},MATCH(1,INDEX(({across(60)}>=0)*({across(8)}>0),0),0)),"never")', "mmm yyyy", ""),
+        (15, "Lowest cash at a month's end", f"=MIN({across(56)})", "#,##0", "EUR thousand"),
+        (16, "Cost of energy, discounted", f"=SUMPRODUCT(({across(23)}+{across(30)}+{across(25)})/(1+Inputs!C53)^({across(5)}/12))/SUMPRODUCT({across(13)}/(1+Inputs!C53)^({across(5)}/12))*1000", "0.00", "EUR/MWh"),
         (17, "Verdict", '=IF(B9<Inputs!C44,"cover breaks the covenant",IF(B7>0,"worth more than it costs","worth less than it costs"))', "General", ""),
-        (20, "Spending less loan drawn less paid in", "=ROUND(Monthly!D30+Inputs!C43-Monthly!D31-Monthly!D57,6)", "0", "must be 0"),
+        (18, "Loan life cover at the start of operation", f"=SUMPRODUCT({across(49)},{across(65)},{across(66)})/SUMPRODUCT(({across(8)}=1)*{across(32)})", "0.00", ""),
+        (20, "Spending less loan drawn less paid in", "=ROUND(Monthly!D30+Inputs!C43+Monthly!D55-Monthly!D31-Monthly!D58,6)", "0", "must be 0"),
         (21, "Loan drawn and added less repaid and swept", f"=ROUND(Monthly!D31+Monthly!D35-Monthly!D36-Monthly!D38-Monthly!{last}39,6)", "0", "must be 0"),
-        (22, "Cash in less cash out", f"=ROUND(Monthly!D49+Inputs!C43-Monthly!D50-Monthly!D38-Monthly!D54-Monthly!{last}55,6)", "0", "must be 0"),
+        (22, "Cash in less cash out", f"=ROUND(Monthly!D49+Inputs!C43+Monthly!D55-Monthly!D50-Monthly!D38-Monthly!D54-Monthly!{last}56,6)", "0", "must be 0"),
         (23, "Years against months", "=ROUND(Annual!C33-Monthly!D18,6)", "0", "must be 0"),
         (24, "Yield profile", "=ROUND(Inputs!H17-1,9)", "0", "must be 0"),
+        (25, "Balance sheet, all months", f"=SUMPRODUCT(ABS({across(70)}))", "0", "must be 0"),
+        (26, "Net present value by discount factors", f"=ROUND(B7-SUMPRODUCT({across(59)}/(1+Inputs!C52)^({across(5)}/12)),6)", "0", "must be 0"),
+        (27, "Lowest cash, if below zero", "=MIN(0,ROUND(B15,6))", "0", "must be 0"),
+        (28, "All checks hold", "=SUMPRODUCT(ABS(B20:B27))=0", "General", ""),
     ]  # fmt: skip
     sheet["A19"] = "Checks"
     sheet["A19"].font = BOLD
@@ -322,6 +337,7 @@ def fill_returns(sheet: Worksheet) -> None:
         sheet[f"A{row}"], sheet[f"B{row}"], sheet[f"C{row}"] = label, formula, unit or None
         sheet[f"B{row}"].number_format = code
         sheet[f"B{row}"].alignment = Alignment(horizontal="right")
+        sheet[f"C{row}"].alignment = Alignment(indent=1)
         for column in "ABC":
             sheet[f"{column}{row}"].border = LINE
     for column, width in {"A": 52, "B": 28, "C": 16}.items():
@@ -340,8 +356,10 @@ def build() -> Workbook:
     for sheet in book.worksheets:
         sheet.sheet_view.showGridLines = False
         sheet.page_setup.orientation = "landscape"
-        sheet.page_setup.fitToHeight = 0
-        sheet.sheet_properties.pageSetUpPr.fitToPage = True
+        if sheet.title == "Monthly":
+            sheet.page_setup.scale = 55
+        else:
+            sheet.sheet_properties.pageSetUpPr.fitToPage = True
     book.defined_names["EquityReturn"] = DefinedName("EquityReturn", attr_text="Returns!$B$4")
     book.calculation = CalcProperties(
         iterate=True, iterateCount=100, iterateDelta=1e-9, fullCalcOnLoad=True
