@@ -151,7 +151,9 @@ class Disagreement:
         formula: Its formula with `=`.
         stored: The value in the file.
         recalculated: The value that cellsim finds.
-        root: Whether none of the cells that it reads disagrees, so that the difference starts here.
+        root: Whether the difference starts here: on the stored values of the cells that it reads, the
+            formula does not give its own.
+        cause: What it may come from, in a few words.
     """
 
     place: str
@@ -159,6 +161,22 @@ class Disagreement:
     stored: Scalar
     recalculated: Scalar
     root: bool
+    cause: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class SheetAgreement:
+    """How the formulas of one sheet compare.
+
+    Attributes:
+        title: The sheet.
+        compared: Formula cells compared.
+        agreeing: How many of them agree.
+    """
+
+    title: str
+    compared: int
+    agreeing: int
 
 
 @dataclass(frozen=True, slots=True)
@@ -173,6 +191,7 @@ class ModelCheck:
         disagreements: All others.
         unsupported: Functions that cellsim does not calculate: name, number of cells, reason.
         notes: What else a reader should know (macros not run, external links read from the file).
+        sheets: The same by sheet, those without formulas left out.
     """
 
     compared: int
@@ -182,6 +201,7 @@ class ModelCheck:
     disagreements: tuple[Disagreement, ...]
     unsupported: tuple[tuple[str, int, str], ...]
     notes: tuple[str, ...] = ()
+    sheets: tuple[SheetAgreement, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

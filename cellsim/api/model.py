@@ -76,9 +76,18 @@ class Model:
     def _check(self) -> ModelCheck:
         return check_model(self._calculated)
 
-    def check(self) -> ModelCheck:
-        """Recalculate every formula cell and compare it with the value stored in the file."""
-        return self._check
+    def check(self, against: Path | str | None = None) -> ModelCheck:
+        """Recalculate every formula cell and compare it with the value stored in the file.
+
+        Args:
+            against: Another workbook with the same sheets, whose stored values are compared with.
+
+        Raises:
+            ModelError: The other workbook cannot be read.
+        """
+        if against is None:
+            return self._check
+        return check_model(self._calculated, read_workbook(Path(against)))
 
     def parse(self, text: str, at: CellRef | None = None) -> Node:
         """The tree of a formula over the model, written as in a cell.

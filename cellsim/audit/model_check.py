@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
+from cellsim.audit.causes import FOLLOWS, Causes, Evidence, agrees
 from cellsim.cells import CellRef
 from cellsim.formula.unparse import unparse
 from cellsim.functions.catalogue.unsupported import unsupported_reason
@@ -13,59 +14,102 @@ from cellsim.graph.build import Formula, Graph
 from cellsim.graph.slicing import affected_cells
 from cellsim.program.calculation import Calculation, Cycle
 from cellsim.program.interpret import UNKNOWN_LINK
-from cellsim.results import Disagreement, ModelCheck
+from cellsim.results import Disagreement, ModelCheck, SheetAgreement
 from cellsim.values import Scalar
 from cellsim.workbook.model import Workbook
 
-TOLERANCE = 1e-9
-"""Numbers agree within this, relative, absolute below 1."""
 
-
-def check_model(calculation: Calculation) -> ModelCheck:
-    """Compare a finished calculation with the stored values.
+def check_model(calculation: Calculation, against: Workbook | None = None) -> ModelCheck:
+    """Compare a finished calculation with stored values.
 
     Left out are formulas that are volatile or depend on a volatile one, those for which the file stores
     no value, and those that are not calculated because of a function that is not supported: they are
     counted by function.
+
+    Args:
+        calculation: The calculation.
+        against: The workbook whose values are taken as stored; by default the model's own.
     """
     graph = calculation.graph
+    stored = _stored_values(graph, against)
     volatile = volatile_cells(graph)
     stood_in = calculation.findings.unsupported
-    compared = agreeing = without_value = 0
-    wrong: dict[CellRef, tuple[Formula, Scalar]] = {}
+    without_value = 0
+    counts: dict[str, list[int]] = {title: [0, 0] for title in graph.sheets}
+    evidence = Evidence()
+    wrong: list[tuple[Formula, Scalar]] = []
     for formula in graph.all_formulas():
         cell = formula.cell
-        if cell in volatile:
-            continue
-        if cell in stood_in:
+        if cell in volatile or cell in stood_in:
             continue  # a copy of the stored value proves nothing
-        if not formula.has_stored:
+        if cell not in stored:
             without_value += 1
             continue
-        compared += 1
         found = calculation.cell_value(*cell)
-        if agrees(formula.stored, found):
-            agreeing += 1
+        counts[cell.sheet][0] += 1
+        if agrees(stored[cell], found):
+            counts[cell.sheet][1] += 1
+            evidence.record(graph, formula)
         else:
-            wrong[cell] = formula, found
+            wrong.append((formula, found))
     return ModelCheck(
-        compared=compared,
-        agreeing=agreeing,
+        compared=sum(compared for compared, _ in counts.values()),
+        agreeing=sum(agreeing for _, agreeing in counts.values()),
         volatile=len(volatile),
         without_value=without_value,
-        disagreements=tuple(_disagreements(graph, wrong)),
+        disagreements=_disagreements(calculation, stored, evidence, wrong),
         unsupported=_unsupported(calculation.findings.unsupported.values()),
-        notes=tuple(_notes(graph, calculation)),
+        notes=(*_notes(graph, calculation), *_differences(graph.workbook, against)),
+        sheets=tuple(
+            SheetAgreement(title, compared, agreeing)
+            for title, (compared, agreeing) in counts.items()
+            if compared
+        ),
     )
 
 
-def agrees(stored: Scalar, found: Scalar) -> bool:
-    """Whether a recalculated value is the stored one: numbers within the tolerance, others equal."""
-    if isinstance(stored, float) and isinstance(found, float):
-        return abs(stored - found) <= TOLERANCE * max(1.0, abs(stored))
-    if stored in (None, "") and (found in (None, "") or (isinstance(found, float) and found == 0)):
-        return True
-    return type(stored) is type(found) and stored == found
+def _stored_values(graph: Graph, against: Workbook | None) -> dict[CellRef, Scalar]:
+    """By formula cell, the value that it is compared with; cells without one are left out."""
+    if against is None:
+        return {f.cell: f.stored for f in graph.all_formulas() if f.has_stored}
+    values: dict[CellRef, Scalar] = {}
+    sheets = {sheet.title: sheet for sheet in against.sheets}
+    for formula in graph.all_formulas():
+        cell = formula.cell
+        sheet = sheets.get(cell.sheet)
+        if sheet is None:
+            continue
+        position = (cell.row, cell.column)
+        other = sheet.formulas.get(position)
+        if other is not None and other.has_stored:
+            values[cell] = other.stored
+        elif other is None and position in sheet.constants:
+            values[cell] = sheet.constants[position]
+    return values
+
+
+def _differences(workbook: Workbook, against: Workbook | None) -> Iterable[str]:
+    """What else is not the same in the workbook compared with: sheets and constants."""
+    if against is None:
+        return
+    others = {sheet.title: sheet for sheet in against.sheets}
+    missing = [sheet.title for sheet in workbook.sheets if sheet.title not in others]
+    if missing:
+        yield f"{against.path.name} has no sheet {', '.join(repr(title) for title in missing)}."
+    changed = [
+        CellRef(sheet.title, *position)
+        for sheet in workbook.sheets
+        if sheet.title in others
+        for position, value in sheet.constants.items()
+        if position not in others[sheet.title].formulas
+        and others[sheet.title].constants.get(position) != value
+    ]
+    if changed:
+        examples = ", ".join(str(cell) for cell in changed[:5])
+        yield (
+            f"{len(changed):,} constant{'s differ' if len(changed) > 1 else ' differs'} from {against.path.name}, "
+            f"such as {examples}; their values here are those of the model."
+        )
 
 
 def volatile_cells(graph: Graph) -> frozenset[CellRef]:
@@ -88,24 +132,27 @@ def _changes_by_itself(name: str) -> bool:
 
 
 def _disagreements(
-    graph: Graph, wrong: dict[CellRef, tuple[Formula, Scalar]]
-) -> Iterable[Disagreement]:
-    """Roots first: the cells that read no other cell that disagrees."""
+    calculation: Calculation,
+    stored: Mapping[CellRef, Scalar],
+    evidence: Evidence,
+    wrong: Sequence[tuple[Formula, Scalar]],
+) -> tuple[Disagreement, ...]:
+    """The disagreements, those where a difference starts first."""
+    if not wrong:
+        return ()
+    causes = Causes(calculation, stored, evidence)
     rows = []
-    for cell, (formula, found) in wrong.items():
-        reads = (
-            source
-            for area in graph.precedents(formula)
-            for source in graph.formula_cells_in(graph.resolver.clip(area))
-        )
-        root = not any(source in wrong and source != cell for source in reads)
+    for formula, found in wrong:
+        cell = formula.cell
+        cause = causes.cause(formula, stored[cell], found)
         text = "=" + (
             unparse(formula.tree, cell.row, cell.column)
             if formula.tree is not None
             else formula.source.text
         )
-        rows.append(Disagreement(str(cell), text, formula.stored, found, root))
-    return sorted(rows, key=lambda row: not row.root)
+        root = cause != FOLLOWS
+        rows.append(Disagreement(str(cell), text, stored[cell], found, root, cause))
+    return tuple(sorted(rows, key=lambda row: not row.root))
 
 
 def _unsupported(names: Iterable[str]) -> tuple[tuple[str, int, str], ...]:

@@ -54,6 +54,27 @@ def test_check_exits_with_1_and_names_the_root_when_a_value_disagrees(tmp_path: 
     ]
 
 
+def test_check_compares_with_another_workbook_and_writes_what_it_found(tmp_path: Path) -> None:
+    """The ferry company's model with another share price against the sample itself."""
+    book = openpyxl.load_workbook(SAMPLES / "larkholm_ferries.xlsx")
+    book["Market"]["B2"] = 9.0
+    book.save(tmp_path / "changed.xlsx")
+    written = tmp_path / "check.xlsx"
+    options = ["--against", SAMPLES / "larkholm_ferries.xlsx", "--results", written]
+    done = cellsim("check", tmp_path / "changed.xlsx", *options)
+    assert done.returncode == 1, done.stderr
+    assert "1 constant differs" in done.stdout
+    assert "Market!B4" in done.stdout
+    sheet = openpyxl.load_workbook(written)["Model check"]
+    rows = [[cell.value for cell in row] for row in sheet.iter_rows()]
+    assert ["Market", 1, 0, 1] in [row[:4] for row in rows]
+    found = next(row for row in rows if row[0] == "Market!B4")
+    assert found[1:4] == ["=B2*B3", 201600, 216000]
+    again = cellsim("check", tmp_path / "changed.xlsx", *options)
+    assert again.returncode == 5
+    assert "exists already" in again.stderr
+
+
 def test_check_passes_over_formulas_without_stored_values(tmp_path: Path) -> None:
     book = openpyxl.load_workbook(SAMPLES / "larkholm_ferries.xlsx")
     book.save(tmp_path / "without_values.xlsx")
