@@ -47,9 +47,13 @@ def call_function(
     if not function.least <= len(arguments) <= function.most:
         return ErrorValue.VALUE
     try:
-        prepared: list[Any] = []
+        prepared: list[Any] = list(arguments)
         lifted: list[int] = []
-        for position, raw in enumerate(arguments):
+        places: Sequence[int] = range(len(arguments))
+        if function.scalars_first:
+            places = sorted(places, key=lambda k: function.parameter(k).kind not in LIFTED)
+        for position in places:
+            raw = arguments[position]
             parameter = function.parameter(position)
             argument = raw
             if parameter.kind in LIFTED:
@@ -57,9 +61,9 @@ def call_function(
                 argument = single(raw, context, whole_arrays=whole_arrays)
                 if isinstance(argument, Array):
                     lifted.append(position)
-                    prepared.append(argument)
+                    prepared[position] = argument
                     continue
-            prepared.append(_COERCIONS[parameter.kind](argument, context))
+            prepared[position] = _COERCIONS[parameter.kind](argument, context)
         if lifted:
             return _call_by_item(function, prepared, lifted, context)
         return _call(function, prepared, context)

@@ -183,6 +183,7 @@ class FunctionRecord:
         gives_reference: Whether it may return a reference (OFFSET, INDEX and their like).
         group: For a variadic parameter, arguments come in groups of so many.
         strict: Whether single values may be neither logicals nor ranges of several cells (#VALUE!).
+        scalars_first: Whether errors of single values come before errors inside ranges.
         result: "number", "text" or "logical" where the kernel's annotation says so, else "any".
         documentation: The first line of the kernel's docstring.
         module: The family module that declares it.
@@ -198,6 +199,7 @@ class FunctionRecord:
     gives_reference: bool
     group: int
     strict: bool
+    scalars_first: bool
     result: str
     documentation: str
     module: str
@@ -229,6 +231,7 @@ def spreadsheet_function(
     gives_reference: bool = False,
     group: int = 1,
     strict: bool = False,
+    scalars_first: bool = False,
     least: int | None = None,
     most: int | None = None,
 ) -> Callable[[Kernel], Kernel]:
@@ -241,6 +244,7 @@ def spreadsheet_function(
         group: Arguments of the variadic parameter come in groups of so many.
         strict: Arguments in places for single values may be neither logicals nor ranges of several
             cells (#VALUE!), as in the functions that spreadsheet programs long kept in an add-in.
+        scalars_first: Single values are looked at before ranges, so that their errors come first.
         least: Fewest arguments, where the signature does not say it.
         most: Most arguments, where the signature does not say it.
 
@@ -269,6 +273,7 @@ def spreadsheet_function(
                 gives_reference=gives_reference,
                 group=group,
                 strict=strict,
+                scalars_first=scalars_first,
                 result=result,
                 documentation=(inspect.getdoc(kernel) or "").split("\n")[0],
                 module=kernel.__module__.rpartition(".")[2],

@@ -38,7 +38,11 @@ def find_equal(
 
 
 def find_at_most(key: Scalar, items: list[Scalar]) -> int | None:
-    """The place of the last item not above a key, by binary search over ascending items."""
+    """The place of the last item not above a key, by binary search over ascending items.
+
+    The search ends at the first equal item that it meets, and moves on over those equal to it that
+    follow at once: on unsorted items, what stored values show.
+    """
     low, high = 0, len(items) - 1
     found: int | None = None
     while low <= high:
@@ -49,7 +53,14 @@ def find_at_most(key: Scalar, items: list[Scalar]) -> int | None:
         if probe > high:
             high = middle - 1
             continue
-        if compare(items[probe], key) <= 0:
+        order = compare(items[probe], key)
+        if order == 0:
+            while probe + 1 < len(items) and _comparable(items[probe + 1], key):
+                if compare(items[probe + 1], key) != 0:
+                    break
+                probe += 1
+            return probe
+        if order < 0:
             found = probe
             low = probe + 1
         else:

@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from cellsim.functions.registry import picks_items
+from cellsim.functions.registry import find_function, picks_items
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.cancellation import add_last
@@ -56,9 +56,14 @@ def careful_step(
     if op is Op.CALL:
         call: KernelCall = instruction.detail
         run = kernel_runner(call, buffers, base)
+        single = [
+            buffers.operand(item) for item in call.arguments if not isinstance(item, StackOperand)
+        ]
+        function = find_function(call.function)
         if picks_items(call.function):
-            single = [item for item in call.arguments if not isinstance(item, StackOperand)]
-            operands = [buffers.operand(operand) for operand in single]
+            operands = single
+        elif function is not None and function.scalars_first:
+            operands = [*single, *operands]
         return lambda: _call(out, operands, run)
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)

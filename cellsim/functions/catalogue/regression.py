@@ -79,7 +79,7 @@ def sample_covariance(first: ArrayValues, second: ArrayValues) -> float:
 
 
 def _line(known_y: Array, known_x: Array) -> tuple[float, float]:
-    x, y = paired_numbers(known_x, known_y)
+    y, x = paired_numbers(known_y, known_x)  # an error among the first comes first
     if not x:
         raise Fault(ErrorValue.DIV0)
     mean_x, mean_y, sxx, _, sxy = _sums(x, y)
@@ -111,7 +111,7 @@ def on_the_line(x: Number, known_y: ArrayValues, known_x: ArrayValues) -> float:
 @spreadsheet_function("STEYX")
 def error_about_the_line(known_y: ArrayValues, known_x: ArrayValues) -> float | ErrorValue:
     """The standard error about the least-squares line."""
-    x, y = paired_numbers(known_x, known_y)
+    y, x = paired_numbers(known_y, known_x)  # an error among the first comes first
     if len(x) < 3:
         return ErrorValue.DIV0
     _, _, sxx, syy, sxy = _sums(x, y)

@@ -142,14 +142,14 @@ def most_frequent_of_all(*numbers: NumberItems) -> Array | ErrorValue:
     return Array(len(found), 1, list(found))
 
 
-@spreadsheet_function("LARGE")
+@spreadsheet_function("LARGE", scalars_first=True)
 def kth_largest(numbers: NumberItems, place: Number) -> float | ErrorValue:
     """The number at a place from the top."""
     k = math.ceil(place)
     return sorted(numbers, reverse=True)[k - 1] if 1 <= k <= len(numbers) else ErrorValue.NUM
 
 
-@spreadsheet_function("SMALL")
+@spreadsheet_function("SMALL", scalars_first=True)
 def kth_smallest(numbers: NumberItems, place: Number) -> float | ErrorValue:
     """The number at a place from the bottom."""
     k = math.ceil(place)
@@ -194,25 +194,25 @@ def average_rank(
     return ErrorValue.NA if found is None else found[0] + (found[1] - 1) / 2
 
 
-@spreadsheet_function("PERCENTILE", "PERCENTILE.INC")
+@spreadsheet_function("PERCENTILE", "PERCENTILE.INC", scalars_first=True)
 def percentile(numbers: NumberItems, share: Number) -> float:
     """The number below which a share of the numbers lies, ends included."""
     return percentile_inclusive(numbers, share)
 
 
-@spreadsheet_function("PERCENTILE.EXC")
+@spreadsheet_function("PERCENTILE.EXC", scalars_first=True)
 def percentile_without_ends(numbers: NumberItems, share: Number) -> float:
     """The number below which a share of the numbers lies, ends left out."""
     return percentile_exclusive(numbers, share)
 
 
-@spreadsheet_function("QUARTILE", "QUARTILE.INC")
+@spreadsheet_function("QUARTILE", "QUARTILE.INC", scalars_first=True)
 def quartile(numbers: NumberItems, quarter: Whole) -> float | ErrorValue:
     """A quartile, ends included."""
     return percentile_inclusive(numbers, quarter / 4) if 0 <= quarter <= 4 else ErrorValue.NUM
 
 
-@spreadsheet_function("QUARTILE.EXC")
+@spreadsheet_function("QUARTILE.EXC", scalars_first=True)
 def quartile_without_ends(numbers: NumberItems, quarter: Whole) -> float | ErrorValue:
     """A quartile, ends left out."""
     return percentile_exclusive(numbers, quarter / 4) if 1 <= quarter <= 3 else ErrorValue.NUM
