@@ -105,6 +105,12 @@ def _single(argument: Argument, context: Context, *, whole_arrays: bool) -> Scal
     return argument  # type: ignore[return-value]
 
 
+def single_value(value: Value, context: Context) -> Scalar:
+    """The one value of an argument that was not coerced: a cell's, an intersection's, an array's first."""
+    single = _single(value, context, whole_arrays=False)
+    return single.items[0] if isinstance(single, Array) else single
+
+
 def _strictly_single(argument: Argument, context: Context, *, whole_arrays: bool) -> Scalar | Array:
     """A single value for a strict function.
 

@@ -36,6 +36,48 @@ def checked(result: Numbers, *rules: tuple[Condition, ErrorValue]) -> FloatArray
     return values
 
 
+def chosen(
+    flag: Numbers, if_set: Callable[[], FloatArray], if_not: Callable[[], FloatArray]
+) -> FloatArray:
+    """One of two results by a logical argument; both are computed only where draws differ in it.
+
+    Args:
+        flag: 0 or 1, one for all draws or one each.
+        if_set: Gives the result where it is not 0.
+        if_not: Gives the result where it is 0.
+    """
+    if np.ndim(flag):
+        return np.where(np.not_equal(flag, 0), if_set(), if_not())
+    return if_set() if flag else if_not()
+
+
+def apart(
+    condition: npt.NDArray[np.bool_],
+    if_true: Callable[..., Any],
+    if_false: Callable[..., Any],
+    *numbers: FloatArray,
+) -> FloatArray:
+    """One of two results in each draw, each computed in its own draws only.
+
+    The `where` argument of ufuncs would serve too, but SciPy's have been seen to write beyond their
+    arrays with it (scipy.special.gammainccinv, SciPy 1.17).
+
+    Args:
+        condition: Which draws take the first result.
+        if_true: Gives the result from the numbers of its draws.
+        if_false: Likewise for the other draws.
+        numbers: Arrays of the shape of the condition.
+    """
+    if condition.all():
+        return np.asarray(if_true(*numbers))
+    if not condition.any():
+        return np.asarray(if_false(*numbers))
+    found = np.empty(condition.shape)
+    found[condition] = if_true(*(array[condition] for array in numbers))
+    found[~condition] = if_false(*(array[~condition] for array in numbers))
+    return found
+
+
 def numeric_function(*names: str, strict: bool = False) -> Callable[[Kernel], Kernel]:
     """Register a kernel that serves one draw and many: for both forms under the same names.
 

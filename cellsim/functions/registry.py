@@ -112,6 +112,10 @@ class Context(Protocol):
         """Whether serial number 0 is 1 January 1904."""
 
     @property
+    def character_set(self) -> str:
+        """The Python name of the character set of CHAR and CODE: that of the file's program."""
+
+    @property
     def now(self) -> dt.datetime:
         """What NOW() returns; its date is TODAY()."""
 
@@ -202,6 +206,9 @@ class FunctionRecord:
         """The parameter that takes the argument at a position counted from 0."""
         return self.parameters[min(position, len(self.parameters) - 1)]
 
+
+MAC_ROMAN = "mac_roman"
+"""The character set of spreadsheet programs on the Macintosh; elsewhere it is Windows-1252."""
 
 FloatArray: TypeAlias = npt.NDArray[np.float64]
 DrawsKernel: TypeAlias = Callable[..., FloatArray | None]

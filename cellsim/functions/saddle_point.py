@@ -13,7 +13,7 @@ from __future__ import annotations
 
 import numpy as np
 import numpy.typing as npt
-from scipy.special import gammaln, xlogy, zeta
+from scipy.special import betaln, gammaln, xlogy, zeta
 
 from cellsim.functions.encoded import FloatArray, Numbers
 
@@ -53,6 +53,21 @@ def stirling_error(n: Numbers) -> FloatArray:
     return np.where(x < _SERIES_FROM, direct, series)
 
 
+def log_beta(a: Numbers, b: Numbers) -> FloatArray:
+    """The logarithm of the beta function of positive numbers, exact where one is much larger."""
+    first, second = np.asarray(a, dtype=np.float64), np.asarray(b, dtype=np.float64)
+    less, more = np.minimum(first, second), np.maximum(first, second)
+    both = less + more
+    expanded = (
+        log_gamma(less)
+        + less * (1 - np.log(both))
+        - (more - 0.5) * np.log1p(less / more)
+        + stirling_error(more)
+        - stirling_error(both)
+    )
+    return np.where(more < _SERIES_FROM, betaln(less, more), expanded)
+
+
 def deviance(x: Numbers, mean: Numbers) -> FloatArray:
     """The deviance x log(x / mean) + mean - x, for x >= 0 and mean > 0, exact where they are close."""
     given, m = np.asarray(x, dtype=np.float64), np.asarray(mean, dtype=np.float64)
@@ -73,6 +88,14 @@ def poisson_mass(x: Numbers, mean: Numbers) -> FloatArray:
     found = np.where(given < _SERIES_FROM, direct, expanded)
     found = np.where(m == 0, np.where(given == 0, 1.0, 0.0), found)
     return np.where(np.isposinf(m) & np.isfinite(given), 0.0, found)
+
+
+def gamma_density(x: Numbers, shape: Numbers) -> FloatArray:
+    """The density of the standard gamma distribution for x >= 0; infinite or NaN at a pole."""
+    a = np.asarray(shape, dtype=np.float64)
+    low = a < 1
+    mass = poisson_mass(np.where(low, a, a - 1), x)
+    return np.where(low, a / np.asarray(x) * mass, mass)
 
 
 def binomial_mass(x: Numbers, n: Numbers, p: Numbers, q: Numbers) -> FloatArray:
@@ -97,6 +120,20 @@ def binomial_mass(x: Numbers, n: Numbers, p: Numbers, q: Numbers) -> FloatArray:
     found = np.where((np.asarray(p) == 0) | (np.asarray(q) == 0), 0.0, found)
     found = np.where(failures == 0, _power(trials, p, q), found)
     return np.where(successes == 0, _power(trials, q, p), found)
+
+
+def beta_density(share: Numbers, rest: Numbers, a: Numbers, b: Numbers) -> FloatArray:
+    """The density of the beta distribution at a share of 0 to 1, of which the rest is given too."""
+    first, second = np.asarray(a, dtype=np.float64), np.asarray(b, dtype=np.float64)
+    logarithm = np.where(np.asarray(share) < 0.5, np.log1p(-np.asarray(share)), np.log(rest))
+    direct = np.exp(
+        xlogy(first - 1, share)
+        + np.where(second == 1, 0.0, (second - 1) * logarithm)
+        - log_beta(first, second)
+    )
+    last = first + second - 1
+    expanded = last * binomial_mass(first - 1, last - 1, share, rest)
+    return np.where((first <= 2) | (second <= 2), direct, expanded)
 
 
 def _power(n: FloatArray, base: Numbers, rest: Numbers) -> FloatArray:

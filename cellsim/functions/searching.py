@@ -7,7 +7,7 @@ MATCH, for sorted data; the rest common practice, no source).
 
 from __future__ import annotations
 
-from cellsim.functions.comparison import compare, same_type
+from cellsim.functions.comparison import compare, same_type, type_rank
 from cellsim.functions.wildcards import has_wildcards, wildcard_regex
 from cellsim.values import Array, ErrorValue, Scalar
 
@@ -75,7 +75,7 @@ def find_at_least_descending(key: Scalar, items: list[Scalar]) -> int | None:
 def find_nearest(
     key: Scalar, items: list[Scalar], *, larger: bool, last: bool = False
 ) -> int | None:
-    """The place of an equal item, else of the next larger or smaller one, on unsorted items."""
+    """The place of an equal item, else of the next larger or smaller one of any type, unsorted."""
     equal = find_equal(key, items, wildcards=False, last=last)
     if equal is not None:
         return equal
@@ -83,16 +83,55 @@ def find_nearest(
     places = range(len(items) - 1, -1, -1) if last else range(len(items))
     for place in places:
         item = items[place]
-        if not _comparable(item, key):
+        if item is None or isinstance(item, ErrorValue):
             continue
-        order = compare(item, key)
+        order = _order(item, key)
         if (order > 0) != larger or order == 0:
             continue
         if best is None or (
-            (compare(item, items[best]) < 0) == larger and compare(item, items[best]) != 0
+            (_order(item, items[best]) < 0) == larger and _order(item, items[best]) != 0
         ):
             best = place
     return best
+
+
+def find_by_halving(key: Scalar, items: list[Scalar], *, mode: int, descending: bool) -> int | None:
+    """The place at which a binary search ends, on items that need not be sorted.
+
+    Args:
+        key: What is looked for.
+        items: The items.
+        mode: 0 for an equal item, -1 or 1 for the next smaller or larger one where none is equal.
+        descending: Whether the items count as sorted from the largest.
+    """
+    low, high = 0, len(items) - 1
+    while low <= high:
+        middle = (low + high) // 2
+        order = _order(items[middle], key)
+        if order == 0:
+            return middle
+        if (order < 0) != descending:
+            low = middle + 1
+        else:
+            high = middle - 1
+    if mode == 0:
+        return None
+    place = low if (mode > 0) != descending else low - 1
+    return place if 0 <= place < len(items) else None
+
+
+_AFTER_ALL = 3
+
+
+def _order(item: Scalar, key: Scalar) -> int:
+    """As `compare`, but blanks and errors come after everything else, as stored values show."""
+    ranks = [
+        _AFTER_ALL if value is None or isinstance(value, ErrorValue) else type_rank(value)
+        for value in (item, key)
+    ]
+    if ranks[0] != ranks[1]:
+        return -1 if ranks[0] < ranks[1] else 1
+    return 0 if ranks[0] == _AFTER_ALL else compare(item, key)
 
 
 def _comparable(item: Scalar, key: Scalar) -> bool:

@@ -38,6 +38,7 @@ from cellsim.functions.dispatch import Argument, call_function
 from cellsim.functions.operators import binary, binary_scalar, cancels, negate, percent
 from cellsim.functions.registry import (
     LIFTED,
+    MAC_ROMAN,
     WHOLE_ARRAY,
     ArgumentKind,
     FunctionRecord,
@@ -127,6 +128,12 @@ class Frame:
     def date_1904(self) -> bool:
         """Whether serial number 0 is 1 January 1904."""
         return self.calculation.date_1904
+
+    @property
+    def character_set(self) -> str:
+        """The Python name of the character set of CHAR and CODE."""
+        application = self.calculation.graph.workbook.application
+        return MAC_ROMAN if "Macintosh" in application else "cp1252"
 
     @property
     def now(self) -> dt.datetime:

@@ -77,6 +77,8 @@ def _pairs(x: Array, y: Array) -> list[tuple[float, float]]:
                 raise Fault(item)
         if type(a) is float and type(b) is float:
             pairs.append((a, b))
+    if not pairs:
+        raise Fault(ErrorValue.DIV0)
     return pairs
 
 

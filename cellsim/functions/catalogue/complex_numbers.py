@@ -88,14 +88,14 @@ def _power(value: complex, exponent: float) -> complex:
 
 
 def _squared_sine(z: complex) -> float:
-    """The square of the modulus of sin z (DLMF 4.21.39, 4.21.43)."""
+    """The square of the modulus of sin z (DLMF section 4.21, from memory)."""
     if abs(z.imag) > 1:
         return (math.cosh(2 * z.imag) - math.cos(2 * z.real)) / 2
     return math.sin(z.real) ** 2 + math.sinh(z.imag) ** 2  # where the difference would cancel
 
 
 def _squared_cosine(z: complex) -> float:
-    """The square of the modulus of cos z (DLMF 4.21.40)."""
+    """The square of the modulus of cos z (DLMF section 4.21, from memory)."""
     if abs(z.imag) > 1:
         return (math.cosh(2 * z.imag) + math.cos(2 * z.real)) / 2
     return math.cos(z.real) ** 2 + math.sinh(z.imag) ** 2

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import numpy as np
-from scipy.special import betainc, betaincinv, betaln, gamma, gammainc, gammaincinv, xlog1py, xlogy
+from scipy.special import betainc, gamma, gammainc, gammaincinv
 
-from cellsim.functions.encoded import FloatArray, Numbers, checked, numeric_function
+from cellsim.functions.encoded import FloatArray, Numbers, checked, chosen, numeric_function
+from cellsim.functions.probability_tails import beta_shares
 from cellsim.functions.registry import Logical, Number
-from cellsim.functions.saddle_point import binomial_mass, log_gamma, poisson_mass
+from cellsim.functions.saddle_point import beta_density, gamma_density, log_gamma
 from cellsim.values import ErrorValue
 
 _NUM = ErrorValue.NUM
@@ -15,12 +16,6 @@ _NUM = ErrorValue.NUM
 
 def _floats(*numbers: Numbers) -> list[FloatArray]:
     return [np.asarray(number, dtype=np.float64) for number in numbers]
-
-
-def _beta_density(share: FloatArray, rest: FloatArray, a: FloatArray, b: FloatArray) -> FloatArray:
-    direct = np.exp(xlogy(a - 1, share) + xlog1py(b - 1, -share) - betaln(a, b))
-    expanded = (a + b - 1) * binomial_mass(a - 1, a + b - 2, share, rest)
-    return np.where((a <= 2) | (b <= 2), direct, expanded)
 
 
 @numeric_function("BETA.DIST")
@@ -36,9 +31,13 @@ def beta_distribution(
     at, a, b, start, end = _floats(x, alpha, beta, low, high)
     width = end - start
     share = (at - start) / width
-    density = _beta_density(share, (end - at) / width, a, b) / width
+    found = chosen(
+        cumulative,
+        lambda: np.asarray(betainc(a, b, share), dtype=np.float64),
+        lambda: beta_density(share, (end - at) / width, a, b) / width,
+    )
     return checked(
-        np.where(np.asarray(cumulative) != 0, betainc(a, b, share), density),
+        found,
         ((a <= 0) | (b <= 0) | (at < start) | (at > end) | (start >= end), _NUM),
     )
 
@@ -62,7 +61,7 @@ def beta_quantile(
     """The quantile of the beta distribution between two limits."""
     p, a, b, start, end = _floats(probability, alpha, beta, low, high)
     return checked(
-        start + (end - start) * betaincinv(a, b, p),
+        start + (end - start) * beta_shares(a, b, p, 1 - p)[0],
         ((p <= 0) | (p > 1) | (a <= 0) | (b <= 0) | (start >= end), _NUM),
     )
 
@@ -72,7 +71,7 @@ def exponential(x: Number, rate: Number, cumulative: Logical) -> FloatArray:
     """The exponential distribution: cumulative, or its density."""
     at, of = _floats(x, rate)
     product = of * at
-    found = np.where(np.asarray(cumulative) != 0, -np.expm1(-product), of * np.exp(-product))
+    found = chosen(cumulative, lambda: -np.expm1(-product), lambda: of * np.exp(-product))
     return checked(found, ((at < 0) | (of <= 0), _NUM))
 
 
@@ -82,10 +81,13 @@ def weibull(x: Number, shape: Number, scale: Number, cumulative: Logical) -> Flo
     at, a, b = _floats(x, shape, scale)
     ratio = at / b
     hazard = np.power(ratio, a)
-    survival = np.exp(-hazard)
-    # Far out the power in the density may overflow where the survival has long become zero.
-    density = np.where(survival == 0, 0.0, a / b * np.power(ratio, a - 1) * survival)
-    found = np.where(np.asarray(cumulative) != 0, -np.expm1(-hazard), density)
+
+    def density() -> FloatArray:
+        survival = np.exp(-hazard)
+        # Far out the power may overflow where the survival has long become zero.
+        return np.where(survival == 0, 0.0, a / b * np.power(ratio, a - 1) * survival)
+
+    found = chosen(cumulative, lambda: -np.expm1(-hazard), density)
     return checked(found, ((at < 0) | (a <= 0) | (b <= 0), _NUM))
 
 
@@ -94,12 +96,8 @@ def gamma_distribution(x: Number, shape: Number, scale: Number, cumulative: Logi
     """The gamma distribution: cumulative, or its density."""
     at, a, b = _floats(x, shape, scale)
     ratio = at / b
-    low_shape = a / ratio * poisson_mass(a, ratio)
-    density = np.where(a < 1, low_shape, poisson_mass(a - 1, ratio)) / b
-    return checked(
-        np.where(np.asarray(cumulative) != 0, gammainc(a, ratio), density),
-        ((at < 0) | (a <= 0) | (b <= 0), _NUM),
-    )
+    found = chosen(cumulative, lambda: gammainc(a, ratio), lambda: gamma_density(ratio, a) / b)
+    return checked(found, ((at < 0) | (a <= 0) | (b <= 0), _NUM))
 
 
 @numeric_function("GAMMA.INV", "GAMMAINV")

@@ -95,13 +95,13 @@ def is_formula(context: Context, cell: Operand) -> bool | ErrorValue:
     return context.formula_text(area.sheet, area.first_row, area.first_column) is not None
 
 
-@spreadsheet_function("ISEVEN")
+@spreadsheet_function("ISEVEN", strict=True)
 def is_even(number: Number) -> bool:
     """Whether a number, cut to a whole one, is even."""
     return int(number) % 2 == 0
 
 
-@spreadsheet_function("ISODD")
+@spreadsheet_function("ISODD", strict=True)
 def is_odd(number: Number) -> bool:
     """Whether a number, cut to a whole one, is odd."""
     return int(number) % 2 == 1

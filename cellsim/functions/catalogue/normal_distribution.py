@@ -83,7 +83,11 @@ def standard_score(number: Number, centre: Number, deviation: Number) -> FloatAr
 @numeric_function("CONFIDENCE", "CONFIDENCE.NORM")
 def confidence_half_width(alpha: Number, deviation: Number, size: Whole) -> FloatArray:
     """Half the width of a normal confidence interval of a mean."""
-    level, spread, n = np.asarray(alpha), np.asarray(deviation), np.trunc(size)
+    level, spread, n = (
+        np.asarray(alpha),
+        np.asarray(deviation),
+        np.trunc(np.asarray(size, dtype=np.float64)),
+    )
     return checked(
         -ndtri(level / 2) * spread / np.sqrt(n),
         ((level <= 0) | (level >= 1) | (spread <= 0) | (n < 1), ErrorValue.NUM),

@@ -10,12 +10,12 @@ from cellsim.values import ErrorValue, Fault
 _NUM = ErrorValue.NUM
 _DIGITS = string.digits + string.ascii_uppercase
 _WIDTH = 10
-"""Digits of a two's complement number in any of the three bases (ECMA-376 Part 1, BIN2DEC and others)."""
+"""Digits of a two's complement number in any of the three bases (ECMA-376 Part 1, BIN2DEC and others, from memory)."""
 
 _LARGEST_EXACT = 2**53
 _LONGEST = 255
 _ADORNMENTS = {16: (("0x", "x"), "h"), 2: ((), "b")}
-"""Marks that DECIMAL passes over before and behind the digits (OpenFormula 1.2, DECIMAL)."""
+"""Marks that DECIMAL passes over before and behind the digits (OpenFormula 1.2, DECIMAL, from memory)."""
 
 
 def _digits(value: int, base: int) -> str:

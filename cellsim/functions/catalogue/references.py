@@ -5,6 +5,8 @@ from __future__ import annotations
 import re
 
 from cellsim.cells import LAST_COLUMN, LAST_ROW, RangeRef, column_letters, quote_title
+from cellsim.functions.coercion import to_number
+from cellsim.functions.dispatch import single_value
 from cellsim.functions.registry import (
     CellArea,
     Context,
@@ -28,6 +30,7 @@ _R1C1 = re.compile(
 
 @spreadsheet_function("OFFSET", volatile=True, gives_reference=True)
 def moved_reference(
+    context: Context,
     start: CellArea,
     rows: Whole,
     columns: Whole,
@@ -36,8 +39,8 @@ def moved_reference(
 ) -> Reference | ErrorValue:
     """A reference moved by rows and columns, with another size if given."""
     area = start.areas[0]
-    tall = area.rows if height is None else _size(height)
-    wide = area.columns if width is None else _size(width)
+    tall = area.rows if height is None else _size(single_value(height, context))
+    wide = area.columns if width is None else _size(single_value(width, context))
     if tall == 0 or wide == 0:
         return ErrorValue.REF
     first_row, first_column = area.first_row + rows, area.first_column + columns
@@ -51,14 +54,8 @@ def moved_reference(
     return Reference((RangeRef(area.sheet, first_row, first_column, last_row, last_column),))
 
 
-def _size(value: Value) -> int:
-    if isinstance(value, ErrorValue):
-        raise Fault(value)
-    if isinstance(value, Array):
-        value = value.items[0]
-    if isinstance(value, (bool, float)):
-        return int(value)
-    raise Fault(ErrorValue.VALUE)
+def _size(value: Scalar) -> int:
+    return int(to_number(value))  # that of a blank cell is 0, not one left out
 
 
 @spreadsheet_function("INDIRECT", volatile=True, gives_reference=True)

@@ -83,7 +83,7 @@ def floor_to_whole_over_draws(number: FloatArray) -> FloatArray:
     return np.floor(np.where(close, nearest, numbers))
 
 
-@spreadsheet_function("MROUND")
+@spreadsheet_function("MROUND", strict=True)
 def round_to_multiple(number: Number, multiple: Number) -> float | ErrorValue:
     """A number to the nearest multiple, ties away from zero."""
     if multiple == 0 or number == 0:

@@ -5,7 +5,14 @@ from __future__ import annotations
 import numpy as np
 from scipy.special import gammainc, gammaincinv
 
-from cellsim.functions.encoded import Condition, FloatArray, Numbers, checked, numeric_function
+from cellsim.functions.encoded import (
+    Condition,
+    FloatArray,
+    Numbers,
+    checked,
+    chosen,
+    numeric_function,
+)
 from cellsim.functions.probability_tails import (
     chi_squared_above,
     f_above,
@@ -17,7 +24,7 @@ from cellsim.functions.probability_tails import (
     t_quantile_above,
 )
 from cellsim.functions.registry import Logical, Number, Whole
-from cellsim.functions.saddle_point import binomial_mass, poisson_mass, stirling_error
+from cellsim.functions.saddle_point import binomial_mass, gamma_density, stirling_error
 from cellsim.values import ErrorValue
 
 _NUM, _DIV0 = ErrorValue.NUM, ErrorValue.DIV0
@@ -33,10 +40,6 @@ def _truncated(number: Numbers) -> FloatArray:
     return np.trunc(_float(number))
 
 
-def _is_set(flag: Numbers) -> Condition:
-    return np.not_equal(flag, 0)
-
-
 def _outside(*freedoms: FloatArray) -> Condition:
     found: Condition = False
     for freedom in freedoms:
@@ -49,9 +52,9 @@ def chi_squared(x: Number, freedom: Whole, cumulative: Logical) -> FloatArray:
     """The chi-squared distribution: cumulative, or its density."""
     at, n = _float(x), _truncated(freedom)
     shape, ratio = n / 2, at / 2
-    low_shape = shape / ratio * poisson_mass(shape, ratio)
-    density = np.where(shape < 1, low_shape, poisson_mass(shape - 1, ratio)) / 2
-    found = np.where(_is_set(cumulative), gammainc(shape, ratio), density)
+    found = chosen(
+        cumulative, lambda: gammainc(shape, ratio), lambda: gamma_density(ratio, shape) / 2
+    )
     return checked(found, ((at < 0) | _outside(n), _NUM))
 
 
@@ -83,7 +86,7 @@ def f_distribution(
 ) -> FloatArray:
     """The F distribution: cumulative, or its density."""
     at, m, n = _float(x), _truncated(numerator), _truncated(denominator)
-    found = np.where(_is_set(cumulative), f_below(at, m, n), _f_density(at, m, n))
+    found = chosen(cumulative, lambda: f_below(at, m, n), lambda: _f_density(at, m, n))
     return checked(found, ((at < 0) | _outside(m, n), _NUM))
 
 
@@ -120,10 +123,9 @@ def f_exceeded(probability: Number, numerator: Whole, denominator: Whole) -> Flo
 def student(x: Number, freedom: Whole, cumulative: Logical) -> FloatArray:
     """Student's distribution: cumulative, or its density."""
     at, n = _float(x), _truncated(freedom)
-    whole = _is_set(cumulative)
-    found = np.where(whole, t_above(-at, n), _t_density(at, n))
+    found = chosen(cumulative, lambda: t_above(-at, n), lambda: _t_density(at, n))
     # The density's constant divides by the degrees of freedom: stored values show #DIV/0! for none.
-    return checked(found, (~whole & (n == 0), _DIV0), (_outside(n), _NUM))
+    return checked(found, (np.equal(cumulative, 0) & (n == 0), _DIV0), (_outside(n), _NUM))
 
 
 def _t_density(x: FloatArray, n: FloatArray) -> FloatArray:

@@ -14,7 +14,6 @@ from cellsim.functions.order_statistics import (
     rank_of,
 )
 from cellsim.functions.registry import (
-    ArrayValues,
     Context,
     FloatArray,
     Logical,
@@ -470,22 +469,3 @@ def frequencies(numbers: NumberItems, limits: NumberItems) -> Array:
         by_limit.setdefault(limit, []).append(count)
     result = [float(by_limit[limit].pop(0)) for limit in limits]
     return Array(len(result) + 1, 1, [*result, float(counts[-1])])
-
-
-@spreadsheet_function("PROB")
-def probability_between(
-    values: ArrayValues, probabilities: ArrayValues, low: Number, high: Number | None = None
-) -> float | ErrorValue:
-    """The probability that a value lies between two limits."""
-    if len(values.items) != len(probabilities.items):
-        return ErrorValue.NA
-    pairs = [
-        (value, share)
-        for value, share in zip(values.items, probabilities.items, strict=True)
-        if type(value) is float and type(share) is float
-    ]
-    total = _sum([share for _, share in pairs])
-    if any(not 0 < share <= 1 for _, share in pairs) or abs(total - 1) > 1e-9:
-        return ErrorValue.NUM
-    top = low if high is None else high
-    return _sum([share for value, share in pairs if low <= value <= top])

@@ -8,6 +8,7 @@ import urllib.parse
 from cellsim.functions.coercion import to_text
 from cellsim.functions.dispatch import values_of
 from cellsim.functions.registry import (
+    MAC_ROMAN,
     AnyScalar,
     Context,
     Logical,
@@ -186,21 +187,26 @@ def is_same_text(left: Text, right: Text) -> bool:
 
 
 @spreadsheet_function("CHAR")
-def character(code: Whole) -> str | ErrorValue:
-    """The character of a code of the Windows-1252 set."""
+def character(context: Context, code: Whole) -> str | ErrorValue:
+    """The character of a code of the system's set: Windows-1252, or Mac Roman in files written there."""
     if not 1 <= code <= 255:
         return ErrorValue.VALUE
     try:
-        return bytes([code]).decode("cp1252")
+        return bytes([code]).decode(context.character_set)
     except UnicodeDecodeError:  # five codes stand for no character and are kept as they are
         return chr(code)
 
 
 @spreadsheet_function("CODE")
-def character_code(text: Text) -> float | ErrorValue:
-    """The code of the first character in the Windows-1252 set; 63 for one that is not in it."""
+def character_code(context: Context, text: Text) -> float | ErrorValue:
+    """The code of the first character in the set of CHAR; one that is not in it has that of `?` or `_`."""
     if not text:
         return ErrorValue.VALUE
+    if context.character_set == MAC_ROMAN:
+        try:
+            return float(text[0].encode(MAC_ROMAN)[0])
+        except UnicodeEncodeError:
+            return 95.0
     if 0x80 <= ord(text[0]) <= 0x9F:
         return float(ord(text[0]))
     return float(text[0].encode("cp1252", errors="replace")[0])
