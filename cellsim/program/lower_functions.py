@@ -44,7 +44,7 @@ from cellsim.program.lowered import (
     Numeric,
     Varied,
 )
-from cellsim.values import ErrorValue
+from cellsim.values import ErrorValue, Reference
 
 Rule = Callable[[Arguments], Lowered | None]
 
@@ -89,11 +89,27 @@ def _is_error(given: Arguments) -> Lowered:
 
 
 def _is_number(given: Arguments) -> Lowered | None:
-    value = given.values[0]
+    flag = _number_flag(given, given.values[0])
+    return None if flag is None else given.emitter.flag_as_lowered(flag)
+
+
+def _number_flag(given: Arguments, value: Lowered) -> Operand | None:
+    """In which draws a value is a number; never an error."""
+    emitter = given.emitter
+    if isinstance(value, Known) and not isinstance(value.value, Reference):
+        return constant(float(isinstance(value.value, float)))
+    if isinstance(value, Flagged):
+        return constant(0.0)
     if isinstance(value, Numeric):
-        failing = is_error_flag(given.lowering, value)
-        return given.emitter.flag_as_lowered(given.emitter.opposite(failing))
-    return Known(False) if isinstance(value, Flagged) else None
+        return emitter.opposite(is_error_flag(given.lowering, value))
+    if not isinstance(value, Choice):
+        return None
+    then, otherwise = _number_flag(given, value.then), _number_flag(given, value.otherwise)
+    if then is None or otherwise is None:
+        return None
+    chosen = emitter.builder.emit(Op.SELECT_FLAG, value.flag, then, otherwise)
+    failing = is_error_flag(given.lowering, value)
+    return emitter.builder.emit(Op.SELECT_FLAG, failing, constant(0.0), chosen)
 
 
 def _is_na(given: Arguments) -> Lowered | None:

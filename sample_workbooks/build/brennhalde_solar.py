@@ -164,7 +164,7 @@ def fill_guide(sheet: Worksheet) -> None:
     )
     lines = [
         "Inputs: every number that may be changed, on a pale ground, with a price scenario and a delay of the start.",
-        "Monthly: construction, then twenty-five years of operation, one formula a row filled across; loan, tax, cash, shareholders, balance sheet.",
+        "Monthly: construction, then twenty-five years of operation, one formula a row; loan, tax, cash, shareholders, balance sheet.",
         "Annual: the months summed by calendar year.",
         "Returns: internal rates of return, present values, debt service cover, payback, and checks that must be zero.",
         "Interest is charged on the average of a month's opening and closing loan. The closing loan depends on the cash sweep and on",
@@ -185,7 +185,7 @@ def fill_inputs(sheet: Worksheet) -> None:
     for row, label, value, code, unit, note in INPUTS:
         sheet[f"B{row}"], sheet[f"C{row}"] = label, value
         sheet[f"D{row}"], sheet[f"E{row}"] = unit or None, note or None
-        sheet[f"D{row}"].alignment = Alignment(indent=1)
+        sheet[f"D{row}"].alignment = Alignment(horizontal="left", indent=1)
         sheet[f"C{row}"].number_format = code
         if not isinstance(value, str) or value.startswith("=DATE"):
             sheet[f"C{row}"].fill = INPUT
@@ -337,7 +337,7 @@ def fill_returns(sheet: Worksheet) -> None:
         sheet[f"A{row}"], sheet[f"B{row}"], sheet[f"C{row}"] = label, formula, unit or None
         sheet[f"B{row}"].number_format = code
         sheet[f"B{row}"].alignment = Alignment(horizontal="right")
-        sheet[f"C{row}"].alignment = Alignment(indent=1)
+        sheet[f"C{row}"].alignment = Alignment(horizontal="left", indent=1)
         for column in "ABC":
             sheet[f"{column}{row}"].border = LINE
     for column, width in {"A": 52, "B": 28, "C": 16}.items():

@@ -53,6 +53,7 @@ MODELS: dict[str, dict[str, object]] = {
     "errors counted": {"A1": 1, "B1": "=1/A1", "B2": "=A1", "C1": '=COUNTIF(B1:B2,"#DIV/0!")+COUNTIF(B1:B2,TRUE)'},
     "a condition that varies": {"A1": 1, "A2": 2, "B1": "=A1", "B2": "=A2", "C1": '=SUMIF(B1:B2,">"&A1)+COUNTIF(B1:B2,A2)'},
     "ranges of different shapes": {"A1": 1, "A2": 2, "B1": "=A1", "B2": "=A2", "B3": 5, "C1": '=IFERROR(SUMIFS(B1:B2,B1:B3,">0"),A1)'},
+    "numbers told from what is none": {"A1": 1, "A2": 2, "B1": '=IF(A1>0,A1,"")', "B2": '=IF(A2>2,A2,IF(A1>1,TRUE,"x"))', "B3": "=IF(A1=0,1/A1,A2)", "B4": '=IF(1/A1>0,A2,"none")', "C1": '=IF(ISNUMBER(B1),IF(B1<1.5,1,0),0)+IF(ISNUMBER(B2),10,20)+IF(ISNUMBER(B3),100,200)+IF(ISNUMBER(B4),1000,2000)'},
     "closing balance": {"A1": 1, "A2": 2, "B1": "=A1+A2", "B2": "=B1-A1", "B3": "=B2-A2", "C1": "=IF(B3>0,500,0)+IF(B3=0,1,2)"},
     "rest of a rest": {"A1": 1, "A2": 2, "B1": "=A1+A2+0.1", "B2": "=B1-0.1-A1", "B3": "=B2-A2", "B4": "=B3*1E12", "C1": "=IFERROR(B4/B3,-7)+IF(B4>0,3,0)"},
     "rest in a denominator": {"A1": 1, "A2": 2, "B1": "=A1*0.3", "B2": "=A1*0.1", "B3": "=A1*0.2", "B4": "=B1-B2-B3", "B5": "=B4*A2", "B6": "=A2/B5", "C1": "=IFERROR(B6,100)"},
