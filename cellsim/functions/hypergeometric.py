@@ -2,13 +2,18 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 import numpy.typing as npt
 
 from cellsim.functions.encoded import FloatArray
 from cellsim.functions.saddle_point import binomial_mass
 
-_TERMS_AT_ONCE = 64
+_TERMS_AT_ONCE = (64, 1024)
+"""Terms in a stretch: of the first stretches, and of those after them."""
+
+_FIRST_STRETCHES = 20
 _NEGLIGIBLE = 1e-18
 
 
@@ -64,10 +69,13 @@ def _lower_tail(k: FloatArray, n: FloatArray, m: FloatArray, total: FloatArray) 
     """The sum of the masses up to k, in a row of draws; each draw's terms stop by themselves."""
     term = hypergeometric_mass(k, n, m, total)
     result = term.copy()
-    steps = np.arange(_TERMS_AT_ONCE, dtype=np.float64)[:, None]
     going: npt.NDArray[np.intp] = np.flatnonzero(term > 0)
     at = k.copy()
-    while going.size:
+    for stretch in itertools.count():
+        if not going.size:
+            break
+        length = _TERMS_AT_ONCE[stretch >= _FIRST_STRETCHES]
+        steps = np.arange(length, dtype=np.float64)[:, None]
         j, drawn, marked = at[going] - steps, n[going], m[going]
         ratios = j * (total[going] - marked - drawn + j) / ((marked - j + 1) * (drawn - j + 1))
         # Below the least number that can be drawn the products stay zero.
@@ -75,6 +83,6 @@ def _lower_tail(k: FloatArray, n: FloatArray, m: FloatArray, total: FloatArray) 
         # Summed one after the other: then a draw's sum does not depend on how many are beside it.
         result[going] += np.cumsum(terms, axis=0)[-1]
         last, ratio = terms[-1], ratios[-1]
-        term[going], at[going] = last, at[going] - _TERMS_AT_ONCE
+        term[going], at[going] = last, at[going] - length
         going = going[last > _NEGLIGIBLE * result[going] * (1 - ratio)]
     return result

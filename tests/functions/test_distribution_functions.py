@@ -11,8 +11,10 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_models import calculate, model_of, place
 
 import cellsim.functions.library  # noqa: F401  (fills the registry)
+from cellsim.engine.blocks import BlockEngine
 from cellsim.functions.dispatch import call_function
 from cellsim.functions.registry import (
     ArgumentKind,
@@ -22,6 +24,7 @@ from cellsim.functions.registry import (
     find_function,
     find_over_draws,
 )
+from cellsim.program.lower import compile_program
 from cellsim.values import Array, ErrorValue, Value, decode_error, encode_error
 
 CONTEXT = cast("Context", SimpleNamespace(date_1904=False, now=dt.datetime(2026, 6, 30)))  # noqa: DTZ001
@@ -220,3 +223,29 @@ def test_results_do_not_depend_on_the_draws_beside_them() -> None:
                 return bytes(np.asarray(run(*cut)).tobytes())
 
         assert part(0, 400) == part(0, 1) + part(1, 8) + part(8, 400)
+
+
+MODELS = {
+    "quantile": {"A1": 0.5, "C1": "=BETA.INV(A1/10+0.3,2,3,,5)+T.INV(A1/9+0.4,7)"},
+    "loss given default": {"A1": 0.5, "B1": "=NORM.S.INV(A1/9+0.4)", "C1": "=BETA.DIST(B1,2,5,TRUE)"},
+    "failure": {"A1": 0.5, "C1": "=1-WEIBULL.DIST(A1,1.5,2,TRUE)+GAMMA.DIST(A1+3,2,3,FALSE)"},
+    "defaults": {"A1": 0.5, "C1": "=CRITBINOM(200,0.03,A1/9+0.4)+BINOM.DIST(A1*9,20,0.3,A1>1)"},
+    "error": {"A1": 0.5, "C1": "=IFERROR(POISSON.DIST(A1,2,FALSE),-1)+CHISQ.INV.RT(A1,3)"},
+    "sample": {"A1": 0.5, "B1": 3, "B2": "=A1", "B3": 5, "B4": 9, "C1": "=T.TEST(B1:B2,B3:B4,2,3)"},
+    "sample with text": {"A1": 0.5, "B1": 3, "B2": "=A1", "B3": "x", "C1": "=Z.TEST(B1:B3,A1,2)"},
+    "given": {"A1": 0.5, "B1": 0.4, "B2": "=1-B1", "C1": "=PROB(B3:B4,B1:B2,A1)", "B3": 0, "B4": 1},
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", MODELS)
+def test_models_that_use_distributions_are_compiled(name: str) -> None:
+    """Against the reference, draw by draw, draws outside of a function's domain included."""
+    graph = model_of(MODELS[name])  # type: ignore[arg-type]
+    source, target = place("A1"), place("C1")
+    values = np.round(np.random.default_rng(3).normal(0.5, 1.5, 200), 2)
+    values[::7] = 0.0
+    compiled = compile_program(calculate(graph), [source], [target], iterate=False)
+    found = BlockEngine(compiled.program, calculate(graph), threads=1, block=64).run([values])[0]
+    for draw, number in enumerate(values.tolist()):
+        alone = calculate(graph, {source: number}).cell_value(*target)
+        assert same(float(found[draw]), alone), f"{number}: {found[draw]!r}, {alone!r}"
