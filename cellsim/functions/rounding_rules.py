@@ -19,6 +19,9 @@ _POWERS = [10.0**k for k in range(23)]
 _NEARLY = 4e-15
 """How far, relatively, a scaled number may lie below a tie that its 15 digits reach."""
 
+_NEARLY_WHOLE = 5e-16
+"""The same below a whole number that is to be cut off: stored values show 0.39999999999999947 cut to 0.3."""
+
 
 def power_of_ten(digits: int) -> float:
     """10 to a power of 0 or more, exact as far as doubles are."""
@@ -79,7 +82,7 @@ def _up(shifted: FloatArray) -> FloatArray:
 
 def _down(shifted: FloatArray) -> FloatArray:
     whole = np.floor(shifted)
-    return whole + (whole + 1 - shifted <= shifted * _NEARLY)
+    return whole + (whole + 1 - shifted <= shifted * _NEARLY_WHOLE)
 
 
 def _round_over_draws(
@@ -129,7 +132,7 @@ def round_down(number: float, digits: int) -> float:
     if not shifted < 2.0**52:
         return number
     whole = math.floor(shifted)
-    if whole + 1 - shifted <= shifted * _NEARLY:
+    if whole + 1 - shifted <= shifted * _NEARLY_WHOLE:
         whole += 1
     return math.copysign(unscaled(float(whole), digits), number)
 

@@ -143,14 +143,14 @@ def _switch(lowering: Lowering, node: Call, whole: bool) -> Lowered:
     arguments = node.arguments
     if len(arguments) < 3:
         return Known(ErrorValue.VALUE)
-    subject = lowering.operand(arguments[0], whole=whole)
+    subject = _blank_as_zero(lowering.operand(arguments[0], whole=whole))
     pairs = (len(arguments) - 1) // 2
     last: Lowered = Known(ErrorValue.NA)
     if len(arguments) % 2 == 0:
         last = _branch(lowering, arguments[-1], whole)
     emitter = lowering.emitter
     for pair in range(pairs - 1, -1, -1):
-        wanted = lowering.operand(arguments[1 + 2 * pair], whole=whole)
+        wanted = _blank_as_zero(lowering.operand(arguments[1 + 2 * pair], whole=whole))
         if isinstance(subject, Block) or isinstance(wanted, Block):
             raise UnlowerableError("SWITCH over arrays")
         same = emitter.flag(emitter.compare("=", subject, wanted))
@@ -158,6 +158,10 @@ def _switch(lowering: Lowering, node: Call, whole: bool) -> Lowered:
             continue
         last = emitter.select(same, _branch(lowering, arguments[2 + 2 * pair], whole), last)
     return last
+
+
+def _blank_as_zero(value: Lowered) -> Lowered:
+    return Known(0.0) if isinstance(value, Known) and value.value is None else value
 
 
 def is_error_flag(lowering: Lowering, value: Lowered) -> Operand:

@@ -58,7 +58,8 @@ def matching_branch(context: Context, subject: ScalarValue, *branches: Lazy) -> 
         case = single_value(branches[position](), context)
         if isinstance(case, ErrorValue):
             return case
-        if compare(subject, case) == 0:
+        # a blank is 0 here: it is neither FALSE nor an empty text
+        if compare(0.0 if subject is None else subject, 0.0 if case is None else case) == 0:
             return branches[position + 1]()
     return branches[-1]() if len(branches) % 2 else ErrorValue.NA
 
