@@ -7,6 +7,7 @@ import difflib
 from functools import cached_property
 from pathlib import Path
 
+from cellsim.audit.explain import Explanation, explain_cell
 from cellsim.audit.model_check import check_model
 from cellsim.cells import CellRef
 from cellsim.errors import FormulaSyntaxError, ModelError, Problem
@@ -88,6 +89,17 @@ class Model:
         if against is None:
             return self._check
         return check_model(self._calculated, read_workbook(Path(against)))
+
+    def explain(self, cell: str) -> Explanation:
+        """How a cell's value in the base case came about: what it reads, and its formula step by step.
+
+        Args:
+            cell: An address such as `Sheet!C6`, or a defined name.
+
+        Raises:
+            ModelError: There is no such cell.
+        """
+        return explain_cell(self.base, self.find_cell(cell), self.label)
 
     def parse(self, text: str, at: CellRef | None = None) -> Node:
         """The tree of a formula over the model, written as in a cell.

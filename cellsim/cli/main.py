@@ -8,6 +8,7 @@ from typing import Annotated
 import typer
 
 from cellsim.cli.check import check
+from cellsim.cli.explain import explain
 from cellsim.cli.run import run
 from cellsim.errors import CellsimError
 from cellsim.version import VERSION
@@ -29,6 +30,7 @@ app = typer.Typer(
 )
 app.command()(check)
 app.command()(run)
+app.command()(explain)
 
 
 def _print_version(wanted: bool) -> None:

@@ -414,15 +414,16 @@ def _call(node: Call, frame: Frame, whole: bool) -> Value:
     if function is None:
         return _call_by_name(node, frame, whole)
     arguments = [
-        _argument(argument, function, position, frame, whole)
+        call_argument(argument, function, position, frame, whole)
         for position, argument in enumerate(node.arguments)
     ]
     return call_function(function, arguments, frame, whole_arrays=whole)
 
 
-def _argument(
+def call_argument(
     node: Node, function: FunctionRecord, position: int, frame: Frame, whole: bool
 ) -> Argument:
+    """An argument as its function takes it: evaluated, or a function without arguments that does so."""
     if not function.parameters:
         return None
     kind = function.parameter(position).kind

@@ -155,3 +155,22 @@ def test_a_missing_model_and_wrong_usage_have_their_own_statuses(tmp_path: Path)
         ).returncode
         == 5
     )
+
+
+def test_explain_shows_labels_steps_and_the_nearest_name() -> None:
+    model = SAMPLES / "larkholm_ferries.xlsx"
+    done = cellsim("explain", model, "ShareValue", "--json")
+    assert done.returncode == 0, done.stderr
+    outcome = json.loads(done.stdout)
+    assert outcome["cell"] == "Valuation!D30"
+    assert outcome["formula"] == "=D27/D28"
+    assert [row["label"] for row in outcome["reads"]] == ["Equity value, not below zero", "Shares"]
+    assert outcome["steps"][-1]["value"] == outcome["value"]
+    assert abs(outcome["stored"] - outcome["value"]) < 1e-13  # stored with 15 digits
+    text = cellsim("explain", model, "Valuation!D15")
+    assert "Terminal value" in text.stdout
+    parts = text.stdout.partition("step by step")[2].split("\n")
+    assert not any(line.strip().startswith("NA()") for line in parts)  # a branch not taken
+    wrong = cellsim("explain", model, "ShareValu")
+    assert wrong.returncode == 3
+    assert "did you mean 'ShareValue'?" in wrong.stderr
