@@ -19,21 +19,27 @@ def wildcard_regex(pattern: str, *, anchored: bool = True) -> re.Pattern[str]:
         pattern: The pattern.
         anchored: Whether the whole text must match, or a part of it may.
     """
-    parts: list[str] = []
+    runs: list[str] = [""]  # what stands between the asterisks
     spot = 0
     while spot < len(pattern):
         character = pattern[spot]
         if character == "~" and spot + 1 < len(pattern) and pattern[spot + 1] in "?*~":
-            parts.append(re.escape(pattern[spot + 1]))
+            runs[-1] += re.escape(pattern[spot + 1])
             spot += 2
             continue
-        if character == "?":
-            parts.append(".")
-        elif character == "*":
-            parts.append(".*" if anchored or spot + 1 < len(pattern) else "")
+        if character == "*":
+            runs.append("")
         else:
-            parts.append(re.escape(character))
+            runs[-1] += "." if character == "?" else re.escape(character)
         spot += 1
-    if anchored:
-        parts.append(r"\Z")
-    return re.compile("".join(parts), re.IGNORECASE | re.DOTALL)
+    # Each run is taken where it first occurs and never given back: later runs find no less behind it, and
+    # many asterisks take no longer than one.
+    first, *others = runs
+    if not others:
+        expression = first + (r"\Z" if anchored else "")
+    elif anchored:
+        between = "".join(f"(?>.*?{run})" for run in others[:-1])
+        expression = f"{first}{between}.*{others[-1]}\\Z"
+    else:
+        expression = first + "".join(f"(?>.*?{run})" for run in others if run)
+    return re.compile(expression, re.IGNORECASE | re.DOTALL)

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import dataclasses
 import datetime as dt
+import threading
 from collections.abc import Callable, Mapping, Sequence
 from typing import Any, Protocol
 
@@ -51,6 +52,7 @@ UNKNOWN_LINK = "a link without kept values"
 """What stands in place of a function's name where a linked sheet's values are not in the file."""
 REFERENCE_OPERATORS = frozenset({":", " ", ","})
 _MOST_NESTED_CALLS = 1_000
+_nesting = threading.local()  # how many LAMBDAs are being called in each other
 
 
 class UnsupportedFunctionError(Exception):
@@ -538,7 +540,14 @@ def _lambda(node: Call, frame: Frame, whole: bool) -> Value:
         scope.update(zip(parameters, arguments, strict=False))
         for name in parameters[len(arguments) :]:
             scope[f"omitted {name}"] = True
-        return evaluate(body, frame.inner(scope), whole=whole)
+        depth = getattr(_nesting, "calls", 0)
+        if depth >= _MOST_NESTED_CALLS:
+            raise Fault(ErrorValue.NUM)
+        _nesting.calls = depth + 1
+        try:
+            return evaluate(body, frame.inner(scope), whole=whole)
+        finally:
+            _nesting.calls = depth
 
     return LambdaValue(least, len(parameters), call)
 

@@ -126,11 +126,16 @@ def cumulated_principal(
     return checked(_sum(loan.principal, first, last, refused), (refused, ErrorValue.NUM))
 
 
+_MOST_PERIODS = 100_000
+"""Spans are summed period by period; longer ones end in #NUM! and not in hours."""
+
+
 def _is_refused(*terms: float) -> BoolArray:
     """Whether a span of a loan's periods makes no sense."""
     rate, periods, present, first, last, kind = np.broadcast_arrays(*terms)
     no_loan = (rate <= 0) | (periods <= 0) | (present <= 0) | ((kind != 0) & (kind != 1))
     refused: BoolArray = no_loan | (first < 1) | (last < first) | (last > periods)
+    refused |= last > _MOST_PERIODS
     return refused
 
 

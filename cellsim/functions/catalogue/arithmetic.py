@@ -228,9 +228,14 @@ def double_factorial(number: Whole) -> float | ErrorValue:
 
 
 def _choose(n: int, k: int) -> float:
-    if n < 0 or k < 0 or k > n:
+    k = min(k, n - k)
+    if n < 0 or k < 0 or k > _MOST_CHOSEN:
         raise Fault(ErrorValue.NUM)
     return float(math.comb(n, k))
+
+
+_MOST_CHOSEN = 600
+"""To choose more of as many or more is beyond the largest double, and would take for ever to find out."""
 
 
 @spreadsheet_function("COMBIN")
@@ -248,7 +253,7 @@ def combinations_with_repetition(number: Whole, chosen: Whole) -> float:
 @spreadsheet_function("PERMUT")
 def permutations(number: Whole, chosen: Whole) -> float | ErrorValue:
     """The ways to choose some of a number of things in order."""
-    if number < 0 or chosen < 0 or chosen > number:
+    if number < 0 or chosen < 0 or chosen > number or chosen > _MOST_CHOSEN:
         return ErrorValue.NUM
     return float(math.perm(number, chosen))
 
@@ -256,7 +261,11 @@ def permutations(number: Whole, chosen: Whole) -> float | ErrorValue:
 @spreadsheet_function("PERMUTATIONA")
 def permutations_with_repetition(number: Whole, chosen: Whole) -> float | ErrorValue:
     """The ways to choose in order with repetition."""
-    return float(number**chosen) if number >= 0 and chosen >= 0 else ErrorValue.NUM
+    if number < 0 or chosen < 0:
+        return ErrorValue.NUM
+    if number > 1 and chosen * math.log2(number) > 1100:
+        return ErrorValue.NUM  # beyond the largest double
+    return float(number**chosen) if number != 1 else 1.0
 
 
 @spreadsheet_function("MULTINOMIAL", least=1)
@@ -265,7 +274,10 @@ def multinomial(*numbers: NumberItems) -> float:
     whole = _whole_items(numbers)
     result = 1
     for place, number in enumerate(whole):
-        result *= math.comb(sum(whole[: place + 1]), number)
+        together = sum(whole[: place + 1])
+        if min(number, together - number) > _MOST_CHOSEN:
+            raise Fault(ErrorValue.NUM)
+        result *= math.comb(together, number)
     return float(result)
 
 

@@ -61,6 +61,10 @@ def double_declining(
     return checked(part, (refused | (np.asarray(factor) <= 0), _NUM))
 
 
+_MOST_PERIODS = 100_000
+"""Periods are taken one after the other; longer lives end in #NUM! and not in hours."""
+
+
 @numeric_function("VDB")
 def variable_declining(
     cost: Number,
@@ -76,7 +80,7 @@ def variable_declining(
         cost, salvage, life, start, end, factor, no_switch
     )
     refused = (amount < 0) | (rest < 0) | (years <= 0) | (begin < 0) | (speed < 0)
-    refused = refused | (finish < begin) | (finish > years)
+    refused = refused | (finish < begin) | (finish > years) | (finish > _MOST_PERIODS)
     total, book = np.zeros(amount.shape), amount
     last = np.max(finish, where=~refused & ~np.isnan(finish), initial=0.0)
     for period in np.arange(1.0, np.ceil(last) + 1):

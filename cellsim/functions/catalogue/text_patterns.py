@@ -1,24 +1,27 @@
 """Text by regular expressions.
 
-Spreadsheet programs use the PCRE2 dialect; Python's own is used here, which agrees with it but for rare
-constructs.
+Spreadsheet programs use the PCRE2 dialect; that of the `regex` library is used here, which agrees with
+it but for rare constructs. A pattern that would search for ever is given up after a second (#VALUE!).
 """
 
 from __future__ import annotations
 
 import re
+from collections.abc import Callable
 from functools import lru_cache
+from typing import TypeVar
+
+import regex
 
 from cellsim.functions.registry import Text, Whole, spreadsheet_function
 from cellsim.functions.text_limits import bounded
 from cellsim.values import Array, ErrorValue, Fault, Value
 
-_NAMED_GROUP = re.compile(r"\(\?<(?=[A-Za-z_])")
 _IN_REPLACEMENT = re.compile(r"\$(?:\$|(?P<number>\d+)|\{(?P<name>\w+)\})")
 
 
 @lru_cache(maxsize=512)
-def _regex(pattern: str, ignore_case: int) -> re.Pattern[str]:
+def _regex(pattern: str, ignore_case: int) -> regex.Pattern[str]:
     """A compiled pattern.
 
     Raises:
@@ -27,15 +30,32 @@ def _regex(pattern: str, ignore_case: int) -> re.Pattern[str]:
     if ignore_case not in (0, 1):
         raise Fault(ErrorValue.VALUE)
     try:
-        return re.compile(_NAMED_GROUP.sub("(?P<", pattern), re.IGNORECASE if ignore_case else 0)
-    except re.error:
+        return regex.compile(pattern, regex.IGNORECASE if ignore_case else 0)
+    except regex.error:
+        raise Fault(ErrorValue.VALUE) from None
+
+
+_MOST_SECONDS = 1.0
+Result = TypeVar("Result")
+
+
+def _in_time(search: Callable[[], Result]) -> Result:
+    """What a search finds.
+
+    Raises:
+        Fault: It takes too long (#VALUE!).
+    """
+    try:
+        return search()
+    except TimeoutError:
         raise Fault(ErrorValue.VALUE) from None
 
 
 @spreadsheet_function("REGEXTEST")
 def matches_pattern(text: Text, pattern: Text, ignore_case: Whole = 0) -> bool:
     """Whether a regular expression matches a part of a text."""
-    return _regex(pattern, ignore_case).search(text) is not None
+    compiled = _regex(pattern, ignore_case)
+    return _in_time(lambda: compiled.search(text, timeout=_MOST_SECONDS)) is not None
 
 
 @spreadsheet_function("REGEXEXTRACT")
@@ -43,7 +63,8 @@ def extract_by_pattern(text: Text, pattern: Text, mode: Whole = 0, ignore_case: 
     """What a regular expression matches: 0 the first match, 1 all, 2 the groups of the first."""
     if mode not in (0, 1, 2):
         return ErrorValue.VALUE
-    matches = list(_regex(pattern, ignore_case).finditer(text))
+    compiled = _regex(pattern, ignore_case)
+    matches = _in_time(lambda: list(compiled.finditer(text, timeout=_MOST_SECONDS)))
     if not matches:
         return ErrorValue.NA
     if mode == 1:
@@ -63,14 +84,14 @@ def replace_by_pattern(
     text: Text, pattern: Text, new: Text, which: Whole = 0, ignore_case: Whole = 0
 ) -> str:
     """Text with what a regular expression matches replaced, everywhere or at one place."""
-    regex = _regex(pattern, ignore_case)
+    compiled = _regex(pattern, ignore_case)
 
-    def filled(match: re.Match[str]) -> str:
+    def filled(match: regex.Match[str]) -> str:
         return _IN_REPLACEMENT.sub(lambda mark: _part(match, mark), new)
 
     if which == 0:
-        return bounded(regex.sub(filled, text))
-    matches = list(regex.finditer(text))
+        return bounded(_in_time(lambda: compiled.sub(filled, text, timeout=_MOST_SECONDS)))
+    matches = _in_time(lambda: list(compiled.finditer(text, timeout=_MOST_SECONDS)))
     place = which - 1 if which > 0 else which
     if not -len(matches) <= place < len(matches):
         return text
@@ -78,7 +99,7 @@ def replace_by_pattern(
     return bounded(text[: match.start()] + filled(match) + text[match.end() :])
 
 
-def _part(match: re.Match[str], mark: re.Match[str]) -> str:
+def _part(match: regex.Match[str], mark: re.Match[str]) -> str:
     """What a `$1`, `${name}` or `$$` in a replacement stands for."""
     key = mark["number"] or mark["name"]
     if key is None:
