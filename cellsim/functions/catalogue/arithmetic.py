@@ -23,6 +23,9 @@ from cellsim.functions.registry import (
 from cellsim.values import Array, ErrorValue, Fault, encode_error
 
 _LARGEST_EXACT = 2.0**53
+_LARGEST_POWER_OF_TWO = 1023
+_LARGEST_FACTORIAL = 170
+"""Above these, two to a power and a factorial are larger than any float."""
 
 
 @spreadsheet_function("SUM", least=1)
@@ -214,7 +217,7 @@ def least_common_multiple(*numbers: NumberItems) -> float | ErrorValue:
 @spreadsheet_function("FACT")
 def factorial(number: Whole) -> float | ErrorValue:
     """The factorial of a number cut to a whole one."""
-    return float(math.factorial(number)) if 0 <= number <= 170 else ErrorValue.NUM
+    return float(math.factorial(number)) if 0 <= number <= _LARGEST_FACTORIAL else ErrorValue.NUM
 
 
 @spreadsheet_function("FACTDOUBLE")
@@ -228,7 +231,19 @@ def double_factorial(number: Whole) -> float | ErrorValue:
 def _choose(n: int, k: int) -> float:
     if n < 0 or k < 0 or k > n:
         raise Fault(ErrorValue.NUM)
-    return float(math.comb(n, k))
+    return float(_binomial(n, k))
+
+
+def _binomial(n: int, k: int) -> int:
+    """The binomial coefficient of whole numbers with 0 <= k <= n.
+
+    Raises:
+        Fault: It is larger than any float (#NUM!): it is at least 2^k for k up to n / 2. Asked first,
+            as it might take hours to find its digits.
+    """
+    if min(k, n - k) > _LARGEST_POWER_OF_TWO:
+        raise Fault(ErrorValue.NUM)
+    return math.comb(n, k)
 
 
 @spreadsheet_function("COMBIN")
@@ -248,13 +263,17 @@ def permutations(number: Whole, chosen: Whole) -> float | ErrorValue:
     """The ways to choose some of a number of things in order."""
     if number < 0 or chosen < 0 or chosen > number:
         return ErrorValue.NUM
+    if chosen > _LARGEST_FACTORIAL:  # a product of whole numbers from at least 1 up
+        return ErrorValue.NUM
     return float(math.perm(number, chosen))
 
 
 @spreadsheet_function("PERMUTATIONA")
 def permutations_with_repetition(number: Whole, chosen: Whole) -> float | ErrorValue:
     """The ways to choose in order with repetition."""
-    return float(number**chosen) if number >= 0 and chosen >= 0 else ErrorValue.NUM
+    if number < 0 or chosen < 0 or (number > 1 and chosen > _LARGEST_POWER_OF_TWO):
+        return ErrorValue.NUM
+    return float(number**chosen)
 
 
 @spreadsheet_function("MULTINOMIAL", least=1)
@@ -263,7 +282,7 @@ def multinomial(*numbers: NumberItems) -> float:
     whole = _whole_items(numbers)
     result = 1
     for place, number in enumerate(whole):
-        result *= math.comb(sum(whole[: place + 1]), number)
+        result *= _binomial(sum(whole[: place + 1]), number)
     return float(result)
 
 

@@ -16,7 +16,7 @@ from cellsim.functions.registry import (
     ScalarValue,
     spreadsheet_function,
 )
-from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Value
+from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value
 
 
 @spreadsheet_function("IF")
@@ -28,22 +28,23 @@ def choose_branch(condition: Logical, then: Lazy, otherwise: Lazy | None = None)
 
 
 @spreadsheet_function("IFS", group=2, least=2)
-def first_true_branch(*branches: Lazy) -> Value:
+def first_true_branch(context: Context, *branches: Lazy) -> Value:
     """The value after the first condition that is true; #N/A if none is."""
     if len(branches) % 2:
         return ErrorValue.NA
     for position in range(0, len(branches), 2):
-        if to_logical(_plain(branches[position]())):
+        if to_logical(_plain(branches[position](), context)):
             return branches[position + 1]()
     return ErrorValue.NA
 
 
-def _plain(value: Value) -> float | str | bool | ErrorValue | None:
+def _plain(value: Value, context: Context) -> Scalar:
+    """A condition or case as a single value: of a reference its cell, of an array the first item."""
     if isinstance(value, Array):
         return value.items[0]
-    if isinstance(value, (Reference, LambdaValue)):
+    if isinstance(value, LambdaValue):
         raise Fault(ErrorValue.VALUE)
-    return value
+    return context.intersect(value) if isinstance(value, Reference) else value
 
 
 @spreadsheet_function("IFERROR")
@@ -59,10 +60,10 @@ def replace_not_available(value: AnyScalar, instead: Lazy) -> Value:
 
 
 @spreadsheet_function("SWITCH", group=2, least=3)
-def matching_branch(subject: ScalarValue, *branches: Lazy) -> Value:
+def matching_branch(context: Context, subject: ScalarValue, *branches: Lazy) -> Value:
     """The value after the first case that equals the first argument, else the default, else #N/A."""
     for position in range(0, len(branches) - 1, 2):
-        case = _plain(branches[position]())
+        case = _plain(branches[position](), context)
         if isinstance(case, ErrorValue):
             return case
         if compare(subject, case) == 0:
