@@ -6,7 +6,7 @@ import datetime as dt
 from collections.abc import Mapping
 from pathlib import Path
 
-from cellsim.cells import CellRef, parse_address, range_of
+from cellsim.cells import CellRef, RangeRef, parse_address, range_of
 from cellsim.graph.build import Graph, build_graph
 from cellsim.program.calculation import Calculation
 from cellsim.values import Scalar
@@ -26,20 +26,34 @@ def place(address: str) -> CellRef:
 def model_of(
     cells: Mapping[str, Scalar], *, iterate: bool = False, array: tuple[str, ...] = ()
 ) -> Graph:
-    """The graph of a one-sheet model; text that starts with `=` is a formula."""
+    """The graph of a one-sheet model; text that starts with `=` is a formula.
+
+    Args:
+        cells: Values and formulas by address.
+        iterate: Whether circular chains are solved.
+        array: Array formulas, by address, or by area (`C1:D3`) for those that fill several cells.
+    """
+    areas = {area.partition(":")[0]: _area(area) for area in array}
     constants: dict[Position, Scalar] = {}
     formulas: dict[Position, FormulaCell] = {}
     for address, value in cells.items():
         cell = place(address)
         position = (cell.row, cell.column)
         if isinstance(value, str) and value.startswith("="):
-            area = range_of(cell) if address in array else None
-            formulas[position] = FormulaCell(value[1:], position, None, area, False, None, False)
+            formulas[position] = FormulaCell(
+                value[1:], position, None, areas.get(address), False, None, False
+            )
         else:
             constants[position] = value if isinstance(value, bool) else _as_float(value)
     sheet = Sheet(TITLE, "visible", constants, formulas, {}, last_row=200, last_column=60)
     settings = Iteration(enabled=iterate, passes=100, change=0.001)
     return build_graph(Workbook(path=Path("model.xlsx"), sheets=(sheet,), iteration=settings))
+
+
+def _area(text: str) -> RangeRef:
+    first, _, last = text.partition(":")
+    corner = place(last or first)
+    return range_of(place(first))._replace(last_row=corner.row, last_column=corner.column)
 
 
 def _as_float(value: object) -> Scalar:

@@ -112,7 +112,8 @@ def dated_present_value(
     amounts, years = _dated(context, flows, dates)
     if rate <= 0:
         return _NUM
-    return _only(_worth_at_dates(rate, _one_draw(amounts), _one_draw(years)))
+    with np.errstate(all="ignore"):
+        return _only(_worth_at_dates(rate, _one_draw(amounts), _one_draw(years)))
 
 
 @spreadsheet_function("XIRR", strict=True)
