@@ -12,9 +12,9 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from small_models import calculate
+from small_models import calculate, model_of, place
 
-from cellsim.cells import CellRef
+from cellsim.cells import CellRef, column_letters
 from cellsim.graph.build import Graph
 from cellsim.program.calculation import Calculation
 from cellsim.program.ir import Expression, Kind, Operand, Program, Register, eliminate_dead_code
@@ -53,7 +53,12 @@ class Compiled:
     slow: tuple[Expression, ...]
 
 
-def compile_cells(base: Calculation, inputs: Sequence[CellRef], wanted: Sequence[CellRef]) -> Compiled:
+ALONE = 6
+"""So many draws are also evaluated in blocks of one, in which no other draw can make the block fail."""
+
+def compile_cells(
+    base: Calculation, inputs: Sequence[CellRef], wanted: Sequence[CellRef]
+) -> Compiled:
     """Compile a model so that the wanted cells can be read with their types."""
     lowering = _ModelLowering(base, inputs, list(wanted), iterate=False)
     outputs: list[tuple[Operand, Kind]] = []
@@ -142,7 +147,9 @@ def _logical(column: npt.NDArray[np.generic], draw: int) -> Scalar:
     return bool(value) if isinstance(value, float) else value
 
 
-def over_draws(compiled: Compiled, base: Calculation, draws: Draws, block: int) -> list[list[Scalar]]:
+def over_draws(
+    compiled: Compiled, base: Calculation, draws: Draws, block: int
+) -> list[list[Scalar]]:
     """Every wanted cell in every draw, evaluated in blocks of so many draws."""
     evaluator = BlockEvaluator(compiled.program, base, block)
     columns = evaluator._outputs
@@ -190,3 +197,91 @@ def agree(found: object, wanted: Scalar, *, scale: float = 0.0) -> bool:
             found, wanted, rel_tol=RELATIVE, abs_tol=RELATIVE * scale
         )
     return found == wanted
+
+
+INPUTS = [place(address) for address in ("A1", "A2", "A3", "A4")]
+ORDINARY = [1.0, 0.0, -1.0, 0.5, 0.75, 1.5, 2.5, -0.3, 3.25, 0.2]
+WHOLE = [2.0, 0.0, 1.0, 3.0, -1.0, 4.0, -4.0, 7.0, 1.0, 2.0]
+WILD = [
+    3.0,
+    0.0,
+    -2.5,
+    1e300,
+    -1e300,
+    1e-300,
+    45123.25,
+    1e15,
+    -1e-9,
+    0.1,
+    12345678.9,
+    1e9,
+    -1.0,
+    0.5,
+]
+SMALL = [0.25, 0.0, 0.5, 0.125, -0.25, 1.0, 0.0, 0.375]
+
+
+def draws_for(count: int) -> list[np.ndarray]:
+    rng = np.random.default_rng(11)
+    listed = max(len(ORDINARY), len(WHOLE), len(WILD), len(SMALL))
+    columns = [np.resize(values, listed) for values in (ORDINARY, WHOLE, WILD, SMALL)]
+    more = max(0, count - listed)
+    drawn = [
+        np.round(rng.normal(0.5, 1.5, more), 2),
+        rng.integers(-3, 9, more).astype(float),
+        rng.choice(WILD, more) * rng.choice([1.0, 0.5], more),
+        rng.uniform(0, 1, more),
+    ]
+    return [np.concatenate(pair) for pair in zip(columns, drawn, strict=True)]
+
+
+def mismatches(
+    cells: dict[str, object], formulas: Sequence[tuple[str, str, tuple[int, int] | None]],
+    draws: Draws, *, exactly: bool = False
+) -> list[str]:
+    """What differs between the two ways of evaluating formulas beside some cells.
+
+    Args:
+        cells: The cells that the formulas read.
+        formulas: A label, the formula, and rows and columns of an array formula.
+        draws: The values of A1 to A4.
+        exactly: Whether numbers must agree bit for bit.
+    """
+    cells = dict(cells)
+    wanted: list[tuple[str, str, str]] = []
+    arrays: list[str] = []
+    column = 26
+    for row, (label, formula, area) in enumerate(formulas, start=1):
+        rows, columns = area or (1, 1)
+        if area is None:
+            cells[f"Z{row}"] = formula
+            wanted.append((f"Z{row}", label, formula))
+            continue
+        corner = f"{column_letters(column + 1)}1"
+        cells[corner] = formula
+        arrays.append(f"{corner}:{column_letters(column + columns)}{rows}")
+        for down in range(rows):
+            for right in range(columns):
+                address = f"{column_letters(column + 1 + right)}{down + 1}"
+                wanted.append((address, f"{label}, item {down + 1},{right + 1}", formula))
+        column += columns
+    graph = model_of(cells, array=tuple(arrays))  # type: ignore[arg-type]
+    base = calculate(graph)
+    places = [place(address) for address, _, _ in wanted]
+    singles = one_at_a_time(graph, INPUTS, places, draws)
+    compiled = compile_cells(base, INPUTS, places)
+    problems: list[str] = []
+    same = identical if exactly else agree
+    first = [values[:ALONE] for values in draws]
+    for block, given in ((len(draws[0]), draws), (1, first)):
+        found = over_draws(compiled, base, given, block)
+        for (_, label, formula), over, single in zip(wanted, found, singles, strict=True):
+            for draw, (value, alone) in enumerate(zip(over, single, strict=False)):
+                if not same(value, alone):
+                    inputs = ", ".join(repr(float(v[draw])) for v in draws)
+                    problems.append(
+                        f"{formula} [{label}] blocks of {block}, draw {draw} ({inputs}): "
+                        f"{value!r} over draws, {alone!r} alone"
+                    )
+                    break
+    return problems

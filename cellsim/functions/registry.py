@@ -264,7 +264,7 @@ def over_draws(*names: str) -> Callable[[AnyDrawsKernel], AnyDrawsKernel]:
     """Register the form of a function that works on all draws of a block at once.
 
     It takes the same arguments as the kernel does. `Number` and `Whole` arguments are float arrays
-    of shape (draws,) or plain floats (`Whole` ones not yet truncated), `Logical` ones the same
+    of shape (draws,) or plain floats (`Whole` ones already cut to whole numbers), `Logical` ones the same
     holding 0 and 1, each `NumberItems` argument a float array of shape (items, draws), each
     `Values`, `ArrayValues` or `Matrix` argument a `Stack`. It returns float64 of shape (draws,);
     a spreadsheet error is `encode_error(...)` in its draw. Where an argument is a NaN (an error

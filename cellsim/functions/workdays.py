@@ -55,6 +55,8 @@ def move_workdays(start: int, days: int, weekend: Weekend, holidays: frozenset[i
     """
     if all(weekend):
         raise Fault(ErrorValue.VALUE)
+    if abs(days) > LAST_SERIAL:  # each takes at least a day
+        raise Fault(ErrorValue.NUM)
     step = 1 if days > 0 else -1
     day, left = start, abs(days)
     working = 7 - sum(weekend)

@@ -20,6 +20,7 @@ from cellsim.formula.tree import (
     StructuredReference,
 )
 from cellsim.formula.walk import walk
+from cellsim.functions.registry import find_function
 from cellsim.graph.resolve import Resolver, bounds_of
 from cellsim.values import ErrorValue, Scalar
 from cellsim.workbook.model import DataTable, FormulaCell, Position, Sheet, Workbook
@@ -277,6 +278,10 @@ class Graph:
             and self._any(formula.tree, formula.cell, lambda facts: facts.dynamic, 0)
         )
 
+    def reads_unnamed(self, tree: Node, cell: CellRef) -> bool:
+        """Whether an expression reads cells that its references do not name, names followed."""
+        return self._any(tree, cell, lambda facts: facts.dynamic, 0)
+
     def functions_of(self, formula: Formula) -> frozenset[str]:
         """Names of all functions that a formula calls, names followed."""
         if formula.tree is None:
@@ -325,6 +330,8 @@ def _shape_facts(tree: Node) -> ShapeFacts:
             names.append(node)
         elif isinstance(node, Call):
             functions.add(node.name)
+            if find_function(node.name) is None:  # may be a defined name that holds a LAMBDA
+                names.append(NameReference(None, node.name))
             dynamic = dynamic or node.name in DYNAMIC_FUNCTIONS
         elif (isinstance(node, Binary) and node.operator == ":") or (
             isinstance(node, Postfix) and node.operator == "#"

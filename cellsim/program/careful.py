@@ -17,8 +17,15 @@ import numpy.typing as npt
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
-from cellsim.program.fast import UFUNCS, expression_runner, kernel_runner, object_converter
-from cellsim.program.ir import Constant, Instruction, Op, Operand
+from cellsim.program.fast import (
+    UFUNCS,
+    choice_step,
+    expression_runner,
+    kernel_runner,
+    looks_into_errors,
+    object_converter,
+)
+from cellsim.program.ir import Constant, Instruction, Op, Operand, StackOperand
 from cellsim.values import ErrorValue, encode_error
 
 Step = Callable[[], Any]
@@ -46,11 +53,19 @@ def careful_step(
     bound = _Bound(instruction, operands, out, poison)
     op = instruction.op
     if op is Op.CALL:
-        run = kernel_runner(instruction.detail, buffers, base)
-        return lambda: _call(bound, run)
+        run = kernel_runner(instruction.detail, buffers, base, careful=True)
+        passed = [
+            buffers.operand(operand)
+            for argument in instruction.detail.arguments
+            if not looks_into_errors(argument)
+            for operand in (argument.items if isinstance(argument, StackOperand) else (argument,))
+        ]
+        return lambda: _call(out, run, passed)
     if op is Op.INTERPRET:
         evaluate = expression_runner(instruction, operands, base, out)
         return lambda: _interpret(bound, evaluate)
+    if op is Op.CHOICE:
+        return choice_step(instruction.detail, buffers, out)
     if op is Op.TO_NUMBER:
         return object_converter(operands[0], out, date_1904=base.date_1904)
     step = _STEPS[op]
@@ -198,13 +213,13 @@ def _if_na(bound: _Bound) -> None:
     bound.out[:] = np.where(is_na(value), instead, value)
 
 
-def _call(bound: _Bound, run: Callable[[], AnyArray]) -> None:
-    bound.out[:] = run()
-    out = bound.out
+def _call(out: AnyArray, run: Callable[[], AnyArray], passed: Sequence[AnyArray]) -> None:
+    """Call a kernel; the operands whose errors become the result's are given apart."""
+    out[:] = run()
     infinite = np.isinf(out)
     if infinite.any():
         out[infinite] = _NUM
-    _put_errors(out, bound.operands)
+    _put_errors(out, passed)
 
 
 def _interpret(_bound: _Bound, evaluate: Step) -> None:

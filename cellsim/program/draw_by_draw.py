@@ -20,8 +20,9 @@ from cellsim.program.interpret import (
     UnsupportedFunctionError,
     dereference,
     evaluate,
+    evaluate_formula,
 )
-from cellsim.program.ir import Expression, Kind
+from cellsim.program.ir import Expression, Kind, MixedChoice
 from cellsim.values import (
     Array,
     ErrorValue,
@@ -40,9 +41,28 @@ _MOST_READS_COMPARED = 8
 class DrawGrid:
     """The cells of a workbook in one draw: those that vary from registers, others from the base case."""
 
-    def __init__(self, base: Calculation) -> None:
+    def __init__(
+        self, base: Calculation, inputs: Sequence[CellRef], unread: frozenset[CellRef]
+    ) -> None:
         self._base = base
-        self.varying: dict[CellRef, Scalar] = {}
+        self._inputs = inputs
+        self._unread = unread
+        self._varying: dict[CellRef, Scalar] = {}
+        self._calculation: Calculation | None = None
+
+    def begin(self, varying: dict[CellRef, Scalar]) -> None:
+        """Begin a draw with the values of the cells that are in registers."""
+        self._varying = varying
+        self._calculation = None
+
+    def _calculated(self, cell: CellRef) -> Scalar:
+        """A cell for which there is no register: calculated from the inputs of this draw."""
+        if self._calculation is None:
+            inputs = {cell: self._varying[cell] for cell in self._inputs}
+            self._calculation = Calculation(
+                self._base.graph, as_of=self._base.as_of, overrides=inputs
+            )
+        return self._calculation.cell_value(*cell)
 
     @property
     def graph(self) -> Graph:
@@ -62,21 +82,23 @@ class DrawGrid:
     def cell_value(self, sheet: str, row: int, column: int) -> Scalar:
         """The value of one cell in this draw."""
         cell = CellRef(sheet, row, column)
-        if cell in self.varying:
-            return self.varying[cell]
+        if cell in self._varying:
+            return self._varying[cell]
+        if cell in self._unread:
+            return self._calculated(cell)
         return self._base.cell_value(sheet, row, column)
 
     def area_values(self, area: RangeRef) -> Array:
         """The values of a rectangle in this draw."""
         array = self._base.area_values(area)
-        hits = [cell for cell in self.varying if area.holds(*cell)]
+        hits = [cell for cell in (*self._varying, *self._unread) if area.holds(*cell)]
         if not hits:
             return array
         items = list(array.items)
         for cell in hits:
             row, column = cell.row - area.first_row, cell.column - area.first_column
             if row < array.rows and column < array.columns:
-                items[row * array.columns + column] = self.varying[cell]
+                items[row * array.columns + column] = self.cell_value(*cell)
         return Array(array.rows, array.columns, items)
 
     def spill_of(self, cell: CellRef) -> Value:
@@ -94,7 +116,7 @@ class ExpressionEvaluator:
     def __init__(self, expression: Expression, base: Calculation) -> None:
         self._expression = expression
         self._base = base
-        self._grid = DrawGrid(base)
+        self._grid = DrawGrid(base, expression.inputs, expression.unread)
         self._cells = [cell for cell, _, _ in expression.reads]
         self._kinds = [kind for _, _, kind in expression.reads]
 
@@ -117,20 +139,21 @@ class ExpressionEvaluator:
 
     def _value(self, columns: Sequence[npt.NDArray[np.generic] | float], draw: int) -> Scalar:
         varying = {
-            cell: _scalar(column[draw] if isinstance(column, np.ndarray) else column, kind)
+            cell: scalar_of(column[draw] if isinstance(column, np.ndarray) else column, kind)
             for cell, column, kind in zip(self._cells, columns, self._kinds, strict=True)
         }
         expression = self._expression
         if expression.recalculate:
             calculation = Calculation(self._base.graph, as_of=self._base.as_of, overrides=varying)
             return _evaluate(expression, Frame(calculation, expression.cell))
-        self._grid.varying = varying
+        self._grid.begin(varying)
         return _evaluate(expression, Frame(self._grid, expression.cell))
 
 
 def _evaluate(expression: Expression, frame: Frame) -> Scalar:
     try:
-        value = evaluate(expression.tree, frame, whole=expression.whole)
+        entry = evaluate_formula if expression.shown else evaluate
+        value = entry(expression.tree, frame, whole=expression.whole)
         value = dereference(value, frame, whole=expression.whole)
     except Fault as fault:
         return fault.error
@@ -138,11 +161,39 @@ def _evaluate(expression: Expression, frame: Frame) -> Scalar:
         return ErrorValue.NAME
     if isinstance(value, Array):
         row, column = expression.item
-        return item_at(value, row, column)
-    return value
+        value = item_at(value, row, column)
+    return 0.0 if value is None and expression.shown else value
 
 
-def _scalar(content: object, kind: Kind) -> Scalar:
+def choice_runner(
+    choice: MixedChoice,
+    flags: npt.NDArray[np.generic],
+    sides: Sequence[npt.NDArray[np.generic] | None],
+    out: npt.NDArray[np.object_],
+) -> Callable[[], None]:
+    """A function that puts one of two values of different types into each draw's object.
+
+    Args:
+        choice: The choice.
+        flags: 1 for the first, 0 for the second, or an error; shape (draws,) or ().
+        sides: The values of both, None for one that is the same in all draws.
+        out: Where the values go.
+    """
+    parts = tuple(zip((choice.then, choice.otherwise), sides, strict=True))
+
+    def step() -> None:
+        for draw, flag in enumerate(np.broadcast_to(flags, out.shape)):
+            if flag != flag:
+                out[draw] = decode_error(float(flag))
+                continue
+            part, values = parts[0] if flag else parts[1]
+            out[draw] = part.fixed if values is None else scalar_of(values[draw], part.kind)
+
+    return step
+
+
+def scalar_of(content: object, kind: Kind) -> Scalar:
+    """What a register holds in one draw, as a value; errors are decoded."""
     if kind is Kind.OBJECT:
         return content  # type: ignore[return-value]
     number = float(content)  # type: ignore[arg-type]

@@ -4,7 +4,17 @@ from __future__ import annotations
 
 from cellsim.functions.coercion import to_logical, to_number
 from cellsim.functions.operators import binary_scalar
-from cellsim.program.ir import Builder, Constant, Op, Operand, Register, constant
+from cellsim.program.ir import (
+    Builder,
+    Constant,
+    Kind,
+    MixedChoice,
+    Op,
+    Operand,
+    Part,
+    Register,
+    constant,
+)
 from cellsim.program.lowered import (
     Block,
     Choice,
@@ -141,7 +151,7 @@ class Emitter:
                 return left
         if isinstance(right, Constant):
             if is_error(right):
-                return self._error_after(left, right)
+                return self.error_after(left, right)
             if operator == "^":
                 return self._power(left, right)
             if (operator, right.value) in {("+", 0.0), ("-", 0.0), ("*", 1.0), ("/", 1.0)}:
@@ -150,7 +160,7 @@ class Emitter:
             return self.builder.emit(Op.NEGATE, right)
         return self.builder.emit(ARITHMETIC_OPS[operator], left, right)
 
-    def _error_after(self, left: Operand, error: Constant) -> Operand:
+    def error_after(self, left: Operand, error: Constant) -> Operand:
         """An error, unless the left operand is one already, which then wins."""
         return self.builder.emit(Op.SELECT, self.builder.emit(Op.IS_ERROR, left), left, error)
 
@@ -205,7 +215,7 @@ class Emitter:
                 if value is left:
                     return value
                 return self.as_lowered(
-                    self._error_after(self.number(other), self._known_number(value))
+                    self.error_after(self.number(other), self._known_number(value))
                 )
         types = _type_of(left, right), _type_of(right, left)
         if types[0] == types[1]:
@@ -274,6 +284,36 @@ class Emitter:
             self.select(flag, a, b) for a, b in zip(then.items, otherwise.items, strict=True)
         )
         return Block(then.rows, then.columns, items)
+
+    def as_object(self, value: Choice | Known) -> Register:
+        """The object register that holds a value of whatever type it is in each draw.
+
+        Raises:
+            UnlowerableError: An array or a reference is among what it may be.
+        """
+        part = self._part(value)
+        if part.operand is not None:
+            return part.operand
+        return self.builder.emit_choice(MixedChoice(constant(1.0), part, part))
+
+    def _part(self, value: Lowered) -> Part:
+        if isinstance(value, Choice):
+            flag = self.number(self.flag_as_lowered(value.flag))
+            choice = MixedChoice(flag, self._part(value.then), self._part(value.otherwise))
+            return Part(self.builder.emit_choice(choice), Kind.OBJECT)
+        if isinstance(value, Varied) and isinstance(value.operand, Register):
+            return Part(value.operand, Kind.OBJECT)
+        if isinstance(value, Flagged):
+            operand, kind = self.number(value), Kind.FLAG
+        elif isinstance(value, Numeric):
+            operand, kind = self.settled(value), Kind.NUMBER
+        elif isinstance(value, Known) and not isinstance(value.value, (Reference, LambdaValue)):
+            return Part(None, Kind.OBJECT, value.value)
+        else:
+            raise UnlowerableError("an array stands where a single value is wanted")
+        if isinstance(operand, Constant):
+            raise UnlowerableError("a constant that varies")
+        return Part(operand, kind)
 
     def logical(self, op: Op, left: Operand, right: Operand) -> Operand:
         """AND or OR of two flags; constants are folded as far as errors allow."""

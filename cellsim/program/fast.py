@@ -6,7 +6,7 @@ that can give an error without such a fault raise the given exception themselves
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable, Sequence
 from functools import partial
 from typing import Any
 
@@ -16,13 +16,29 @@ import numpy.typing as npt
 from cellsim.cells import CellRef
 from cellsim.functions.coercion import to_number
 from cellsim.functions.dispatch import call_function
-from cellsim.functions.registry import Stack, find_function, find_over_draws
+from cellsim.functions.registry import (
+    ArgumentKind,
+    FunctionRecord,
+    Stack,
+    find_function,
+    find_over_draws,
+)
 from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import compare_over_draws, settle_cancellation
-from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers
+from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers, choice_runner
 from cellsim.program.interpret import Frame
-from cellsim.program.ir import Constant, Instruction, KernelCall, Kind, Op, StackOperand
+from cellsim.program.emit import is_error
+from cellsim.program.ir import (
+    Constant,
+    Instruction,
+    KernelCall,
+    Kind,
+    MixedChoice,
+    Op,
+    Operand,
+    StackOperand,
+)
 from cellsim.values import Array, Fault, Scalar, Value, decode_error, encode_error
 
 Step = Callable[[], Any]
@@ -64,6 +80,8 @@ def fast_step(
     operands = [buffers.operand(operand) for operand in instruction.operands]
     if op is Op.INTERPRET:
         return _interpret(instruction, operands, base, out, go_carefully)
+    if op is Op.CHOICE:
+        return choice_step(instruction.detail, buffers, out)
     if op is Op.TO_NUMBER:
         convert = object_converter(operands[0], out, date_1904=base.date_1904)
         return partial(_check_after, convert, out, go_carefully)
@@ -166,7 +184,9 @@ def _call(
     out: AnyArray,
     go_carefully: type[Exception],
 ) -> Step:
-    run = kernel_runner(call, buffers, base)
+    if any(looks_into_errors(a) and any(map(is_error, a.items)) for a in call.arguments):  # type: ignore[union-attr]
+        return partial(_refuse, go_carefully)
+    run = kernel_runner(call, buffers, base, careful=False)
 
     def step() -> None:
         result = run()
@@ -177,29 +197,71 @@ def _call(
     return step
 
 
-def kernel_runner(call: KernelCall, buffers: Buffers, base: Calculation) -> Callable[[], AnyArray]:
-    """A function that calls a kernel over draws on the buffers of its arguments."""
+def _refuse(go_carefully: type[Exception]) -> None:
+    raise go_carefully
+
+
+def kernel_runner(
+    call: KernelCall, buffers: Buffers, base: Calculation, *, careful: bool
+) -> Callable[[], AnyArray]:
+    """A function that calls a kernel over draws on the buffers of its arguments.
+
+    Args:
+        call: What to call.
+        buffers: Where its arguments live.
+        base: The base case.
+        careful: Whether arguments may hold errors. Draws in which a rectangle does are then left to
+            the kernel for single draws.
+    """
     kernel = find_over_draws(call.function)
     if kernel is None:
         raise LookupError(call.function)
-    gather = [_argument(argument, buffers) for argument in call.arguments]
+    function = find_function(call.function)
+    if function is None:
+        raise LookupError(call.function)
+    gather = [
+        _argument(argument, buffers, whole=function.parameter(place).kind is ArgumentKind.WHOLE)
+        for place, argument in enumerate(call.arguments)
+    ]
+    looked_into = any(looks_into_errors(argument) for argument in call.arguments)
 
     def run() -> AnyArray:
         arguments = [argument() for argument in gather]
         with np.errstate(all="ignore"):
             result = kernel(*arguments)
-        return (
-            _one_by_one(call.function, arguments, buffers.block, base) if result is None else result
-        )
+        if result is None:
+            return _one_by_one(function, arguments, range(buffers.block), base)
+        if careful and looked_into:
+            failing = np.flatnonzero(_holding_errors(arguments, buffers.block))
+            if failing.size:
+                result = np.array(np.broadcast_to(result, buffers.block))
+                result[failing] = _one_by_one(function, arguments, failing, base)
+        return result
 
     return run
 
 
-def _one_by_one(name: str, arguments: list[Any], draws: int, base: Calculation) -> AnyArray:
+def looks_into_errors(argument: Operand | StackOperand) -> bool:
+    """Whether it is for the function to say what an error inside an argument means.
+
+    Where only numbers count, an error is the result; a lookup passes over errors beside the key.
+    """
+    return isinstance(argument, StackOperand) and not argument.plain
+
+
+def _holding_errors(arguments: Sequence[Any], draws: int) -> AnyArray:
+    """The draws in which a rectangle holds an error."""
+    failing = np.zeros(draws, dtype=bool)
+    for argument in arguments:
+        if isinstance(argument, Stack):
+            failing |= np.isnan(argument.data).any(axis=0)
+    return failing
+
+
+def _one_by_one(
+    function: FunctionRecord, arguments: list[Any], draws: Iterable[int], base: Calculation
+) -> AnyArray:
     """A function's kernel for single draws, where that over draws does not serve."""
-    function = find_function(name)
-    if function is None:
-        raise LookupError(name)
     frame = Frame(base, CellRef(base.graph.resolver.titles()[0], 1, 1))
     with base.lock:
         values = [
@@ -209,7 +271,7 @@ def _one_by_one(name: str, arguments: list[Any], draws: int, base: Calculation) 
                 frame,
                 whole_arrays=True,
             )
-            for draw in range(draws)
+            for draw in draws
         ]
     return as_numbers([value.items[0] if isinstance(value, Array) else value for value in values])  # type: ignore[misc]
 
@@ -232,12 +294,12 @@ def number_of(number: float) -> Scalar:
     return value if value == value else decode_error(value)
 
 
-def _argument(argument: Any, buffers: Buffers) -> Callable[[], Any]:
+def _argument(argument: Any, buffers: Buffers, *, whole: bool) -> Callable[[], Any]:
     if not isinstance(argument, StackOperand):
         array = buffers.operand(argument)
         if array.ndim:
-            return lambda: array
-        number = float(array)
+            return (lambda: np.trunc(array)) if whole else lambda: array
+        number = float(np.trunc(array)) if whole else float(array)
         return lambda: number
     rows = [buffers.operand(item) for item in argument.items]
     data = np.empty((len(rows), buffers.block))
@@ -288,6 +350,15 @@ def expression_runner(
                 out[place] = value
 
     return run
+
+
+def choice_step(choice: MixedChoice, buffers: Buffers, out: AnyArray) -> Step:
+    """The step of a choice between values of different types; errors need no care among objects."""
+    sides = [
+        None if part.operand is None else buffers.operand(part.operand)
+        for part in (choice.then, choice.otherwise)
+    ]
+    return choice_runner(choice, buffers.operand(choice.flag), sides, out)
 
 
 def object_converter(values: AnyArray, out: AnyArray, *, date_1904: bool) -> Step:

@@ -20,6 +20,7 @@ from typing import Any, TypeAlias
 
 from cellsim.cells import CellRef
 from cellsim.formula.tree import Node
+from cellsim.values import Scalar
 
 
 class Kind(enum.Enum):
@@ -65,6 +66,7 @@ class Op(enum.Enum):
     IS_NA = "is n/a"  # [number] flag
     CALL = "call"  # a kernel over draws; arguments in `detail`
     INTERPRET = "interpret"  # an expression taken draw by draw; `detail` is an Expression
+    CHOICE = "choice"  # one of two values of any types, as objects; `detail` is a MixedChoice
     TO_NUMBER = "to number"  # [object] coerced as an operator does
     LOOP = "loop"  # a circular chain; `detail` is a Loop
 
@@ -141,6 +143,36 @@ class KernelCall:
     arguments: tuple[Operand | StackOperand, ...]
 
 
+@dataclass(frozen=True, slots=True)
+class Part:
+    """One side of a choice between values of different types.
+
+    Attributes:
+        operand: Where its value is, None if it is the same in all draws.
+        kind: What the operand holds; flags are numbers 0 and 1, so that they can be errors.
+        fixed: The value that is the same in all draws.
+    """
+
+    operand: Register | None
+    kind: Kind
+    fixed: Scalar = None
+
+
+@dataclass(frozen=True, slots=True)
+class MixedChoice:
+    """A choice between values of different types.
+
+    Attributes:
+        flag: Which, as a number: 1 for the first, 0 for the second, or an error.
+        then: The first.
+        otherwise: The second.
+    """
+
+    flag: Operand
+    then: Part
+    otherwise: Part
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Expression:
     """An expression that is evaluated draw by draw by the reference evaluator.
@@ -150,10 +182,14 @@ class Expression:
         cell: The formula's cell.
         whole: Whether ranges are taken item by item.
         reads: The cells that it may read which vary, each with its operand and kind.
+        unread: Cells that vary and for which there is no register: calculated from the inputs in
+            each draw in which the expression turns out to read them.
+        inputs: The model's inputs, given where there are unread cells; they are then among the reads.
         reason: Why there is no faster form.
         item: Which item of an array result is wanted: row and column from 0.
         recalculate: Whether the whole model is calculated again and not just the expression; the
             cells that it reads are then the inputs.
+        shown: Whether it is a whole formula, whose result is what a cell shows.
     """
 
     tree: Node
@@ -163,6 +199,9 @@ class Expression:
     reason: str
     item: tuple[int, int]
     recalculate: bool = False
+    shown: bool = False
+    unread: frozenset[CellRef] = frozenset()
+    inputs: tuple[CellRef, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -264,10 +303,21 @@ class Builder:
             operands += argument.items if isinstance(argument, StackOperand) else [argument]
         return self._shared(call, Kind.NUMBER, Op.CALL, tuple(operands), call)
 
+    def emit_choice(self, choice: MixedChoice) -> Register:
+        """Emit a choice between values of different types."""
+        parts = (choice.then, choice.otherwise)
+        operands = (choice.flag, *(p.operand for p in parts if p.operand is not None))
+        # 1 and TRUE are equal and yet not the same value
+        key = (Op.CHOICE, choice.flag, *((p.operand, p.kind, repr(p.fixed)) for p in parts))
+        return self._shared(key, Kind.OBJECT, Op.CHOICE, operands, choice)
+
     def emit_expression(self, expression: Expression, kind: Kind) -> Register:
         """Emit an expression that is evaluated draw by draw."""
         operands = tuple(operand for _, operand, _ in expression.reads)
-        key = (id(expression.tree), expression.cell, expression.whole, expression.item, kind)
+        key = (
+            id(expression.tree), expression.cell, expression.whole, expression.item,
+            expression.shown, kind,
+        )  # fmt: skip
         return self._shared(key, kind, Op.INTERPRET, operands, expression)
 
     def _shared(

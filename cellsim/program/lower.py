@@ -33,7 +33,7 @@ from cellsim.program.ir import (
     eliminate_dead_code,
 )
 from cellsim.program.lower_nodes import NodeLowering
-from cellsim.program.lowered import Block, Known, Lowered, Numeric, UnlowerableError
+from cellsim.program.lowered import Block, Choice, Known, Lowered, Numeric, UnlowerableError
 from cellsim.values import Reference
 
 LARGEST_BLOCK = 2_000_000
@@ -121,8 +121,8 @@ class _ModelLowering:
         }
         self._inputs = frozenset(inputs)
         self._affected = affected_cells(self.graph, inputs, _target_cells(self.graph, outputs))
-        self._varying = self._with_members()
-        self._columns = _column_index(self._varying)
+        self.varying = self._with_members()
+        self._columns = _column_index(self.varying)
         self._varying_areas: dict[RangeRef, tuple[CellRef, ...]] = {}
         self._blocks: dict[RangeRef, Block] = {}
         self._active: dict[CellRef, None] = {}
@@ -178,13 +178,13 @@ class _ModelLowering:
 
     def varies(self, cell: CellRef) -> bool:
         """Whether a cell changes from draw to draw."""
-        return cell in self._varying
+        return cell in self.varying
 
     def varying_in(self, area: RangeRef) -> Sequence[CellRef]:
         """The cells of an area that change from draw to draw."""
         if area.first_row == area.last_row and area.first_column == area.last_column:
             cell = area.first
-            return (cell,) if cell in self._varying else ()
+            return (cell,) if cell in self.varying else ()
         found = self._varying_areas.get(area)
         if found is None:
             found = tuple(_cells_in(self._columns, area))
@@ -196,10 +196,10 @@ class _ModelLowering:
         dependents = affected_cells(self.graph, [reader], self._affected)
         return [
             cell
-            for cell in self._varying
-            if cell != reader
+            for cell in self.varying
+            if (self.graph.source_of(cell) or cell) != reader
             and (self.graph.source_of(cell) or cell) not in dependents
-            and cell not in self._active
+            and (self.graph.source_of(cell) or cell) not in self._active
         ]
 
     def area_block(self, area: RangeRef) -> Block:
@@ -244,7 +244,7 @@ class _ModelLowering:
         found = self._lowered.get(cell)
         if found is not None:
             return found
-        if cell not in self._varying:
+        if cell not in self.varying:
             return Known(self.base.cell_value(*cell))
         source = self.graph.source_of(cell)
         formula = self.graph.formula(source) if source is not None else None
@@ -316,6 +316,7 @@ class _ModelLowering:
                         whole=whole,
                         reason=problem.reason,
                         item=(place.row - formula.cell.row, place.column - formula.cell.column),
+                        shown=True,
                     ),
                 )
                 for place in places
@@ -443,7 +444,7 @@ def _target_cells(graph: Graph, outputs: Sequence[Target]) -> list[CellRef]:
         for area in graph.areas_of(target.tree, target.cell):
             clipped = graph.resolver.clip(area)
             cells += graph.formula_cells_in(clipped)
-        if graph.facts(target.tree).dynamic:
+        if graph.reads_unnamed(target.tree, target.cell):
             cells += [formula.cell for formula in graph.all_formulas()]
     return cells
 
@@ -455,6 +456,8 @@ def _shown(value: Lowered) -> Lowered:
             return Known(0.0)
         if isinstance(value.value, Reference):
             raise UnlowerableError("a reference to several areas")
+    if isinstance(value, Choice):
+        return Choice(value.flag, _shown(value.then), _shown(value.otherwise))
     return value
 
 

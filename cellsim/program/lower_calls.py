@@ -18,7 +18,16 @@ from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import Frame
 from cellsim.program.ir import Constant, KernelCall, Operand, StackOperand, constant
-from cellsim.program.lowered import Block, Flagged, Known, Lowered, Numeric, UnlowerableError
+from cellsim.program.lowered import (
+    Block,
+    Choice,
+    Flagged,
+    Known,
+    Lowered,
+    Numeric,
+    UnlowerableError,
+    Varied,
+)
 from cellsim.values import Array, ErrorValue, Reference, Scalar, Value, encode_error
 
 
@@ -173,11 +182,39 @@ def call_over_draws(given: Arguments) -> Lowered:
         if error is not None and all(isinstance(argument, Constant) for argument in arguments):
             return Known(error)
         arguments.append(operand)
+    if all(isinstance(a, StackOperand) and not a.items for a in arguments if _is_plain(a)) and any(
+        map(_is_plain, arguments)
+    ):
+        raise UnlowerableError("ranges without a number")
     register = given.emitter.builder.emit_call(KernelCall(name, tuple(arguments)))
     if given.function.result == "logical":
         from_number = given.emitter.flag(Numeric(register))
         return given.emitter.flag_as_lowered(from_number)
     return Numeric(register)
+
+
+def _is_plain(argument: Operand | StackOperand) -> bool:
+    return isinstance(argument, StackOperand) and argument.plain
+
+
+def strictly_single(emitter: Emitter, value: Lowered) -> Lowered:
+    """An argument of a strict function: #VALUE! where it is a logical.
+
+    Raises:
+        UnlowerableError: What it is differs from draw to draw in more ways than a choice.
+    """
+    if isinstance(value, Known):
+        return Known(ErrorValue.VALUE) if isinstance(value.value, bool) else value
+    if isinstance(value, Flagged):
+        return emitter.as_lowered(
+            emitter.error_after(emitter.number(value), constant(encode_error(ErrorValue.VALUE)))
+        )
+    if isinstance(value, Choice):
+        then = strictly_single(emitter, value.then)
+        return emitter.select(value.flag, then, strictly_single(emitter, value.otherwise))
+    if isinstance(value, Varied):
+        raise UnlowerableError("a value that may be a logical in some draws")
+    return value
 
 
 def _constant_error(operand: Operand | StackOperand) -> ErrorValue | None:

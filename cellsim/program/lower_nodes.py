@@ -33,12 +33,13 @@ from cellsim.functions.registry import (
 from cellsim.graph.build import Graph
 from cellsim.program.emit import Emitter
 from cellsim.program.interpret import REFERENCE_OPERATORS, Frame, combine_references, evaluate
-from cellsim.program.ir import Expression, Kind
+from cellsim.program.ir import Expression, Kind, Operand
 from cellsim.program.lower_branches import LAZY_RULES, block_item
-from cellsim.program.lower_calls import Arguments, call_over_draws
+from cellsim.program.lower_calls import Arguments, call_over_draws, strictly_single
 from cellsim.program.lower_functions import RULES
 from cellsim.program.lowered import (
     Block,
+    Choice,
     Flagged,
     Known,
     Lowered,
@@ -65,6 +66,10 @@ class Cells(Protocol):
 
     def frame(self, cell: CellRef) -> Frame:
         """A cell's surroundings in the base case."""
+
+    @property
+    def varying(self) -> frozenset[CellRef]:
+        """All cells that change from draw to draw, inputs included."""
 
     def varies(self, cell: CellRef) -> bool:
         """Whether a cell changes from draw to draw."""
@@ -199,7 +204,13 @@ class NodeLowering:
         return known_from_value(evaluate(node, self.cells.frame(self.cell), whole=whole))
 
     def interpreted(
-        self, node: Node, *, whole: bool, reason: str, item: tuple[int, int] = (0, 0)
+        self,
+        node: Node,
+        *,
+        whole: bool,
+        reason: str,
+        item: tuple[int, int] = (0, 0),
+        shown: bool = False,
     ) -> Lowered:
         """An expression left to the reference evaluator, draw by draw.
 
@@ -208,37 +219,61 @@ class NodeLowering:
             whole: Whether ranges are taken item by item.
             reason: Why there is no faster form.
             item: Which item of an array result is wanted: row and column from 0.
+            shown: Whether it is a whole formula, whose result is what a cell shows.
 
         Raises:
             UnlowerableError: It reads a cell for which there is no register.
         """
-        facts = self.cells.graph.facts(node)
+        graph = self.cells.graph
         reads: dict[CellRef, None] = {}
-        if facts.dynamic or facts.names:
-            reads.update(dict.fromkeys(self.cells.all_varying(self.cell)))
-        resolver = self.cells.graph.resolver
-        for reference in facts.references:
-            if reference.prefix is not None and reference.prefix.workbook is not None:
-                continue
-            found = resolver.area(reference, self.cell)
-            for area in found.areas if isinstance(found, Reference) else ():
-                reads.update(dict.fromkeys(self.cells.varying_in(area)))
-        prepared = tuple((cell, *self._readable(self.cells.cell(cell))) for cell in reads)
-        expression = Expression(node, self.cell, whole, prepared, reason, item)
+        for area in graph.areas_of(node, self.cell):
+            reads.update(dict.fromkeys(self.cells.varying_in(area)))
+        prepared = {cell: self._readable(self.cells.cell(cell)) for cell in reads}
+        unread: frozenset[CellRef] = frozenset()
+        if graph.reads_unnamed(node, self.cell):
+            unread = self._prepare_unnamed(prepared)
+        expression = Expression(
+            node, self.cell, whole, tuple((cell, *read) for cell, read in prepared.items()),
+            reason, item, shown=shown, unread=unread,
+            inputs=self.emitter.builder.inputs if unread else (),
+        )  # fmt: skip
         function = find_function(node.name) if isinstance(node, Call) else None
         kind = Kind.NUMBER if function is not None and function.result == "number" else Kind.OBJECT
         register = self.emitter.builder.emit_expression(expression, kind)
         return Numeric(register) if kind is Kind.NUMBER else Varied(register)
 
-    def _readable(self, value: Lowered) -> tuple[Any, Kind]:
+    def _prepare_unnamed(self, prepared: dict[CellRef, tuple[Operand, Kind]]) -> frozenset[CellRef]:
+        """Prepare what a computed reference may read; the cells for which there is no register.
+
+        Those that depend on this formula, or are just being compiled, cannot come before it. Should
+        it read one of them all the same, it is calculated from the inputs, which are prepared too.
+        """
+        for cell in self.cells.all_varying(self.cell):
+            if cell in prepared:
+                continue
+            try:
+                prepared[cell] = self._readable(self.cells.cell(cell))
+            except UnlowerableError:
+                continue
+        return self.cells.varying - prepared.keys()
+
+    def _readable(self, value: Lowered) -> tuple[Operand, Kind]:
         """The operand and kind under which the reference evaluator reads a varying cell."""
+        if isinstance(value, Choice):
+            return self.emitter.as_object(value), Kind.OBJECT
+        if isinstance(value, Known) and isinstance(value.value, float | ErrorValue):
+            return self.emitter.number(value), Kind.NUMBER
+        if isinstance(value, Known) and isinstance(value.value, bool):
+            return self.emitter.number(value), Kind.FLAG
         if isinstance(value, Flagged):
             return self.emitter.number(value), Kind.FLAG  # as 0 and 1, so that it can be an error
         if isinstance(value, Varied):
             return value.operand, Kind.OBJECT
         if isinstance(value, Numeric):
             return self.emitter.settled(value), Kind.NUMBER
-        raise UnlowerableError("it reads a cell that is text in some draws")
+        if isinstance(value, Known) and isinstance(value.value, str):
+            return self.emitter.as_object(value), Kind.OBJECT
+        raise UnlowerableError("it reads a cell that holds an array or a function")
 
     # The kinds of node, one method each.
 
@@ -363,13 +398,24 @@ class NodeLowering:
         arguments: list[Lowered] = []
         for position, argument in enumerate(node.arguments):
             kind = function.parameter(position).kind
-            if kind in LIFTED:
+            if kind in LIFTED and function.strict:
+                arguments.append(self._strict_argument(argument, whole))
+            elif kind in LIFTED:
                 arguments.append(self.operand(argument, whole=whole))
             elif kind in {ArgumentKind.LAZY, ArgumentKind.FUNCTION}:
                 raise UnlowerableError(f"{node.name} has no form over draws")
             else:
                 arguments.append(self.lower(argument, whole=whole or kind in WHOLE_ARRAY))
         return arguments
+
+    def _strict_argument(self, node: Node, whole: bool) -> Lowered:
+        """An argument of a strict function: #VALUE! for a logical or a range of several cells."""
+        value = self.lower(node, whole=whole)
+        if isinstance(value, Known) and isinstance(value.value, Reference):
+            areas = value.value.areas
+            if len(areas) != 1 or areas[0].size > 1:
+                return Known(ErrorValue.VALUE)
+        return strictly_single(self.emitter, self.dereference(value, whole=whole))
 
     def _call_with(
         self, node: Call, function: FunctionRecord, arguments: list[Lowered], whole: bool

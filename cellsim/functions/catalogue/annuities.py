@@ -7,19 +7,22 @@ from collections.abc import Callable
 import numpy as np
 import numpy.typing as npt
 
-from cellsim.functions.encoded import FloatArray, checked, numeric_function
+from cellsim.functions.encoded import FloatArray, Numbers, checked, numeric_function
 from cellsim.functions.registry import Number, Whole
 from cellsim.functions.time_value import (
     Loan,
     annuity_future_value,
     annuity_present_value,
     annuity_rates,
+    growth_less_one,
     level_payment,
     periods_needed,
 )
 from cellsim.values import ErrorValue
 
 BoolArray = npt.NDArray[np.bool_]
+_LONG_SPAN = 1_000
+"""Payments of a shorter span are summed one by one."""
 
 
 def _due(kind: float) -> FloatArray:
@@ -113,7 +116,11 @@ def cumulated_interest(
     """The interest paid from one period to another."""
     refused = _is_refused(rate, periods, present, np.trunc(first), np.trunc(last), kind)
     loan = Loan(rate, periods, present, 0.0, _due(kind))
-    return checked(_sum(loan.interest, first, last, refused), (refused, ErrorValue.NUM))
+    long = np.trunc(last) - np.trunc(first) >= _LONG_SPAN
+    total = _sum(loan.interest, first, last, refused)
+    if np.any(long):
+        total = np.where(long, _sums_of_long_span(loan, first, last)[0], total)
+    return checked(total, (refused, ErrorValue.NUM))
 
 
 @numeric_function("CUMPRINC", strict=True)
@@ -123,7 +130,11 @@ def cumulated_principal(
     """The principal paid from one period to another."""
     refused = _is_refused(rate, periods, present, np.trunc(first), np.trunc(last), kind)
     loan = Loan(rate, periods, present, 0.0, _due(kind))
-    return checked(_sum(loan.principal, first, last, refused), (refused, ErrorValue.NUM))
+    long = np.trunc(last) - np.trunc(first) >= _LONG_SPAN
+    total = _sum(loan.principal, first, last, refused)
+    if np.any(long):
+        total = np.where(long, _sums_of_long_span(loan, first, last)[1], total)
+    return checked(total, (refused, ErrorValue.NUM))
 
 
 def _is_refused(*terms: float) -> BoolArray:
@@ -135,12 +146,29 @@ def _is_refused(*terms: float) -> BoolArray:
 
 
 def _sum(
-    part: Callable[[float], FloatArray], first: int, last: int, refused: BoolArray
+    part: Callable[[Numbers], FloatArray], first: float, last: float, refused: BoolArray
 ) -> FloatArray:
-    """A part of the payments of a span, both ends included, summed where it is not refused."""
+    """A part of the payments of a short span, both ends included, summed where it is not refused."""
     begin, end, _ = np.broadcast_arrays(np.trunc(first), np.trunc(last), refused)
     total = np.zeros(refused.shape)
-    if not refused.all():
-        for period in np.arange(begin[~refused].min(), end[~refused].max() + 1):
-            total = total + np.where((begin <= period) & (period <= end), part(period), 0.0)
+    summed = ~refused & (end - begin < _LONG_SPAN)
+    if summed.any():
+        for step in range(int((end - begin)[summed].max()) + 1):
+            period = begin + step
+            total = total + np.where(summed & (period <= end), part(period), 0.0)
     return total
+
+
+def _sums_of_long_span(loan: Loan, first: float, last: float) -> tuple[FloatArray, FloatArray]:
+    """Interest and principal of a long span in one step, as no loop would end in time.
+
+    The payments' principal grows by the rate from payment to payment: a geometric series.
+    """
+    begin, end = np.trunc(first), np.trunc(last)
+    rate = np.asarray(loan.rate)
+    paid = level_payment(rate, loan.periods, loan.present, loan.future, loan.due)
+    before = growth_less_one(rate, begin - 1 - loan.periods)
+    principal = paid * (growth_less_one(rate, end - loan.periods) - before) / rate
+    at_once = (np.asarray(loan.due) != 0) & (begin == 1)  # the first payment then bears no interest
+    principal = principal + np.where(at_once, -paid * before, 0.0)
+    return paid * (end - begin + 1) - principal, principal

@@ -184,9 +184,9 @@ def _gather(
     good = np.isfinite(found) & (asked >= 1) & (asked <= limit)
     index = np.where(good, (r - 1) * table.columns + c - 1, 0.0).astype(np.intp)
     result = np.take_along_axis(table.data, index[None], axis=0)[0]
+    result = np.where(np.isnan(found), found, result)
     result = np.where(asked < 1, encode_error(ErrorValue.VALUE), result)
-    result = np.where(asked > limit, encode_error(ErrorValue.REF), result)
-    return np.where(np.isnan(found), found, result)
+    return np.where(asked > limit, encode_error(ErrorValue.REF), result)
 
 
 @spreadsheet_function("LOOKUP")

@@ -115,7 +115,12 @@ def error_about_the_line(known_y: ArrayValues, known_x: ArrayValues) -> float | 
     if len(x) < 3:
         return ErrorValue.DIV0
     _, _, sxx, syy, sxy = _sums(x, y)
-    return math.sqrt((syy - sxy * sxy / sxx) / (len(x) - 2)) if sxx else ErrorValue.DIV0
+    if not sxx:
+        return ErrorValue.DIV0
+    rest = syy - sxy * sxy / sxx
+    if not math.isfinite(rest):
+        return ErrorValue.NUM
+    return math.sqrt(max(0.0, rest) / (len(x) - 2))  # rounding may take a perfect fit below zero
 
 
 def _predicted(
