@@ -249,37 +249,19 @@ def samples(function: FunctionRecord) -> tuple[dict[str, object], list[Sample]]:
     cells = dict(CELLS)
     name = function.name
     base = base_arguments(function)
-    found = [Sample("fixed", _call(name, base))]
-    places = [
-        place for place, text in enumerate(base) if not _is_cells(text) and not _is_code(text)
-    ]
-    row = 0
-
-    def cell(formula: str) -> str:
-        nonlocal row
-        row += 1
-        cells[f"T{row}"] = formula
-        return f"T{row}"
-
+    places = [p for p, text in enumerate(base) if not is_cells(text) and not is_code(text)]
     near: dict[int, str] = {}
+    found = [Sample("fixed", _call(name, base))]
     for place in places:
         for label, formula in _moved(base[place]).items():
-            address = cell(formula)
+            address = f"T{len(cells)}"
+            cells[address] = formula
             if label == "near":
                 near[place] = address
-            changed = [*base[:place], address, *base[place + 1 :]]
-            found.append(Sample(f"argument {place + 1}: {label}", _call(name, changed)))
+            found.append(_changed(name, base, place, address, f"argument {place + 1}: {label}"))
     for place, text in enumerate(base):
-        if not _is_cells(text):
-            continue
-        for other in ("G1", "H2", "M2") if ":" not in text else RANGES:
-            changed = [*base[:place], other, *base[place + 1 :]]
-            found.append(Sample(f"argument {place + 1}: {other}", _call(name, changed)))
-        if ":" in text:
-            changed = [*base[:place], f"IF(A1>0,{text},{text}*2)", *base[place + 1 :]]
-            found.append(Sample(f"argument {place + 1}: one of two ranges", _call(name, changed)))
-            changed = [*base[:place], f"-{text}", *base[place + 1 :]]
-            found.append(Sample(f"argument {place + 1}: an array", _call(name, changed), (3, 2)))
+        if is_cells(text):
+            found += _other_cells(name, base, place, text)
     all_near = [near.get(place, text) for place, text in enumerate(base)]
     found.append(Sample("all near", _call(name, all_near)))
     found.append(Sample("all near, inside", _call(name, [_inside(text) for text in base])))
@@ -290,25 +272,43 @@ def samples(function: FunctionRecord) -> tuple[dict[str, object], list[Sample]]:
         found.append(Sample("spilt", _call(name, all_near), (3, 2)))
     for place in places[:2]:
         for other in ("F1:F4", "G1:G4", "H1:H4"):
-            changed = [*all_near[:place], other, *all_near[place + 1 :]]
-            found.append(
-                Sample(f"argument {place + 1}: each of {other}", _call(name, changed), (4, 1))
-            )
+            label = f"argument {place + 1}: each of {other}"
+            found.append(_changed(name, all_near, place, other, label, (4, 1)))
     return cells, found
 
 
-def numeric_samples(function: FunctionRecord) -> tuple[dict[str, object], list[Sample]]:
-    """Calls of which every argument is a number, or a range of numbers, in all draws."""
-    cells, found = samples(function)
-    return cells, [s for s in found if s.label in {"all near", "fewest arguments"}]
+def _changed(  # the call with one argument replaced
+    name: str,
+    arguments: list[str],
+    place: int,
+    argument: str,
+    label: str,
+    area: tuple[int, int] | None = None,
+) -> Sample:
+    changed = [*arguments[:place], argument, *arguments[place + 1 :]]
+    return Sample(label, _call(name, changed), area)
 
 
-def _is_cells(text: str) -> bool:
-    head = text.split(":")[0]
+def _other_cells(name: str, base: list[str], place: int, text: str) -> list[Sample]:
+    """The call with other cells in place of a cell or range, and with arrays of its cells."""
+    which = f"argument {place + 1}"
+    if ":" not in text:
+        return [_changed(name, base, place, o, f"{which}: {o}") for o in ("G1", "H2", "M2")]
+    found = [_changed(name, base, place, other, f"{which}: {other}") for other in RANGES]
+    either = f"IF(A1>0,{text},{text}*2)"
+    found.append(_changed(name, base, place, either, f"{which}: one of two ranges"))
+    found.append(_changed(name, base, place, f"-{text}", f"{which}: an array", (3, 2)))
+    return found
+
+
+def is_cells(text: str) -> bool:
+    """Whether an argument is a cell or a range."""
+    head = text.split(":", maxsplit=1)[0]
     return 2 <= len(head) <= 3 and head[0].isalpha() and head[1:].isdigit()
 
 
-def _is_code(text: str) -> bool:
+def is_code(text: str) -> bool:
+    """Whether an argument is a function or an array as written."""
     return text.startswith(("LAMBDA", "{"))
 
 

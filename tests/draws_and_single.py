@@ -25,7 +25,6 @@ from cellsim.program.lowered import (
     Flagged,
     Known,
     Lowered,
-    Numeric,
     UnlowerableError,
     Varied,
 )
@@ -33,7 +32,8 @@ from cellsim.program.numpy_backend import BlockEvaluator
 from cellsim.values import ErrorValue, LambdaValue, Reference, Scalar, decode_error
 
 Draws = Sequence[npt.NDArray[np.float64]]
-Reader = Callable[[Sequence[npt.NDArray[np.generic]], int], Scalar]
+Columns = Sequence[npt.NDArray[np.generic]]
+Reader = Callable[[Columns, int], Scalar]
 
 RELATIVE = 1e-12
 
@@ -56,13 +56,15 @@ class Compiled:
 ALONE = 6
 """So many draws are also evaluated in blocks of one, in which no other draw can make the block fail."""
 
+
 def compile_cells(
     base: Calculation, inputs: Sequence[CellRef], wanted: Sequence[CellRef]
 ) -> Compiled:
     """Compile a model so that the wanted cells can be read with their types."""
     lowering = _ModelLowering(base, inputs, list(wanted), iterate=False)
-    outputs: list[tuple[Operand, Kind]] = []
-    readers = [_cell_reader(lowering, cell, outputs) for cell in wanted]
+    made = _Readers(lowering)
+    readers = [made.of_cell(cell) for cell in wanted]
+    outputs = made.outputs
     needed = {operand.number for operand, _ in outputs if isinstance(operand, Register)}
     builder = lowering.builder
     instructions = eliminate_dead_code(builder.instructions, needed)
@@ -70,61 +72,69 @@ def compile_cells(
     return Compiled(program, readers, program.slow)
 
 
-def _cell_reader(
-    lowering: _ModelLowering, cell: CellRef, outputs: list[tuple[Operand, Kind]]
-) -> Reader:
-    def slot(operand: Operand, kind: Kind) -> int:
-        outputs.append((operand, kind))
-        return len(outputs) - 1
+class _Readers:
+    """Makes readers of a model's cells and collects the registers that they look into."""
 
-    def reader(value: Lowered) -> Reader:
-        emitter = lowering.emitter
+    def __init__(self, lowering: _ModelLowering) -> None:
+        self.lowering = lowering
+        self.outputs: list[tuple[Operand, Kind]] = []
+
+    def _slot(self, operand: Operand, kind: Kind) -> int:
+        self.outputs.append((operand, kind))
+        return len(self.outputs) - 1
+
+    def of_cell(self, cell: CellRef) -> Reader:
+        """What gives the value of a cell in a draw."""
+        try:
+            value = self.lowering.cell(cell)
+            typed = self._typed(value)
+            result, _ = self.lowering._as_output(value)
+        except UnlowerableError as problem:
+            operand = self.lowering._recalculated(cell, problem.reason)
+            number = self._slot(operand, Kind.NUMBER)
+            return lambda columns, draw: _AsResult(_number(columns[number], draw))  # type: ignore[return-value]
+        shown = self._slot(result, Kind.NUMBER)
+
+        def both(columns: Columns, draw: int) -> Scalar:
+            exact, number = typed(columns, draw), _number(columns[shown], draw)
+            if isinstance(exact, (float, ErrorValue)):
+                assert identical(number, exact), f"shown as {number!r}, held as {exact!r}"
+            return exact
+
+        return both
+
+    def _typed(self, value: Lowered) -> Reader:
+        emitter = self.lowering.emitter
+        if isinstance(value, Block):
+            return self._typed(value.items[0])
         if isinstance(value, Known):
             content = value.value
             if isinstance(content, (Reference, LambdaValue)):
                 raise UnlowerableError("no single value")
             return lambda _columns, _draw: content
-        if isinstance(value, Numeric):
-            number = slot(emitter.settled(value), Kind.NUMBER)
-            return lambda columns, draw: _number(columns[number], draw)
-        if isinstance(value, Flagged):
-            flag = slot(emitter.number(value), Kind.NUMBER)
-            return lambda columns, draw: _logical(columns[flag], draw)
         if isinstance(value, Choice):
-            which = slot(emitter.number(Flagged(value.flag)), Kind.NUMBER)  # type: ignore[arg-type]
-            then, otherwise = reader(value.then), reader(value.otherwise)
-
-            def chosen(columns: Sequence[npt.NDArray[np.generic]], draw: int) -> Scalar:
-                taken = _logical(columns[which], draw)
-                if isinstance(taken, ErrorValue):
-                    return taken
-                return (then if taken else otherwise)(columns, draw)
-
-            return chosen
+            return self._chosen(value)
+        if isinstance(value, Flagged):
+            flag = self._slot(emitter.number(value), Kind.NUMBER)
+            return lambda columns, draw: _logical(columns[flag], draw)
         if isinstance(value, Varied):
-            thing = slot(value.operand, Kind.OBJECT)
+            thing = self._slot(value.operand, Kind.OBJECT)
             return lambda columns, draw: columns[thing][draw]  # type: ignore[return-value]
-        assert isinstance(value, Block)
-        return reader(value.items[0])
+        number = self._slot(emitter.settled(value), Kind.NUMBER)
+        return lambda columns, draw: _number(columns[number], draw)
 
-    try:
-        value = lowering.cell(cell)
-        typed = reader(value)
-        result, _ = lowering._as_output(value)
-    except UnlowerableError as problem:
-        number = slot(lowering._recalculated(cell, problem.reason), Kind.NUMBER)
-        return lambda columns, draw: _AsResult(_number(columns[number], draw))  # type: ignore[return-value]
-    number = slot(result, Kind.NUMBER)
+    def _chosen(self, value: Choice) -> Reader:
+        flag = self.lowering.emitter.number(Flagged(value.flag))
+        which = self._slot(flag, Kind.NUMBER)
+        then, otherwise = self._typed(value.then), self._typed(value.otherwise)
 
-    def both(columns: Sequence[npt.NDArray[np.generic]], draw: int) -> Scalar:
-        exact, shown = typed(columns, draw), _number(columns[number], draw)
-        if isinstance(exact, float):
-            assert identical(shown, exact), f"shown as {shown!r}, held as {exact!r}"
-        if isinstance(exact, ErrorValue):
-            assert shown is exact, f"shown as {shown!r}, held as {exact!r}"
-        return exact
+        def chosen(columns: Columns, draw: int) -> Scalar:
+            taken = _logical(columns[which], draw)
+            if isinstance(taken, ErrorValue):
+                return taken
+            return (then if taken else otherwise)(columns, draw)
 
-    return both
+        return chosen
 
 
 class _AsResult:
@@ -188,7 +198,7 @@ def agree(found: object, wanted: Scalar, *, scale: float = 0.0) -> bool:
     """The same value of the same type, numbers to 1e-12 relative, of a scale where one is given."""
     if isinstance(found, _AsResult):
         if isinstance(wanted, (bool, str)) or wanted is None:
-            return True  # a result shows numbers only; test_results covers how others are shown
+            return True  # a result shows numbers only
         found = found.number
     if type(found) is not type(wanted):
         return False
@@ -236,8 +246,11 @@ def draws_for(count: int) -> list[np.ndarray]:
 
 
 def mismatches(
-    cells: dict[str, object], formulas: Sequence[tuple[str, str, tuple[int, int] | None]],
-    draws: Draws, *, exactly: bool = False
+    cells: dict[str, object],
+    formulas: Sequence[tuple[str, str, tuple[int, int] | None]],
+    draws: Draws,
+    *,
+    exactly: bool = False,
 ) -> list[str]:
     """What differs between the two ways of evaluating formulas beside some cells.
 

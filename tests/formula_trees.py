@@ -5,7 +5,23 @@ from __future__ import annotations
 from hypothesis import strategies as st
 
 _NUMBERS = ("A1", "A2", "A3", "A4", "F1", "F3", "0", "1", "2", "-1", "0.5", "100")
-_MIXED = ("G1", "G2", "G3", "H2", "H3", "I1", "M1", "M4", "R2", "B9", '""', '"3"', '"x"', "TRUE", "NA()")
+_MIXED = (
+    "G1",
+    "G2",
+    "G3",
+    "H2",
+    "H3",
+    "I1",
+    "M1",
+    "M4",
+    "R2",
+    "B9",
+    '""',
+    '"3"',
+    '"x"',
+    "TRUE",
+    "NA()",
+)
 _RANGES = ("F1:F4", "G1:G4", "H1:H4", "I1:I4", "J1:J4", "M1:M4", "A1:A4", "K1:K4")
 _ONE = (
     "ABS", "SIGN", "INT", "SQRT", "EXP", "LN", "NOT", "ISERROR", "ISNUMBER", "ISTEXT", "ISBLANK", "ISNA",

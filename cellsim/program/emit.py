@@ -131,9 +131,9 @@ class Emitter:
         """An arithmetic operator on single values."""
         if isinstance(left, Known) and isinstance(right, Known):
             return self._fold(operator, left, right)
-        return self.as_lowered(
-            self.arithmetic_operands(operator, self.number(left), self.number(right))
-        )
+        first = self.exact_number(left) if operator == "^" else self.number(left)
+        second = self.exact_number(right) if operator in {"/", "^"} else self.number(right)
+        return self.as_lowered(self.arithmetic_operands(operator, first, second))
 
     def _fold(self, operator: str, left: Known, right: Known) -> Known:
         a, b = left.value, right.value
@@ -225,8 +225,14 @@ class Emitter:
                 )
             )
         holds = _HOLDS[operator](types[0] - types[1])
-        varying = left if not isinstance(left, Known) else right
-        return Flagged(self._always(self.number(varying), holds=holds))
+        flags = [
+            self._always(self.number(value), holds=holds)
+            for value in (left, right)
+            if not isinstance(value, Known)
+        ]
+        if len(flags) == 1:
+            return Flagged(flags[0])
+        return Flagged(self.builder.emit(Op.AND if holds else Op.OR, *flags))
 
     def _compare_in_order(
         self, operator: str, part: Lowered, other: Lowered, other_first: bool

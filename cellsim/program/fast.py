@@ -27,8 +27,8 @@ from cellsim.program.buffers import Buffers
 from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import compare_over_draws, settle_cancellation
 from cellsim.program.draw_by_draw import ExpressionEvaluator, as_numbers, choice_runner
-from cellsim.program.interpret import Frame
 from cellsim.program.emit import is_error
+from cellsim.program.interpret import Frame
 from cellsim.program.ir import (
     Constant,
     Instruction,

@@ -12,6 +12,7 @@ from cellsim.formula.tree import (
     Call,
     CellReference,
     ErrorLiteral,
+    Invocation,
     LogicalLiteral,
     MissingArgument,
     NameReference,
@@ -392,6 +393,12 @@ class NodeLowering:
             return self._call_by_item(node, function, arguments, lifted, whole)
         return self._call_with(node, function, arguments, whole)
 
+    def invocation(self, node: Invocation, whole: bool) -> Lowered:
+        """A call of a function that an expression gives, as in `LAMBDA(x, x+1)(A1)`."""
+        if self.scope is None and self.is_static(node):
+            return self.static_value(node, whole=whole)
+        raise UnlowerableError("a LAMBDA has no form over draws")
+
     def _arguments(self, node: Call, function: FunctionRecord, whole: bool) -> list[Lowered]:
         if not function.least <= len(node.arguments) <= function.most:
             raise UnlowerableError(f"{node.name} with a wrong number of arguments")
@@ -518,4 +525,5 @@ _LOWERINGS: dict[type, Callable[[NodeLowering, Any, bool], Lowered]] = {
     Postfix: NodeLowering.postfix,
     Binary: NodeLowering.binary,
     Call: NodeLowering.call,
+    Invocation: NodeLowering.invocation,
 }
