@@ -29,6 +29,7 @@ CELLS: dict[str, object] = {
     "M1": "=A1>0", "M3": "x", "M4": "=A2>1",
     "O1": "=0.02+A4/100", "O2": 0.03, "O3": "=0.04+A4/50", "O4": 0.05,
     "P1": "=2+A4", "P2": 1, "Q1": 1, "Q2": "=3+A2/10",
+    "S1": "=1/A2>0", "S2": "=IF(A1>0,1/A2>1,A2)", "S3": "=IF(1/A2>0,A1,\"low\")", "S4": "=A1=A2",
     "R1": "apple", "R2": '=IF(A1>0,"pear","plum")', "R3": '="a"&A2', "R4": 7,
 }  # fmt: skip
 """The cells that all models share; A1 to A4 are uncertain, what depends on them as well."""
@@ -269,11 +270,11 @@ def samples(function: FunctionRecord) -> tuple[dict[str, object], list[Sample]]:
     if len(base) > 1:
         found.append(Sample("an argument left out", _call(name, [*all_near[:-1], ""])))
     if not function.volatile:
-        found.append(Sample("spilt", _call(name, all_near), (3, 2)))
+        found.append(Sample("spilt", _call(name, all_near), (2, 2)))
     for place in places[:2]:
         for other in ("F1:F4", "G1:G4", "H1:H4"):
             label = f"argument {place + 1}: each of {other}"
-            found.append(_changed(name, all_near, place, other, label, (4, 1)))
+            found.append(_changed(name, all_near, place, other, label, (2, 1)))
     return cells, found
 
 
@@ -297,7 +298,7 @@ def _other_cells(name: str, base: list[str], place: int, text: str) -> list[Samp
     found = [_changed(name, base, place, other, f"{which}: {other}") for other in RANGES]
     either = f"IF(A1>0,{text},{text}*2)"
     found.append(_changed(name, base, place, either, f"{which}: one of two ranges"))
-    found.append(_changed(name, base, place, f"-{text}", f"{which}: an array", (3, 2)))
+    found.append(_changed(name, base, place, f"-{text}", f"{which}: an array", (2, 2)))
     return found
 
 

@@ -53,7 +53,7 @@ class Compiled:
     slow: tuple[Expression, ...]
 
 
-ALONE = 6
+ALONE = 4
 """So many draws are also evaluated in blocks of one, in which no other draw can make the block fail."""
 
 
@@ -223,7 +223,7 @@ WILD = [
     1e15,
     -1e-9,
     0.1,
-    12345678.9,
+    123456789.5,
     1e9,
     -1.0,
     0.5,

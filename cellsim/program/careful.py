@@ -19,6 +19,7 @@ from cellsim.program.calculation import Calculation
 from cellsim.program.comparisons import COMPARISONS, compare_over_draws, settle_cancellation
 from cellsim.program.fast import (
     UFUNCS,
+    argument_kinds,
     choice_step,
     expression_runner,
     kernel_runner,
@@ -54,10 +55,11 @@ def careful_step(
     op = instruction.op
     if op is Op.CALL:
         run = kernel_runner(instruction.detail, buffers, base, careful=True)
+        call = instruction.detail
         passed = [
             buffers.operand(operand)
-            for argument in instruction.detail.arguments
-            if not looks_into_errors(argument)
+            for argument, kind in zip(call.arguments, argument_kinds(call), strict=True)
+            if not looks_into_errors(kind, argument)
             for operand in (argument.items if isinstance(argument, StackOperand) else (argument,))
         ]
         return lambda: _call(out, run, passed)
@@ -198,6 +200,13 @@ def is_na(values: AnyArray) -> npt.NDArray[np.bool_]:
     return np.asarray(np.isnan(values) & (codes == _NA_CODE))
 
 
+def _same_error(bound: _Bound) -> None:
+    left, right = np.broadcast_arrays(*bound.operands)
+    codes = [np.ascontiguousarray(side).view(np.uint64) & np.uint64(0xFF) for side in (left, right)]
+    bound.out[:] = np.isnan(left) & np.isnan(right) & (codes[0] == codes[1])
+    bound.set_errors(None)
+
+
 def _is_na(bound: _Bound) -> None:
     bound.out[:] = is_na(bound.operands[0])
     bound.set_errors(None)
@@ -246,6 +255,7 @@ _STEPS: dict[Op, Callable[[_Bound], None]] = {
     Op.SELECT_FLAG: _select_flag,
     Op.IS_ERROR: _is_error,
     Op.IS_NA: _is_na,
+    Op.SAME_ERROR: _same_error,
     Op.IF_ERROR: _if_error,
     Op.IF_NA: _if_na,
 }  # fmt: skip

@@ -167,6 +167,7 @@ _OTHERS: dict[Op, Callable[[list[AnyArray], AnyArray], Step]] = {
     Op.IF_NA: _copy,
     Op.IS_ERROR: _none_fails,
     Op.IS_NA: _none_fails,
+    Op.SAME_ERROR: _none_fails,
     Op.IS_TRUE: _is_true,
     Op.AS_NUMBER: _copy,
     Op.CANCEL: _cancel,
@@ -184,7 +185,10 @@ def _call(
     out: AnyArray,
     go_carefully: type[Exception],
 ) -> Step:
-    if any(looks_into_errors(a) and any(map(is_error, a.items)) for a in call.arguments):  # type: ignore[union-attr]
+    if any(
+        isinstance(argument, StackOperand) and any(map(is_error, argument.items))
+        for argument in call.arguments
+    ):
         return partial(_refuse, go_carefully)
     run = kernel_runner(call, buffers, base, careful=False)
 
@@ -216,14 +220,17 @@ def kernel_runner(
     kernel = find_over_draws(call.function)
     if kernel is None:
         raise LookupError(call.function)
-    function = find_function(call.function)
-    if function is None:
-        raise LookupError(call.function)
+    function = _function_of(call)
+    kinds = argument_kinds(call)
     gather = [
-        _argument(argument, buffers, whole=function.parameter(place).kind is ArgumentKind.WHOLE)
+        _argument(argument, buffers, whole=kinds[place] is ArgumentKind.WHOLE)
         for place, argument in enumerate(call.arguments)
     ]
-    looked_into = any(looks_into_errors(argument) for argument in call.arguments)
+    looked_into = [
+        place
+        for place, argument in enumerate(call.arguments)
+        if looks_into_errors(kinds[place], argument)
+    ]
 
     def run() -> AnyArray:
         arguments = [argument() for argument in gather]
@@ -232,7 +239,9 @@ def kernel_runner(
         if result is None:
             return _one_by_one(function, arguments, range(buffers.block), base)
         if careful and looked_into:
-            failing = np.flatnonzero(_holding_errors(arguments, buffers.block))
+            failing = np.flatnonzero(
+                _holding_errors([arguments[p] for p in looked_into], buffers.block)
+            )
             if failing.size:
                 result = np.array(np.broadcast_to(result, buffers.block))
                 result[failing] = _one_by_one(function, arguments, failing, base)
@@ -241,20 +250,37 @@ def kernel_runner(
     return run
 
 
-def looks_into_errors(argument: Operand | StackOperand) -> bool:
-    """Whether it is for the function to say what an error inside an argument means.
+def _function_of(call: KernelCall) -> FunctionRecord:
+    function = find_function(call.function)
+    if function is None:
+        raise LookupError(call.function)
+    return function
+
+
+def argument_kinds(call: KernelCall) -> list[ArgumentKind]:
+    """How each argument of a call reaches its kernel."""
+    function = _function_of(call)
+    return [function.parameter(place).kind for place in range(len(call.arguments))]
+
+
+def looks_into_errors(kind: ArgumentKind, argument: Operand | StackOperand) -> bool:
+    """Whether it is for the function to say what an error in an argument means.
 
     Where only numbers count, an error is the result; a lookup passes over errors beside the key.
     """
-    return isinstance(argument, StackOperand) and not argument.plain
+    return kind is ArgumentKind.ANY_SCALAR or (
+        isinstance(argument, StackOperand) and not argument.plain
+    )
 
 
 def _holding_errors(arguments: Sequence[Any], draws: int) -> AnyArray:
-    """The draws in which a rectangle holds an error."""
+    """The draws in which an argument is an error or holds one."""
     failing = np.zeros(draws, dtype=bool)
     for argument in arguments:
         if isinstance(argument, Stack):
             failing |= np.isnan(argument.data).any(axis=0)
+        else:
+            failing |= np.isnan(argument)
     return failing
 
 

@@ -64,6 +64,7 @@ class Op(enum.Enum):
     IF_NA = "if n/a"  # [number, number]
     IS_ERROR = "is error"  # [number] flag
     IS_NA = "is n/a"  # [number] flag
+    SAME_ERROR = "same error"  # [number, number] flag: both are the same error
     CALL = "call"  # a kernel over draws; arguments in `detail`
     INTERPRET = "interpret"  # an expression taken draw by draw; `detail` is an Expression
     CHOICE = "choice"  # one of two values of any types, as objects; `detail` is a MixedChoice
@@ -74,7 +75,7 @@ class Op(enum.Enum):
 FLAG_OPS = frozenset(
     {
         Op.EQUAL, Op.NOT_EQUAL, Op.LESS, Op.LESS_EQUAL, Op.GREATER, Op.GREATER_EQUAL,
-        Op.AND, Op.OR, Op.NOT, Op.IS_TRUE, Op.SELECT_FLAG, Op.IS_ERROR, Op.IS_NA,
+        Op.AND, Op.OR, Op.NOT, Op.IS_TRUE, Op.SELECT_FLAG, Op.IS_ERROR, Op.IS_NA, Op.SAME_ERROR,
     }
 )  # fmt: skip
 """Operations that give flags."""

@@ -264,7 +264,7 @@ def item_operands(emitter: Emitter, item: Lowered) -> list[Operand]:
             return [emitter.number(item)]
         return []
     if isinstance(item, Flagged):
-        return []
+        raise UnlowerableError("a range with logicals that may be errors in some draws")
     raise UnlowerableError("a range with cells that are numbers in some draws only")
 
 
@@ -283,6 +283,7 @@ _PREPARATIONS: dict[ArgumentKind, Callable[[Arguments, int, Lowered], Operand | 
     ArgumentKind.NUMBER: _number_argument,
     ArgumentKind.WHOLE: _number_argument,
     ArgumentKind.SCALAR: _scalar_argument,
+    ArgumentKind.ANY_SCALAR: _scalar_argument,
     ArgumentKind.LOGICAL: _logical_argument,
     ArgumentKind.NUMBER_ITEMS: _items_argument,
     ArgumentKind.VALUES: _stack_argument,

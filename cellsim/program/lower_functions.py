@@ -15,6 +15,16 @@ from cellsim.program.lower_calls import (
     Arguments,
     item_operands,
 )
+from cellsim.program.lower_conditions import (
+    average_rule,
+    count_if,
+    count_ifs,
+    count_numbers,
+    count_numbers_among,
+    extreme_rule,
+    sum_rule,
+    summand,
+)
 from cellsim.program.lower_references import (
     computed_reference,
     index_rule,
@@ -52,8 +62,8 @@ def _summed(emitter_arguments: Arguments) -> list[Operand]:
             continue
         for item in _items(given, position):
             operands += (
-                [_summand(given, item)]
-                if isinstance(item, Choice)
+                [summand(given, item)]
+                if isinstance(item, (Choice, Flagged))
                 else item_operands(given.emitter, item)
             )
     return operands
@@ -67,15 +77,6 @@ def _items(given: Arguments, position: int) -> Iterable[Lowered]:
             yield from given.lowering.cells.area_block(area).items
         return
     yield from given.block(position).items
-
-
-def _summand(given: Arguments, item: Lowered) -> Operand:
-    """What an item of a range adds to a sum."""
-    if isinstance(item, Choice):
-        then, otherwise = _summand(given, item.then), _summand(given, item.otherwise)
-        return given.emitter.builder.emit(Op.SELECT, item.flag, then, otherwise)
-    operands = item_operands(given.emitter, item)
-    return operands[0] if operands else _ZERO
 
 
 def add_up(given: Arguments, operands: Iterable[Operand]) -> Operand:
@@ -94,12 +95,13 @@ def _sum(given: Arguments) -> Lowered:
 
 
 def _average(given: Arguments) -> Lowered | None:
-    if any(
-        isinstance(item, Choice)
-        for p in range(len(given.values))
-        for item in _range_items(given, p)
-    ):
-        return None
+    if _has_mixed_items(given):
+        parts = [summand(given, item) for item in _all_items(given)]
+        return given.emitter.as_lowered(
+            given.emitter.arithmetic_operands(
+                "/", add_up(given, parts), count_numbers_among(given, _all_items(given))
+            )
+        )
     operands = _summed(given)
     if not operands:
         return Known(ErrorValue.DIV0)
@@ -109,17 +111,33 @@ def _average(given: Arguments) -> Lowered | None:
     )
 
 
+def _all_items(given: Arguments) -> list[Lowered]:
+    """The items of all arguments, direct ones as numbers."""
+    items: list[Lowered] = []
+    for position, value in enumerate(given.values):
+        if given.is_range(position):
+            items += _items(given, position)
+        else:
+            items.append(given.emitter.as_lowered(given.emitter.number(value)))
+    return items
+
+
+def _has_mixed_items(given: Arguments) -> bool:
+    """Whether a range holds what is a number, or an error, in some draws only."""
+    return any(
+        isinstance(item, (Choice, Flagged))
+        for position in range(len(given.values))
+        for item in _range_items(given, position)
+    )
+
+
 def _range_items(given: Arguments, position: int) -> Iterable[Lowered]:
     return _items(given, position) if given.is_range(position) else ()
 
 
 def _extreme(op: Op) -> Rule:
     def rule(given: Arguments) -> Lowered | None:
-        if any(
-            isinstance(item, Choice)
-            for p in range(len(given.values))
-            for item in _range_items(given, p)
-        ):
+        if _has_mixed_items(given):
             return None
         operands = _summed(given)
         if not operands:
@@ -144,8 +162,8 @@ def _count_all(given: Arguments) -> Lowered | None:
     count = 0
     for position in range(len(given.values)):
         for item in _items(given, position):
-            if isinstance(item, Varied):
-                return None
+            if isinstance(item, Varied) and not given.is_range(position):
+                return None  # it may be a blank, which no cell of a formula is
             count += not (isinstance(item, Known) and item.value is None)
     return Known(float(count))
 
@@ -158,7 +176,7 @@ def _sum_of_products(given: Arguments) -> Lowered | None:
     for items in zip(*(block.items for block in blocks), strict=True):
         product: Operand | None = None
         for item in items:
-            factor = _summand(given, item)
+            factor = summand(given, item)
             product = (
                 factor
                 if product is None
@@ -169,11 +187,7 @@ def _sum_of_products(given: Arguments) -> Lowered | None:
 
 
 def _product(given: Arguments) -> Lowered | None:
-    if any(
-        isinstance(item, Choice)
-        for p in range(len(given.values))
-        for item in _range_items(given, p)
-    ):
+    if _has_mixed_items(given):
         return None
     result: Operand | None = None
     for operand in _summed(given):
@@ -286,7 +300,16 @@ RULES: dict[str, Rule] = {
     "AVERAGE": _average,
     "MIN": _extreme(Op.MINIMUM),
     "MAX": _extreme(Op.MAXIMUM),
+    "COUNT": count_numbers,
     "COUNTA": _count_all,
+    "COUNTIF": count_if,
+    "COUNTIFS": count_ifs,
+    "SUMIF": sum_rule(single=True),
+    "SUMIFS": sum_rule(single=False),
+    "AVERAGEIF": average_rule(single=True),
+    "AVERAGEIFS": average_rule(single=False),
+    "MAXIFS": extreme_rule(Op.MAXIMUM),
+    "MINIFS": extreme_rule(Op.MINIMUM),
     "SUMPRODUCT": _sum_of_products,
     "PRODUCT": _product,
     "NPV": _net_present_value,

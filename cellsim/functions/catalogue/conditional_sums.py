@@ -97,12 +97,20 @@ def _numbers_if(
     return _numbers_at(tested if values is None else _moved(context, values, area), places)
 
 
+def _add_up(numbers: list[float]) -> float:
+    """The sum from left to right; what `sum` does differs between versions of Python."""
+    total = 0.0
+    for number in numbers:
+        total += number
+    return total
+
+
 @spreadsheet_function("SUMIF")
 def sum_if(
     context: Context, where: CellArea, criterion: AnyScalar, values: CellArea | None = None
 ) -> float:
     """The sum of the numbers whose place meets a criterion."""
-    return sum(_numbers_if(context, where, criterion, values), 0.0)
+    return _add_up(_numbers_if(context, where, criterion, values))
 
 
 @spreadsheet_function("AVERAGEIF")
@@ -111,7 +119,7 @@ def average_if(
 ) -> float | ErrorValue:
     """The mean of the numbers whose place meets a criterion."""
     numbers = _numbers_if(context, where, criterion, values)
-    return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
+    return _add_up(numbers) / len(numbers) if numbers else ErrorValue.DIV0
 
 
 @spreadsheet_function("COUNTIF")
@@ -142,14 +150,14 @@ def _numbers_ifs(context: Context, values: CellArea, pairs: tuple[Value, ...]) -
 @spreadsheet_function("SUMIFS", group=2, least=3)
 def sum_ifs(context: Context, values: CellArea, *pairs: Operand) -> float:
     """The sum of the numbers whose places meet all criteria."""
-    return sum(_numbers_ifs(context, values, pairs), 0.0)
+    return _add_up(_numbers_ifs(context, values, pairs))
 
 
 @spreadsheet_function("AVERAGEIFS", group=2, least=3)
 def average_ifs(context: Context, values: CellArea, *pairs: Operand) -> float | ErrorValue:
     """The mean of the numbers whose places meet all criteria."""
     numbers = _numbers_ifs(context, values, pairs)
-    return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
+    return _add_up(numbers) / len(numbers) if numbers else ErrorValue.DIV0
 
 
 @spreadsheet_function("MAXIFS", group=2, least=3)
