@@ -283,7 +283,6 @@ _PREPARATIONS: dict[ArgumentKind, Callable[[Arguments, int, Lowered], Operand | 
     ArgumentKind.NUMBER: _number_argument,
     ArgumentKind.WHOLE: _number_argument,
     ArgumentKind.SCALAR: _scalar_argument,
-    ArgumentKind.ANY_SCALAR: _scalar_argument,
     ArgumentKind.LOGICAL: _logical_argument,
     ArgumentKind.NUMBER_ITEMS: _items_argument,
     ArgumentKind.VALUES: _stack_argument,
