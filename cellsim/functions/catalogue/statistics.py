@@ -8,16 +8,11 @@ from collections import Counter
 import numpy as np
 
 from cellsim.functions.coercion import to_number
-from cellsim.functions.order_statistics import (
-    percentile_exclusive,
-    percentile_inclusive,
-    rank_of,
-)
+from cellsim.functions.order_statistics import percentile_inclusive
 from cellsim.functions.registry import (
     ArrayValues,
     Context,
     FloatArray,
-    Logical,
     Number,
     NumberItems,
     Operand,
@@ -179,44 +174,16 @@ def kth_smallest_over_draws(numbers: FloatArray, place: FloatArray | float) -> F
     return _pick(numbers, place, from_top=False)
 
 
-@spreadsheet_function("RANK", "RANK.EQ")
-def rank(number: Number, numbers: NumberItems, ascending: Logical = False) -> float | ErrorValue:
-    """The place of a number among others, ties sharing the best."""
-    found = rank_of(number, numbers, ascending=ascending)
-    return ErrorValue.NA if found is None else float(found[0])
-
-
-@spreadsheet_function("RANK.AVG")
-def average_rank(
-    number: Number, numbers: NumberItems, ascending: Logical = False
-) -> float | ErrorValue:
-    """The place of a number among others, ties sharing their mean."""
-    found = rank_of(number, numbers, ascending=ascending)
-    return ErrorValue.NA if found is None else found[0] + (found[1] - 1) / 2
-
-
 @spreadsheet_function("PERCENTILE", "PERCENTILE.INC")
 def percentile(numbers: NumberItems, share: Number) -> float:
     """The number below which a share of the numbers lies, ends included."""
     return percentile_inclusive(numbers, share)
 
 
-@spreadsheet_function("PERCENTILE.EXC")
-def percentile_without_ends(numbers: NumberItems, share: Number) -> float:
-    """The number below which a share of the numbers lies, ends left out."""
-    return percentile_exclusive(numbers, share)
-
-
 @spreadsheet_function("QUARTILE", "QUARTILE.INC")
 def quartile(numbers: NumberItems, quarter: Whole) -> float | ErrorValue:
     """A quartile, ends included."""
     return percentile_inclusive(numbers, quarter / 4) if 0 <= quarter <= 4 else ErrorValue.NUM
-
-
-@spreadsheet_function("QUARTILE.EXC")
-def quartile_without_ends(numbers: NumberItems, quarter: Whole) -> float | ErrorValue:
-    """A quartile, ends left out."""
-    return percentile_exclusive(numbers, quarter / 4) if 1 <= quarter <= 3 else ErrorValue.NUM
 
 
 @over_draws("PERCENTILE", "PERCENTILE.INC")
