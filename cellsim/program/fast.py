@@ -195,7 +195,7 @@ def _call(
     def step() -> None:
         result = run()
         out[:] = result
-        if np.isnan(out).any():
+        if not np.isfinite(out).all():
             raise go_carefully
 
     return step

@@ -88,6 +88,7 @@ WHAT_VARIES: dict[str, list[str]] = {
         "=QUARTILE(F1:F4,A2)", "=SUMPRODUCT(F1:F4,G1:G4)", "=SUMPRODUCT((G1:G4=\"text\")*1)", "=MAX(A1,H2)",
         "=SUM(I1:I4)", "=SUM(A1,\"3\",A1>0)", "=MAX(A1>0,-1)", "=SUM(M1:M4)", "=AVERAGEA(G1:G4)", "=MIN(H2,A1)",
         "=SUMPRODUCT(--(F1:F4>A1),J1:J4)", "=SUBTOTAL(9,G1:G4)", "=VAR(F1:F4)", "=MODE(J1:J4,A2)", "=SUMSQ(G1:G4)",
+        "=STDEV(A1:A4)", "=VARP(A1:A4)", "=MEDIAN(A3,A3*2)",
     ],
     "comparisons across types": [
         "=G1>A1", "=G1=\"TEXT\"", "=A1>0=TRUE", "=G3=A1", "=G2<A4", "=H2>1", "=H3=H2", "=M1>M4", "=R2<\"pm\"", "=I1>A2",
