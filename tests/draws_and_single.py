@@ -211,7 +211,7 @@ def agree(found: object, wanted: Scalar, *, scale: float = 0.0) -> bool:
 
 INPUTS = [place(address) for address in ("A1", "A2", "A3", "A4")]
 ORDINARY = [1.0, 0.0, -1.0, 0.5, 0.75, 1.5, 2.5, -0.3, 3.25, 0.2]
-WHOLE = [2.0, 0.0, 1.0, 3.0, -1.0, 4.0, -4.0, 7.0, 1.0, 2.0]
+WHOLE = [2.0, 0.0, -4.0, 3.0, -1.0, 4.0, 0.0, 7.0, 1.0, 2.0]
 WILD = [
     3.0,
     0.0,

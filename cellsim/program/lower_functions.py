@@ -208,11 +208,17 @@ def _net_present_value(given: Arguments) -> Lowered | None:
         for item in _items(given, position):
             flows += item_operands(emitter, item)
     growth = emitter.arithmetic_operands("+", emitter.number(given.values[0]), constant(1.0))
+    if isinstance(growth, Constant) and is_error(growth):
+        return emitter.as_lowered(growth)
     total: Operand | None = None
     for flow in reversed(flows):
-        summed = flow if total is None else emitter.arithmetic_operands("+", total, flow)
+        # of several errors that of the earliest flow counts: it stands on the left
+        summed = flow if total is None else emitter.arithmetic_operands("+", flow, total)
         total = emitter.arithmetic_operands("/", summed, growth)
-    return None if total is None else emitter.as_lowered(total)
+    if total is None or isinstance(growth, Constant):
+        return None if total is None else emitter.as_lowered(total)
+    failing = emitter.builder.emit(Op.IS_ERROR, growth)
+    return Numeric(emitter.builder.emit(Op.SELECT, failing, growth, total))
 
 
 # Logic and information.

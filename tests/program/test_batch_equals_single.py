@@ -61,7 +61,8 @@ WHAT_VARIES: dict[str, list[str]] = {
     "rates in each draw": [
         "=IRR(K1:K4)", "=IRR(K1:K4,A4)", "=XIRR(K1:K4,L1:L4)", "=RATE(12+A2,-100,1000+A1)", "=IRR(F1:F4)",
         "=IFERROR(IRR(H1:H4),\"none\")", "=MIRR(K1:K4,A4,0.1)", "=XNPV(A4,K1:K4,L1:L4)", "=NPV(A1,K1:K4)",
-        "=IRR(G1:G4)", "=NPV(0.1,G1:G4)", "=XIRR(K1:K4,H1:H4)",
+        "=IRR(G1:G4)", "=NPV(0.1,G1:G4)", "=XIRR(K1:K4,H1:H4)", "=NPV(A1,H1:H4)", "=NPV(H3,H1:H4)", "=NPV(H2,H3,A1)", "=NPV(NA(),H3,A1)",
+        "=SUMPRODUCT(H1:H4,S1:S4)", "=SUMPRODUCT(J1:J4,H1:H4)", "=SUM(H3,H2)", "=MAX(H3,H2)", "=PRODUCT(H1:H4)",
     ],
     "branches that are not taken and would fail": [
         "=IF(A2=0,0,1/A2)", "=IFS(A2>0,1/A2,A2=0,\"zero\",TRUE,SQRT(-A2))", "=SWITCH(A2,0,\"zero\",1,1/A2,LN(A2))",

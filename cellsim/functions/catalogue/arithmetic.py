@@ -57,14 +57,12 @@ def sum_of_products(*arrays: ArrayValues) -> float | ErrorValue:
     shape = arrays[0].rows, arrays[0].columns
     if any((array.rows, array.columns) != shape for array in arrays):
         return ErrorValue.VALUE
-    for array in arrays:
-        for item in array.items:
-            if isinstance(item, ErrorValue):
-                return item
     total = 0.0
     for items in zip(*(array.items for array in arrays), strict=True):
         product = 1.0
         for item in items:
+            if isinstance(item, ErrorValue):
+                return item
             product *= item if type(item) is float else 0.0
         total += product
     return total
