@@ -34,11 +34,15 @@ Apart from single functions, these are taken draw by draw:
 - ranges in which a cell is a number in some draws and text in others, for functions of the second list;
 - draws in which a cell of a table holds an error, for lookups and for pairs of ranges (only those draws).
 
-One difference to a single recalculation remains. A spreadsheet program sets a formula's last sum or
+Two differences to a single recalculation remain. The first: a spreadsheet program sets a formula's last sum or
 difference to zero if it is tiny beside its operands. Over draws this is done where the number is
 compared, rounded, divided by, raised to a power, shown as a result or handed to a function that is
 sensitive to it, but not where it is only added or multiplied on. There a leftover of about 1e-16 of the
 operands may remain.
+
+A second difference: where IF, CHOOSE and their like give a cell, a single recalculation hands on the
+reference, and SUM or AND pass over text in it. Over draws they hand on what the cell holds, and text is
+then refused with #VALUE!.
 
 ## Functions that are always taken draw by draw
 """
