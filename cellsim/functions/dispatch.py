@@ -8,6 +8,7 @@ from typing import Any, TypeAlias
 
 import numpy as np
 
+from cellsim.functions.array_limits import TextBudget, bounded_growth
 from cellsim.functions.coercion import numbers_in, to_logical, to_number, to_text
 from cellsim.functions.registry import (
     LIFTED,
@@ -19,9 +20,6 @@ from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Sca
 
 Argument: TypeAlias = Value | Callable[[], Value]
 """An evaluated argument, or for a `Lazy` parameter the function that evaluates it."""
-
-LARGEST_ARRAY = 20_000_000
-"""More items than this in one array are refused with #NUM!, so that no formula fills the memory."""
 
 
 def call_function(
@@ -224,6 +222,7 @@ def _call_by_item(
             values = values_of(arguments[position](), context)
             arrays.append((position, values, _constant))
     rows, columns = common_shape([array for _, array, _ in arrays])
+    text = TextBudget()
     results: list[Scalar] = []
     for row in range(rows):
         for column in range(columns):
@@ -233,7 +232,7 @@ def _call_by_item(
             except Fault as fault:
                 results.append(fault.error)
                 continue
-            results.append(_first_item(_call(function, arguments, context), context))
+            results.append(text.take(_first_item(_call(function, arguments, context), context)))
     return Array(rows, columns, results)
 
 
@@ -245,13 +244,11 @@ def common_shape(arrays: Sequence[Array]) -> tuple[int, int]:
     """The rows and columns of what comes of arrays combined item by item.
 
     Raises:
-        Fault: It would be larger than any array may be (#NUM!).
+        Fault: It would be larger than an array may be (#NUM!).
     """
     rows = max(array.rows for array in arrays)
     columns = max(array.columns for array in arrays)
-    if rows * columns > LARGEST_ARRAY:
-        raise Fault(ErrorValue.NUM)
-    return rows, columns
+    return bounded_growth(rows, columns, arrays)
 
 
 def item_at(array: Array, row: int, column: int) -> Scalar:

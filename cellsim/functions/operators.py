@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 
+from cellsim.functions.array_limits import TextBudget
 from cellsim.functions.coercion import to_number, to_text
 from cellsim.functions.comparison import compare
 from cellsim.functions.dispatch import common_shape, item_at
@@ -121,24 +122,19 @@ def _as_array(value: Scalar | Array) -> Array:
 
 def _by_item(operator: str, left: Array, right: Array, *, date_1904: bool) -> Array:
     rows, columns = common_shape((left, right))
+    pairs: Iterable[tuple[Scalar, Scalar]]
     if (left.rows, left.columns) == (right.rows, right.columns):
         pairs = zip(left.items, right.items, strict=True)
-        items = [binary_scalar(operator, a, b, date_1904=date_1904) for a, b in pairs]
-        return Array(rows, columns, items)
-    return Array(
-        rows,
-        columns,
-        [
-            binary_scalar(
-                operator,
-                item_at(left, row, column),
-                item_at(right, row, column),
-                date_1904=date_1904,
-            )
+    else:
+        pairs = (
+            (item_at(left, row, column), item_at(right, row, column))
             for row in range(rows)
             for column in range(columns)
-        ],
-    )
+        )
+    text = TextBudget()
+    results = (binary_scalar(operator, a, b, date_1904=date_1904) for a, b in pairs)
+    items = [text.take(item) for item in results] if operator == "&" else list(results)
+    return Array(rows, columns, items)
 
 
 def _each(

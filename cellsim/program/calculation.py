@@ -12,7 +12,8 @@ import numpy as np
 
 import cellsim.functions.library  # noqa: F401  (fills the registry)
 from cellsim.cells import CellRef, RangeRef
-from cellsim.functions.dispatch import LARGEST_ARRAY, item_at
+from cellsim.functions.array_limits import LARGEST_ARRAY
+from cellsim.functions.dispatch import item_at
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
 from cellsim.program.deep_stack import run_deeply

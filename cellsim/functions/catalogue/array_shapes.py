@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from cellsim.functions.array_limits import bounded_growth, bounded_shape
 from cellsim.functions.coercion import to_number
-from cellsim.functions.dispatch import LARGEST_ARRAY, values_of
+from cellsim.functions.dispatch import values_of
 from cellsim.functions.registry import (
     AnyScalar,
     ArrayValues,
@@ -17,10 +18,10 @@ from cellsim.values import Array, ErrorValue, Fault, Scalar, Value
 
 
 def _table(rows: list[list[Scalar]]) -> Array:
-    """An array of rows; blanks become 0. Without any item it is #CALC!."""
+    """An array of rows; blanks stay blank. Without any item it is #CALC!."""
     if not rows or not rows[0]:
         raise Fault(ErrorValue.CALC)
-    return Array.from_rows([[0.0 if item is None else item for item in row] for row in rows])
+    return Array.from_rows(rows)
 
 
 @spreadsheet_function("SEQUENCE")
@@ -37,8 +38,7 @@ def sequence(
     height, width = int(tall), int(wide)
     if height < 1 or width < 1:
         return ErrorValue.CALC if height == 0 or width == 0 else ErrorValue.VALUE
-    if height * width > LARGEST_ARRAY:
-        return ErrorValue.NUM
+    bounded_shape(height, width)
     return Array(height, width, [start + by * k for k in range(height * width)])
 
 
@@ -102,20 +102,24 @@ def _places(context: Context, asked: tuple[Value, ...], count: int) -> list[int]
 def choose_columns(context: Context, values: ArrayValues, *columns: Operand) -> Array:
     """Columns by number, from the end with negative ones."""
     places = _places(context, columns, values.columns)
+    bounded_growth(values.rows, len(places), [values])
     return _table([[row[place] for place in places] for row in values.to_rows()])
 
 
 @spreadsheet_function("CHOOSEROWS", least=2)
 def choose_rows(context: Context, values: ArrayValues, *rows: Operand) -> Array:
     """Rows by number, from the end with negative ones."""
+    places = _places(context, rows, values.rows)
+    bounded_growth(len(places), values.columns, [values])
     table = values.to_rows()
-    return _table([table[place] for place in _places(context, rows, values.rows)])
+    return _table([table[place] for place in places])
 
 
 @spreadsheet_function("HSTACK", least=1)
 def side_by_side(*arrays: ArrayValues) -> Array:
     """Arrays side by side; #N/A fills shorter ones."""
     height = max(array.rows for array in arrays)
+    bounded_growth(height, sum(array.columns for array in arrays), arrays)
     rows: list[list[Scalar]] = [[] for _ in range(height)]
     for array in arrays:
         table = array.to_rows()
@@ -128,6 +132,7 @@ def side_by_side(*arrays: ArrayValues) -> Array:
 def one_below_the_other(*arrays: ArrayValues) -> Array:
     """Arrays one below the other; #N/A fills narrower ones."""
     width = max(array.columns for array in arrays)
+    bounded_growth(sum(array.rows for array in arrays), width, arrays)
     rows: list[list[Scalar]] = []
     for array in arrays:
         rows += [[*row, *[ErrorValue.NA] * (width - array.columns)] for row in array.to_rows()]
@@ -158,3 +163,69 @@ def to_column(values: ArrayValues, ignore: Whole = 0, by_column: Logical = False
 def to_row(values: ArrayValues, ignore: Whole = 0, by_column: Logical = False) -> Array:
     """All items along a row; 1 leaves blanks out, 2 errors, 3 both."""
     return _table([_line(values, ignore, by_column=by_column)])
+
+
+def _size(context: Context, asked: Value, least: int) -> int:
+    """How high or wide an array is to become; left out it stays as it is.
+
+    Raises:
+        Fault: It would become smaller (#VALUE!).
+    """
+    if asked is None:
+        return least
+    size = int(to_number(values_of(asked, context).items[0], date_1904=context.date_1904))
+    if size < least:
+        raise Fault(ErrorValue.VALUE)
+    return size
+
+
+@spreadsheet_function("EXPAND")
+def expanded(
+    context: Context,
+    values: ArrayValues,
+    rows: Operand,
+    columns: Operand | None = None,
+    padding: AnyScalar = ErrorValue.NA,
+) -> Array:
+    """An array made higher and wider; #N/A or what is given fills it up."""
+    height = _size(context, rows, values.rows)
+    width = _size(context, columns, values.columns)
+    bounded_shape(height, width)
+    table = [[*row, *[padding] * (width - values.columns)] for row in values.to_rows()]
+    table += [[padding] * width for _ in range(height - values.rows)]
+    return _table(table)
+
+
+def _pieces(values: Array, count: int, padding: Scalar) -> list[list[Scalar]]:
+    """A single row or column cut into pieces of equal length, the last filled up.
+
+    Raises:
+        Fault: It is an area of several rows and columns (#VALUE!), or a piece would be empty (#NUM!).
+    """
+    if values.rows > 1 and values.columns > 1:
+        raise Fault(ErrorValue.VALUE)
+    if count < 1:
+        raise Fault(ErrorValue.NUM)
+    items = values.items
+    if count > len(items):
+        bounded_shape(count, 1)
+    pieces = [items[start : start + count] for start in range(0, len(items), count)]
+    pieces[-1] = [*pieces[-1], *[padding] * (count - len(pieces[-1]))]
+    return pieces
+
+
+@spreadsheet_function("WRAPROWS")
+def wrapped_into_rows(
+    values: ArrayValues, count: Whole, padding: AnyScalar = ErrorValue.NA
+) -> Array:
+    """A row or column cut into rows of so many items; #N/A or what is given fills the last."""
+    return _table(_pieces(values, count, padding))
+
+
+@spreadsheet_function("WRAPCOLS")
+def wrapped_into_columns(
+    values: ArrayValues, count: Whole, padding: AnyScalar = ErrorValue.NA
+) -> Array:
+    """A row or column cut into columns of so many items; #N/A or what is given fills the last."""
+    pieces = _pieces(values, count, padding)
+    return _table([list(row) for row in zip(*pieces, strict=True)])

@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import cast
 
-from cellsim.functions.dispatch import LARGEST_ARRAY, common_shape, item_at, values_of
+from cellsim.functions.array_limits import TextBudget, bounded_shape
+from cellsim.functions.dispatch import common_shape, item_at, values_of
 from cellsim.functions.registry import (
     ArrayValues,
     Context,
@@ -51,6 +52,7 @@ def map_items(context: Context, *arguments: Operand) -> Array:
     arrays = [values_of(argument, context) for argument in arguments[:-1]]
     ranges = [isinstance(argument, Reference) for argument in arguments[:-1]]
     rows, columns = common_shape(arrays)
+    text = TextBudget()
     items = []
     for row in range(rows):
         for column in range(columns):
@@ -59,7 +61,7 @@ def map_items(context: Context, *arguments: Operand) -> Array:
                 Array(1, 1, [item]) if in_range else item
                 for item, in_range in zip(single, ranges, strict=True)
             ]
-            items.append(_called(context, function, given))
+            items.append(text.take(_called(context, function, given)))
     return Array(rows, columns, items)
 
 
@@ -79,11 +81,12 @@ def reduce_items(
 def scan_items(context: Context, start: Operand, values: ArrayValues, function: Function) -> Array:
     """A function of what came before and each item, every result."""
     total: Value = start if start is None else values_of(start, context).items[0]
+    text = TextBudget()
     items: list[Scalar] = []
     for item in values.items:
         arguments = [item if total is None and not items else total, item]
         total = item if total is None and not items else _called(context, function, arguments)
-        items.append(0.0 if total is None else total)
+        items.append(text.take(0.0 if total is None else cast("Scalar", total)))
     return Array(values.rows, values.columns, items)
 
 
@@ -94,10 +97,10 @@ def make_array(
     """A function of each row and column number."""
     if rows < 1 or columns < 1:
         return ErrorValue.VALUE
-    if rows * columns > LARGEST_ARRAY:
-        return ErrorValue.NUM
+    bounded_shape(rows, columns)
+    text = TextBudget()
     items = [
-        _called(context, function, [float(row), float(column)])
+        text.take(_called(context, function, [float(row), float(column)]))
         for row in range(1, rows + 1)
         for column in range(1, columns + 1)
     ]
@@ -107,8 +110,10 @@ def make_array(
 @spreadsheet_function("BYROW")
 def by_row(context: Context, values: ArrayValues, function: Function) -> Array:
     """A function of each row."""
+    text = TextBudget()
     items = [
-        _called(context, function, [Array(1, values.columns, row)]) for row in values.to_rows()
+        text.take(_called(context, function, [Array(1, values.columns, row)]))
+        for row in values.to_rows()
     ]
     return Array(values.rows, 1, items)
 
@@ -116,8 +121,13 @@ def by_row(context: Context, values: ArrayValues, function: Function) -> Array:
 @spreadsheet_function("BYCOL")
 def by_column(context: Context, values: ArrayValues, function: Function) -> Array:
     """A function of each column."""
+    text = TextBudget()
     items = [
-        _called(context, function, [Array(values.rows, 1, values.items[column :: values.columns])])
+        text.take(
+            _called(
+                context, function, [Array(values.rows, 1, values.items[column :: values.columns])]
+            )
+        )
         for column in range(values.columns)
     ]
     return Array(1, values.columns, items)
