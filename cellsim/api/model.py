@@ -20,6 +20,7 @@ from cellsim.formula.tree import (
 from cellsim.graph.build import Graph, build_graph
 from cellsim.program.calculation import Calculation, calculate_all
 from cellsim.program.interpret import Frame, dereference, evaluate_formula
+from cellsim.program.settle_spills import settle_spills
 from cellsim.results import ModelCheck
 from cellsim.values import Array, Reference, Scalar
 from cellsim.workbook.labels import find_label, unit_of
@@ -47,12 +48,16 @@ class Model:
     @cached_property
     def graph(self) -> Graph:
         """The formulas and what each reads."""
-        return build_graph(self.workbook)
+        return settle_spills(build_graph(self.workbook), as_of=self._now)
 
     @cached_property
     def base(self) -> Calculation:
         """The base case; cells are calculated when they are asked for."""
-        return Calculation(self.graph, as_of=self.as_of.replace(tzinfo=None))
+        return Calculation(self.graph, as_of=self._now)
+
+    @property
+    def _now(self) -> dt.datetime:
+        return self.as_of.replace(tzinfo=None)
 
     def calculate(self) -> dict[str, Scalar]:
         """Recalculate every formula cell from the constants.

@@ -11,9 +11,8 @@ from dataclasses import dataclass, field
 import numpy as np
 
 import cellsim.functions.library  # noqa: F401  (fills the registry)
-from cellsim.cells import CellRef, RangeRef
+from cellsim.cells import CellRef, RangeRef, range_of
 from cellsim.functions.array_limits import LARGEST_ARRAY
-from cellsim.functions.dispatch import item_at
 from cellsim.graph.build import Formula, Graph
 from cellsim.graph.order import strongly_connected
 from cellsim.program.deep_stack import run_deeply
@@ -23,6 +22,7 @@ from cellsim.program.interpret import (
     dereference,
     evaluate_formula,
 )
+from cellsim.program.spill_areas import is_blocked, item_shown, spill_target
 from cellsim.values import Array, ErrorValue, Fault, LambdaValue, Reference, Scalar, Value
 from cellsim.workbook.model import Position
 
@@ -190,16 +190,22 @@ class Calculation:
         """
         value = self.cell_value(*cell)
         formula = self._graph.formula(cell)
-        if formula is None or formula.area is None or isinstance(value, ErrorValue):
+        if formula is None or formula.area is None:
             return value if isinstance(value, ErrorValue) else ErrorValue.REF
         spill = self._spills.get(cell)
-        area = formula.area
         if spill is None:
-            return Reference((area,))
-        if spill.rows > area.rows or spill.columns > area.columns:
+            return value if isinstance(value, ErrorValue) else Reference((formula.area,))
+        if spill.rows > formula.area.rows or spill.columns > formula.area.columns:
             return spill
-        last_row, last_column = cell.row + spill.rows - 1, cell.column + spill.columns - 1
-        return Reference((RangeRef(cell.sheet, cell.row, cell.column, last_row, last_column),))
+        return Reference((spill_target(cell, spill.rows, spill.columns),))
+
+    def spill_area(self, formula: Formula) -> RangeRef:
+        """The cells that a formula's array fills: one where it gives a single value or is blocked."""
+        self.cell_value(*formula.cell)
+        spill = self._spills.get(formula.cell)
+        if spill is None:
+            return range_of(formula.cell)
+        return spill_target(formula.cell, spill.rows, spill.columns)
 
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers in [0, 1) for a cell's volatile functions."""
@@ -302,6 +308,10 @@ class Calculation:
         if formula.area is None:
             values[cell.row, cell.column] = _single(value)
             return
+        if formula.dynamic and isinstance(value, Array):
+            target = spill_target(cell, value.rows, value.columns)
+            if target != formula.area and is_blocked(self._graph, formula, target):
+                value = ErrorValue.SPILL
         if formula.data_table is None:
             if isinstance(value, Array):
                 self._spills[cell] = value
@@ -317,8 +327,8 @@ class Calculation:
                     cell.row,
                     cell.column,
                 ):
-                    item = item_at(array, row, column)
-                    values[position] = _shown(item)
+                    item = item_shown(array, row, column, spilled=formula.dynamic)
+                    values[position] = None if item is None else _shown(item)
 
     def _data_table(self, formula: Formula) -> Value:
         """The interior of a data table: the corner's formula with the input cells replaced."""
@@ -419,10 +429,8 @@ class Calculation:
 
 
 def _shown(item: Value) -> Scalar:
-    """What a cell of an array shows of an item: zero for a blank, #VALUE! for a function."""
-    if isinstance(item, LambdaValue):
-        return ErrorValue.VALUE
-    return 0.0 if item is None else _single(item)
+    """What a cell of an array shows of an item: #VALUE! for a function."""
+    return ErrorValue.VALUE if isinstance(item, LambdaValue) else _single(item)
 
 
 def _single(value: Value) -> Scalar:

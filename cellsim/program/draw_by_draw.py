@@ -12,7 +12,6 @@ import numpy as np
 import numpy.typing as npt
 
 from cellsim.cells import CellRef, RangeRef
-from cellsim.functions.dispatch import item_at
 from cellsim.graph.build import Graph
 from cellsim.program.calculation import Calculation
 from cellsim.program.interpret import (
@@ -20,8 +19,10 @@ from cellsim.program.interpret import (
     UnsupportedFunctionError,
     dereference,
     evaluate,
+    evaluate_formula,
 )
 from cellsim.program.ir import Expression, Kind
+from cellsim.program.spill_areas import item_shown
 from cellsim.values import (
     Array,
     ErrorValue,
@@ -80,8 +81,13 @@ class DrawGrid:
         return Array(array.rows, array.columns, items)
 
     def spill_of(self, cell: CellRef) -> Value:
-        """The whole array that a cell's formula gives in the base case."""
-        return self._base.spill_of(cell)
+        """The array that a cell's formula gives: that of this draw if it spills, else the base case's."""
+        formula = self._base.graph.formula(cell)
+        if formula is None or not formula.dynamic or formula.tree is None:
+            return self._base.spill_of(cell)
+        frame = Frame(self, cell)
+        value = dereference(evaluate_formula(formula.tree, frame, whole=True), frame, whole=True)
+        return value if isinstance(value, (Array, ErrorValue)) else Array(1, 1, [value])
 
     def stream_for(self, cell: CellRef) -> Callable[[], float]:
         """A fixed stream of random numbers for a cell."""
@@ -138,7 +144,7 @@ def _evaluate(expression: Expression, frame: Frame) -> Scalar:
         return ErrorValue.NAME
     if isinstance(value, Array):
         row, column = expression.item
-        return item_at(value, row, column)
+        return item_shown(value, row, column, spilled=expression.spilled)
     return value
 
 

@@ -154,6 +154,7 @@ class Expression:
         item: Which item of an array result is wanted: row and column from 0.
         recalculate: Whether the whole model is calculated again and not just the expression; the
             cells that it reads are then the inputs.
+        spilled: Whether cells beyond the end of an array result are blank (and not #N/A).
     """
 
     tree: Node
@@ -163,6 +164,7 @@ class Expression:
     reason: str
     item: tuple[int, int]
     recalculate: bool = False
+    spilled: bool = False
 
 
 @dataclass(frozen=True, slots=True, eq=False)

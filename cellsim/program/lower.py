@@ -126,6 +126,7 @@ class _ModelLowering:
         self._varying_areas: dict[RangeRef, tuple[CellRef, ...]] = {}
         self._blocks: dict[RangeRef, Block] = {}
         self._active: dict[CellRef, None] = {}
+        self._open_shapes: set[CellRef] = set()
         self._loops: list[tuple[CellRef, ...]] = []
         self._in_loop = False
 
@@ -190,6 +191,11 @@ class _ModelLowering:
             found = tuple(_cells_in(self._columns, area))
             self._varying_areas[area] = found
         return found
+
+    def has_fixed_shape(self, cell: CellRef) -> bool:
+        """Whether the array of a formula cell fills the same cells in every draw."""
+        self.cell(cell)
+        return cell not in self._open_shapes
 
     def all_varying(self, reader: CellRef) -> Sequence[CellRef]:
         """All varying cells but those that depend on the reader."""
@@ -308,6 +314,8 @@ class _ModelLowering:
         try:
             value = lowering.dereference(lowering.formula(formula.tree, whole=whole), whole=whole)
         except UnlowerableError as problem:
+            if formula.dynamic:
+                self._open_shapes.add(formula.cell)
             return [
                 (
                     place,
@@ -316,6 +324,7 @@ class _ModelLowering:
                         whole=whole,
                         reason=problem.reason,
                         item=(place.row - formula.cell.row, place.column - formula.cell.column),
+                        spilled=formula.dynamic,
                     ),
                 )
                 for place in places

@@ -78,6 +78,9 @@ class Cells(Protocol):
     def area_block(self, area: RangeRef) -> Block:
         """The values of a rectangle."""
 
+    def has_fixed_shape(self, cell: CellRef) -> bool:
+        """Whether the array of a formula cell fills the same cells in every draw."""
+
     def all_varying(self, reader: CellRef) -> Sequence[CellRef]:
         """All varying cells that do not depend on a cell: what a computed reference may name."""
 
@@ -199,7 +202,13 @@ class NodeLowering:
         return known_from_value(evaluate(node, self.cells.frame(self.cell), whole=whole))
 
     def interpreted(
-        self, node: Node, *, whole: bool, reason: str, item: tuple[int, int] = (0, 0)
+        self,
+        node: Node,
+        *,
+        whole: bool,
+        reason: str,
+        item: tuple[int, int] = (0, 0),
+        spilled: bool = False,
     ) -> Lowered:
         """An expression left to the reference evaluator, draw by draw.
 
@@ -208,6 +217,7 @@ class NodeLowering:
             whole: Whether ranges are taken item by item.
             reason: Why there is no faster form.
             item: Which item of an array result is wanted: row and column from 0.
+            spilled: Whether cells beyond the end of an array result are blank.
 
         Raises:
             UnlowerableError: It reads a cell for which there is no register.
@@ -224,7 +234,7 @@ class NodeLowering:
             for area in found.areas if isinstance(found, Reference) else ():
                 reads.update(dict.fromkeys(self.cells.varying_in(area)))
         prepared = tuple((cell, *self._readable(self.cells.cell(cell))) for cell in reads)
-        expression = Expression(node, self.cell, whole, prepared, reason, item)
+        expression = Expression(node, self.cell, whole, prepared, reason, item, spilled=spilled)
         function = find_function(node.name) if isinstance(node, Call) else None
         kind = Kind.NUMBER if function is not None and function.result == "number" else Kind.OBJECT
         register = self.emitter.builder.emit_expression(expression, kind)
@@ -301,7 +311,7 @@ class NodeLowering:
             formula = self.cells.graph.formula(cell)
             if formula is None or not self.cells.varies(cell):
                 return self.static_value(node, whole=True)
-            if formula.area is not None:
+            if formula.area is not None and self.cells.has_fixed_shape(cell):
                 return Known(Reference((formula.area,)))
         raise UnlowerableError("a spill range that varies")
 

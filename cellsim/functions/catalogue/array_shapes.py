@@ -42,46 +42,32 @@ def sequence(
     return Array(height, width, [start + by * k for k in range(height * width)])
 
 
-def _part(count: int, wanted: Value, *, drop: bool) -> slice:
+def _part(count: int, wanted: Scalar, *, drop: bool) -> slice:
     """The rows or columns that TAKE or DROP leaves; nothing asked means all of them."""
-    if isinstance(wanted, Array):
-        wanted = wanted.items[0]
     if wanted is None:
         return slice(0, count)
-    if isinstance(wanted, ErrorValue):
-        raise Fault(wanted)
-    if not isinstance(wanted, (float, bool)):
-        raise Fault(ErrorValue.VALUE)
-    number = int(wanted)
+    number = int(to_number(wanted))
     size = min(abs(number), count)
     if drop:
         return slice(size, count) if number >= 0 else slice(0, count - size)
     return slice(0, size) if number >= 0 else slice(count - size, count)
 
 
-def _single(context: Context, value: Value) -> Value:
-    return None if value is None else values_of(value, context).items[0]
-
-
 @spreadsheet_function("TAKE")
-def take(
-    context: Context, values: ArrayValues, rows: Operand, columns: Operand | None = None
-) -> Array:
+def take(values: ArrayValues, rows: AnyScalar, columns: AnyScalar = None) -> Array:
     """The first rows and columns, or the last with negative numbers."""
-    return _cut(context, values, rows, columns, drop=False)
+    return _cut(values, rows, columns, drop=False)
 
 
 @spreadsheet_function("DROP")
-def drop(
-    context: Context, values: ArrayValues, rows: Operand, columns: Operand | None = None
-) -> Array:
+def drop(values: ArrayValues, rows: AnyScalar, columns: AnyScalar = None) -> Array:
     """All but the first rows and columns, or but the last with negative numbers."""
-    return _cut(context, values, rows, columns, drop=True)
+    return _cut(values, rows, columns, drop=True)
 
 
-def _cut(context: Context, values: Array, rows: Value, columns: Value, *, drop: bool) -> Array:
-    down = _part(values.rows, _single(context, rows), drop=drop)
-    across = _part(values.columns, _single(context, columns), drop=drop)
+def _cut(values: Array, rows: Scalar, columns: Scalar, *, drop: bool) -> Array:
+    down = _part(values.rows, rows, drop=drop)
+    across = _part(values.columns, columns, drop=drop)
     return _table([row[across] for row in values.to_rows()[down]])
 
 
