@@ -72,12 +72,18 @@ def _cut(values: Array, rows: Scalar, columns: Scalar, *, drop: bool) -> Array:
 
 
 def _places(context: Context, asked: tuple[Value, ...], count: int) -> list[int]:
+    """Rows or columns by number, counted from 0.
+
+    Raises:
+        Fault: There is no such one, or numbers stand in several rows and columns (#VALUE!).
+    """
     places: list[int] = []
     for value in asked:
-        for item in values_of(value, context).items:
-            if isinstance(item, ErrorValue):
-                raise Fault(item)
-            number = int(item) if isinstance(item, (float, bool)) else 0
+        numbers = values_of(value, context)
+        if numbers.rows > 1 and numbers.columns > 1:
+            raise Fault(ErrorValue.VALUE)
+        for item in numbers.items:
+            number = int(to_number(item, date_1904=context.date_1904))
             if number == 0 or abs(number) > count:
                 raise Fault(ErrorValue.VALUE)
             places.append(number - 1 if number > 0 else count + number)

@@ -23,6 +23,7 @@ from cellsim.functions.registry import (
 from cellsim.functions.searching import (
     find_at_least_descending,
     find_at_most,
+    find_by_halves,
     find_equal,
     find_nearest,
     line_of,
@@ -107,7 +108,11 @@ def _find_by_mode(key: Scalar, items: list[Scalar], mode: int, search: int) -> i
     if mode not in {0, -1, 1, 2, 3} or search not in {1, -1, 2, -2}:
         raise Fault(ErrorValue.VALUE)
     last = search == -1
-    if key is None:
+    if search in {2, -2}:
+        if mode not in {0, -1, 1}:
+            raise Fault(ErrorValue.VALUE)
+        found = find_by_halves(key, items, mode, descending=search == -2)
+    elif key is None and mode in {0, 2, 3}:
         found = next((place for place, item in enumerate(items) if item is None), None)
     elif mode in {0, 2, 3}:
         found = find_equal(key, items, wildcards=mode == 2, last=last)
