@@ -127,11 +127,13 @@ class BlockEvaluator:
         with np.errstate(divide="raise", over="raise", invalid="raise", under="ignore"):
             shortcut = self._shortcut
             if shortcut is not None and shortcut.useless <= _MOST_USELESS:
+                unsettled = self.unsettled
                 try:
                     self._run_steps(shortcut.steps, finite, self._watch)
                 except _LookAgain:
                     shortcut.useless += 1
                     self.poison.clear()
+                    self.unsettled = unsettled  # circles are solved, and counted, once more
                 else:
                     shortcut.useless = 0
                     return

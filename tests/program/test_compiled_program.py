@@ -163,6 +163,22 @@ def test_draws_in_which_a_circular_chain_does_not_settle_are_counted_once() -> N
     np.testing.assert_allclose(out[settled], roots, rtol=1e-12)
 
 
+def test_a_block_that_is_run_again_counts_its_unsettled_draws_once() -> None:
+    """Later blocks come near a cancellation behind the circle, so that they are run a second time."""
+    circle = {"A1": 0.1, "A2": 2.5, "B1": "=1-A1*B2", "B2": "=B1^2"}
+    rests = {"D1": "=A1*0.3", "D2": "=D1-A2*(A1*0.1)", "C2": "=B1+IF(D2=0,1,0)"}
+    graph = model_of({**circle, **rests}, iterate=True)  # type: ignore[arg-type]
+    base = calculate(graph)
+    rates, factors = np.full(2_048, 0.1), np.full(2_048, 2.5)
+    rates[600::100] = 1.5  # no solution
+    factors[700::7] = 3.0  # D2 is nothing but a rest
+    inputs = [place("A1"), place("A2")]
+    compiled = compile_program(base, inputs, [place("C2")], iterate=True)
+    engine = BlockEngine(compiled.program, base, threads=1, block=512)
+    engine.run([rates, factors])
+    assert engine.unsettled == int((rates == 1.5).sum())
+
+
 def test_an_infinite_draw_is_an_error_and_not_a_number() -> None:
     graph = model_of({"A1": 1, "A2": 2, "C1": "=IF(A1>0,A2,1)"})
     base = calculate(graph)
