@@ -32,7 +32,7 @@ import enum
 import inspect
 import typing
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Annotated, Any, Protocol, TypeAlias, TypeVar
 
 import numpy as np
@@ -181,7 +181,7 @@ class FunctionRecord:
         takes_context: Whether the kernel's first parameter is the context.
         volatile: Whether its value may change without a change of its arguments.
         gives_reference: Whether it may return a reference (OFFSET, INDEX and their like).
-        group: For a variadic parameter, arguments come in groups of so many.
+        group: For a variadic parameter whose arguments come in groups: the kinds within a group.
         strict: Whether single values may be neither logicals nor ranges of several cells (#VALUE!).
         scalars_first: Whether errors of single values come before errors inside ranges.
         result: "number", "text" or "logical" where the kernel's annotation says so, else "any".
@@ -197,7 +197,7 @@ class FunctionRecord:
     takes_context: bool
     volatile: bool
     gives_reference: bool
-    group: int
+    group: tuple[ArgumentKind, ...]
     strict: bool
     scalars_first: bool
     result: str
@@ -206,7 +206,12 @@ class FunctionRecord:
 
     def parameter(self, position: int) -> ParameterRecord:
         """The parameter that takes the argument at a position counted from 0."""
-        return self.parameters[min(position, len(self.parameters) - 1)]
+        last = len(self.parameters) - 1
+        parameter = self.parameters[min(position, last)]
+        if not self.group or position < last:
+            return parameter
+        kind = self.group[(position - last) % len(self.group)]
+        return replace(parameter, kind=kind)
 
 
 MAC_ROMAN = "mac_roman"
@@ -229,7 +234,7 @@ def spreadsheet_function(
     *names: str,
     volatile: bool = False,
     gives_reference: bool = False,
-    group: int = 1,
+    group: tuple[ArgumentKind, ...] = (),
     strict: bool = False,
     scalars_first: bool = False,
     least: int | None = None,
@@ -241,7 +246,8 @@ def spreadsheet_function(
         names: Names in upper case.
         volatile: The value may change without a change of its arguments.
         gives_reference: The kernel may return a Reference.
-        group: Arguments of the variadic parameter come in groups of so many.
+        group: The kinds in which arguments of the variadic parameter come in turn, such as a range and
+            a criterion; without it all are of the kind of its annotation.
         strict: Arguments in places for single values may be neither logicals nor ranges of several
             cells (#VALUE!), as in the functions that spreadsheet programs long kept in an add-in.
         scalars_first: Single values are looked at before ranges, so that their errors come first.

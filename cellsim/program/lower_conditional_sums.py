@@ -226,7 +226,13 @@ def _count_all(given: Arguments) -> Lowered | None:
     found = _all_flags(given, 0)
     if found is None:
         return Known(ErrorValue.VALUE)
-    return given.emitter.as_lowered(how_many(given, found[1]))
+    shape, flags = found
+    count = given.emitter.as_lowered(how_many(given, flags))
+    beyond = _area(given, 0).size - shape.size
+    places = range(1, len(given.values), 2)
+    if not beyond or not all(_criterion(given, place).test(None) for place in places):
+        return count
+    return given.emitter.arithmetic("+", count, Known(float(beyond)))
 
 
 def _least(given: Arguments, items: Sequence[CountedItem]) -> Lowered | None:

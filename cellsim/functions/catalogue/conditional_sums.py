@@ -7,6 +7,7 @@ from cellsim.functions.criteria import parse_criterion
 from cellsim.functions.number_text import number_from_text
 from cellsim.functions.registry import (
     AnyScalar,
+    ArgumentKind,
     CellArea,
     Context,
     Operand,
@@ -23,22 +24,16 @@ def _area_of(value: Value) -> RangeRef:
     return value.areas[0]
 
 
-def _criterion_value(context: Context, value: Value) -> Scalar:
-    """A criterion: a single value; of a range, what intersects with the formula's row or column."""
-    if isinstance(value, Reference):
-        area = value.areas[0]
-        if area.size == 1:
-            return context.cell_value(area.sheet, area.first_row, area.first_column)
-        return context.intersect(value)
-    if isinstance(value, Array):
-        return value.items[0]
-    if isinstance(value, LambdaValue):
-        raise Fault(ErrorValue.CALC)
-    return value
+_PAIR = (ArgumentKind.OPERAND, ArgumentKind.ANY_SCALAR)
+"""A range and its criterion; an array of criteria gives an array of results."""
 
 
-def matching_places(context: Context, pairs: tuple[Value, ...]) -> tuple[Array, list[int]]:
-    """The places, row by row, at which every criterion is met, and the values of the first range.
+def matching_places(context: Context, pairs: tuple[Value, ...]) -> tuple[Array, list[int], int]:
+    """The places at which every criterion is met.
+
+    Returns:
+        The values of the first range, the places in it row by row, and how many blank cells beyond the
+        used part of the sheet meet every criterion too.
 
     Raises:
         Fault: The ranges differ in shape or are no ranges (#VALUE!).
@@ -47,11 +42,13 @@ def matching_places(context: Context, pairs: tuple[Value, ...]) -> tuple[Array, 
         raise Fault(ErrorValue.VALUE)
     first: Array | None = None
     places: list[int] | None = None
+    beyond = 0
     for position in range(0, len(pairs), 2):
-        values = context.area_values(_area_of(pairs[position]))
-        test = parse_criterion(_criterion_value(context, pairs[position + 1])).test
+        area = _area_of(pairs[position])
+        values = context.area_values(area)
+        test = parse_criterion(_scalar(pairs[position + 1])).test
         if first is None:
-            first = values
+            first, beyond = values, area.size - len(values.items)
         elif (values.rows, values.columns) != (first.rows, first.columns):
             raise Fault(ErrorValue.VALUE)
         items = values.items
@@ -59,7 +56,15 @@ def matching_places(context: Context, pairs: tuple[Value, ...]) -> tuple[Array, 
             places = [place for place, item in enumerate(items) if test(item)]
         else:
             places = [place for place in places if test(items[place])]
-    return first or Array(1, 1, [None]), places or []
+        beyond = beyond if beyond and test(None) else 0
+    return first or Array(1, 1, [None]), places or [], beyond
+
+
+def _scalar(value: Value) -> Scalar:
+    """A criterion, which has been made a single value before."""
+    if isinstance(value, (Array, Reference, LambdaValue)):
+        raise Fault(ErrorValue.VALUE)
+    return value
 
 
 def _moved(context: Context, values: CellArea, like: RangeRef) -> Array:
@@ -125,40 +130,41 @@ def count_if(context: Context, where: CellArea, criterion: AnyScalar) -> float:
     return float(found + (beyond if beyond and parsed.test(None) else 0))
 
 
-@spreadsheet_function("COUNTIFS", group=2, least=2)
+@spreadsheet_function("COUNTIFS", group=_PAIR, least=2)
 def count_ifs(context: Context, *pairs: Operand) -> float:
     """How many places meet all criteria."""
-    return float(len(matching_places(context, pairs)[1]))
+    _, places, beyond = matching_places(context, pairs)
+    return float(len(places) + beyond)
 
 
 def _numbers_ifs(context: Context, values: CellArea, pairs: tuple[Value, ...]) -> list[float]:
-    first, places = matching_places(context, pairs)
+    first, places, _ = matching_places(context, pairs)
     taken = context.area_values(_area_of(values))
     if (taken.rows, taken.columns) != (first.rows, first.columns):
         raise Fault(ErrorValue.VALUE)
     return _numbers_at(taken, places)
 
 
-@spreadsheet_function("SUMIFS", group=2, least=3)
+@spreadsheet_function("SUMIFS", group=_PAIR, least=3)
 def sum_ifs(context: Context, values: CellArea, *pairs: Operand) -> float:
     """The sum of the numbers whose places meet all criteria."""
     return sum(_numbers_ifs(context, values, pairs), 0.0)
 
 
-@spreadsheet_function("AVERAGEIFS", group=2, least=3)
+@spreadsheet_function("AVERAGEIFS", group=_PAIR, least=3)
 def average_ifs(context: Context, values: CellArea, *pairs: Operand) -> float | ErrorValue:
     """The mean of the numbers whose places meet all criteria."""
     numbers = _numbers_ifs(context, values, pairs)
     return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
 
 
-@spreadsheet_function("MAXIFS", group=2, least=3)
+@spreadsheet_function("MAXIFS", group=_PAIR, least=3)
 def maximum_ifs(context: Context, values: CellArea, *pairs: Operand) -> float:
     """The largest of the numbers whose places meet all criteria; 0 if there is none."""
     return max(_numbers_ifs(context, values, pairs), default=0.0)
 
 
-@spreadsheet_function("MINIFS", group=2, least=3)
+@spreadsheet_function("MINIFS", group=_PAIR, least=3)
 def minimum_ifs(context: Context, values: CellArea, *pairs: Operand) -> float:
     """The smallest of the numbers whose places meet all criteria; 0 if there is none."""
     return min(_numbers_ifs(context, values, pairs), default=0.0)

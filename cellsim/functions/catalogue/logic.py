@@ -28,7 +28,7 @@ def choose_branch(condition: Logical, then: Lazy, otherwise: Lazy | None = None)
     return otherwise() if otherwise is not None else False
 
 
-@spreadsheet_function("IFS", group=2, least=2)
+@spreadsheet_function("IFS", least=2)
 def first_true_branch(context: Context, *branches: Lazy) -> Value:
     """The value after the first condition that is true; #N/A if none is."""
     if len(branches) % 2:
@@ -51,7 +51,7 @@ def replace_not_available(value: AnyScalar, instead: Lazy) -> Value:
     return instead() if value is ErrorValue.NA else 0.0 if value is None else value
 
 
-@spreadsheet_function("SWITCH", group=2, least=3)
+@spreadsheet_function("SWITCH", least=3)
 def matching_branch(context: Context, subject: ScalarValue, *branches: Lazy) -> Value:
     """The value after the first case that equals the first argument, else the default, else #N/A."""
     for position in range(0, len(branches) - 1, 2):
