@@ -103,23 +103,23 @@ def binomial_mass(x: Numbers, n: Numbers, p: Numbers, q: Numbers) -> FloatArray:
 
     Args:
         x: Successes.
-        n: Trials.
+        n: Attempts.
         p: Probability of success.
         q: 1 - p, given too because its digits may be known better than those of the difference.
     """
-    successes, trials = np.asarray(x, dtype=np.float64), np.asarray(n, dtype=np.float64)
-    failures = trials - successes
+    successes, attempts = np.asarray(x, dtype=np.float64), np.asarray(n, dtype=np.float64)
+    failures = attempts - successes
     exponent = (
-        stirling_error(trials)
+        stirling_error(attempts)
         - stirling_error(successes)
         - stirling_error(failures)
-        - deviance(successes, trials * p)
-        - deviance(failures, trials * q)
+        - deviance(successes, attempts * p)
+        - deviance(failures, attempts * q)
     )
-    found = np.exp(exponent) * np.sqrt(trials / (2 * np.pi * successes * failures))
+    found = np.exp(exponent) * np.sqrt(attempts / (2 * np.pi * successes * failures))
     found = np.where((np.asarray(p) == 0) | (np.asarray(q) == 0), 0.0, found)
-    found = np.where(failures == 0, _power(trials, p, q), found)
-    return np.where(successes == 0, _power(trials, q, p), found)
+    found = np.where(failures == 0, _power(attempts, p, q), found)
+    return np.where(successes == 0, _power(attempts, q, p), found)
 
 
 def beta_density(share: Numbers, rest: Numbers, a: Numbers, b: Numbers) -> FloatArray:

@@ -121,7 +121,7 @@ GAMMAS = spread(2, (1e-4, 600), (0.05, 300), (0.5, 2))
 FREEDOM = whole(spread(3, (1e-3, 700), (1, 500)), 1)
 RATIOS = whole(spread(4, (1e-3, 40), (1, 800), (1, 800)), 1, 2)
 STUDENT = whole(spread(5, (1e-6, 200), (1, 2000)), 1)
-TRIALS = [
+ATTEMPTS = [
     (np.floor(n * share), n, p)
     for n, share, p in whole(spread(6, (1, 5e3), (1e-3, 1), (1e-5, 0.999)), 0)
 ]
@@ -148,10 +148,10 @@ VALUES: list[tuple[str, list[tuple[float, ...]], tuple[Any, ...], Callable[..., 
     ("T.DIST", STUDENT, (False,), t_density),
     ("T.DIST.RT", STUDENT, (), t_above),
     ("TDIST", STUDENT, (2.0,), lambda x, n: 2 * t_above(x, n)),
-    ("BINOM.DIST", TRIALS, (False,), binomial),
+    ("BINOM.DIST", ATTEMPTS, (False,), binomial),
     (
         "BINOM.DIST",
-        TRIALS,
+        ATTEMPTS,
         (True,),
         lambda k, n, p: 1 if k == n else beta_below(n - k, k + 1, 1 - p),
     ),
@@ -246,23 +246,23 @@ def test_quantiles_have_the_probability_asked_for(
     assert compared >= 30
 
 
-@pytest.mark.parametrize("trials", [1, 7, 40, 1000])
+@pytest.mark.parametrize("attempts", [1, 7, 40, 1000])
 @pytest.mark.parametrize("probability", [0.1, 0.5, 0.9, 1e-3])
 def test_binomial_quantiles_stop_where_the_cumulative_probability_reaches_the_limit(
-    trials: int, probability: float
+    attempts: int, probability: float
 ) -> None:
     """At the cumulative probability itself, rounded to a float, and just above it."""
     with mp.workdps(60):
         p = mp.mpf(probability)
         below = mp.mpf(0)
-        for k in range(min(trials, 40)):
-            below += binomial(k, mp.mpf(trials), p)
+        for k in range(min(attempts, 40)):
+            below += binomial(k, mp.mpf(attempts), p)
             limit = float(below)
-            if limit > 1 - 1e-9 or binomial(k + 1, mp.mpf(trials), p) < 1e-9:
+            if limit > 1 - 1e-9 or binomial(k + 1, mp.mpf(attempts), p) < 1e-9:
                 break
-            found = call("BINOM.INV", float(trials), probability, limit)
+            found = call("BINOM.INV", float(attempts), probability, limit)
             assert found == k
-            assert call("CRITBINOM", float(trials), probability, limit * (1 + 1e-12)) == k + 1
+            assert call("CRITBINOM", float(attempts), probability, limit * (1 + 1e-12)) == k + 1
 
 
 def test_ranges_of_counts_do_not_cancel_far_from_the_mean() -> None:

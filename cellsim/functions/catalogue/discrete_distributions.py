@@ -62,10 +62,10 @@ def _binomial_above(k: FloatArray, n: FloatArray, p: FloatArray) -> FloatArray:
 
 @numeric_function("BINOM.DIST", "BINOMDIST")
 def binomial(
-    successes: Whole, trials: Whole, probability: Number, cumulative: Logical
+    successes: Whole, attempts: Whole, probability: Number, cumulative: Logical
 ) -> FloatArray:
     """The binomial distribution: cumulative, or the probability of so many successes."""
-    k, n, p = _truncated(successes), _truncated(trials), _float(probability)
+    k, n, p = _truncated(successes), _truncated(attempts), _float(probability)
     found = chosen(
         cumulative, lambda: _binomial_below(k, n, p), lambda: binomial_mass(k, n, p, 1 - p)
     )
@@ -74,10 +74,10 @@ def binomial(
 
 @numeric_function("BINOM.DIST.RANGE")
 def binomial_between(
-    trials: Whole, probability: Number, least: Whole, most: Whole | None = None
+    attempts: Whole, probability: Number, least: Whole, most: Whole | None = None
 ) -> FloatArray:
     """The probability of a number of successes, or of a number between two limits."""
-    n, p, low = _truncated(trials), _float(probability), _truncated(least)
+    n, p, low = _truncated(attempts), _float(probability), _truncated(least)
     high = low if most is None else _truncated(most)
     below, above = _binomial_below(low - 1, n, p), _binomial_above(high, n, p)
     # A difference of the tails on the side where they are small, so that they do not cancel.
@@ -91,9 +91,9 @@ def binomial_between(
 
 
 @numeric_function("BINOM.INV", "CRITBINOM")
-def binomial_quantile(trials: Whole, probability: Number, alpha: Number) -> FloatArray:
+def binomial_quantile(attempts: Whole, probability: Number, alpha: Number) -> FloatArray:
     """The least number of successes whose cumulative probability reaches a limit."""
-    n, p, limit = np.broadcast_arrays(_truncated(trials), _float(probability), _float(alpha))
+    n, p, limit = np.broadcast_arrays(_truncated(attempts), _float(probability), _float(alpha))
     outside = (n < 0) | (n > _LARGEST_COUNT) | (p < 0) | (p > 1) | (limit < 0) | (limit > 1)
     outside = outside | np.isnan(n) | np.isnan(p) | np.isnan(limit)
     most = np.where(outside, 0.0, n)
