@@ -7,6 +7,18 @@ import math
 from cellsim.values import ErrorValue, Fault
 
 
+def kth_from_an_end(numbers: list[float], place: float, *, from_top: bool) -> float:
+    """The number at a place counted from 1, rounded up, from the largest or the smallest.
+
+    Raises:
+        Fault: There is no such place (#NUM!).
+    """
+    k = math.ceil(place)
+    if not 1 <= k <= len(numbers):
+        raise Fault(ErrorValue.NUM)
+    return sorted(numbers, reverse=from_top)[k - 1]
+
+
 def percentile_inclusive(numbers: list[float], share: float) -> float:
     """The value at position 1 + (n - 1) p of the ordered numbers (Hyndman and Fan 1996, type 7).
 

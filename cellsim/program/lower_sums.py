@@ -137,6 +137,18 @@ def extreme_rule(op: Op) -> Callable[[Arguments], Lowered | None]:
     return lambda given: extreme_of(op, given, _numbers(given))
 
 
+def _zero_without_items(
+    given: Arguments, items: Sequence[CountedItem], result: Operand | None
+) -> Lowered:
+    """A result over items, zero in draws in which none of them counts."""
+    if result is None:
+        return Known(0.0)
+    if not any(isinstance(item.counts, Constant) for item in items):
+        some = _any_counts(given, items)
+        result = given.emitter.builder.emit(Op.SELECT, some, result, _ZERO)
+    return given.emitter.as_lowered(result)
+
+
 def extreme_of(op: Op, given: Arguments, items: Sequence[CountedItem]) -> Lowered | None:
     """The least or greatest of what counts; zero where nothing does."""
     pick = min if op is Op.MINIMUM else max
@@ -150,12 +162,7 @@ def extreme_of(op: Op, given: Arguments, items: Sequence[CountedItem]) -> Lowere
     result: Operand | None = constant(pick(operand.value for operand in fixed)) if fixed else None
     for operand in varying:
         result = operand if result is None else given.emitter.builder.emit(op, result, operand)
-    if result is None:
-        return Known(0.0)
-    if not any(isinstance(item.counts, Constant) for item in items):
-        some = _any_counts(given, items)
-        result = given.emitter.builder.emit(Op.SELECT, some, result, _ZERO)
-    return given.emitter.as_lowered(result)
+    return _zero_without_items(given, items, result)
 
 
 def count_rule(given: Arguments) -> Lowered | None:
@@ -224,12 +231,7 @@ def product_rule(given: Arguments) -> Lowered:
         result = (
             factor if result is None else given.emitter.arithmetic_operands("*", result, factor)
         )
-    if result is None:
-        return Known(0.0)
-    if not any(isinstance(item.counts, Constant) for item in items):
-        some = _any_counts(given, items)
-        result = given.emitter.builder.emit(Op.SELECT, some, result, _ZERO)
-    return given.emitter.as_lowered(result)
+    return _zero_without_items(given, items, result)
 
 
 def net_present_value_rule(given: Arguments) -> Lowered | None:

@@ -7,6 +7,7 @@ import math
 import numpy as np
 
 from cellsim.functions.dispatch import values_of
+from cellsim.functions.moments import total
 from cellsim.functions.operators import power
 from cellsim.functions.registry import (
     ArrayValues,
@@ -45,7 +46,7 @@ def multiply(*numbers: NumberItems) -> float:
 @spreadsheet_function("SUMSQ", least=1)
 def sum_of_squares(*numbers: NumberItems) -> float:
     """The sum of squares."""
-    return sum((number * number for items in numbers for number in items), 0.0)
+    return total(number * number for items in numbers for number in items)
 
 
 @spreadsheet_function("SUMPRODUCT", least=1)
@@ -85,19 +86,19 @@ def _pairs(x: Array, y: Array) -> list[tuple[float, float]]:
 @spreadsheet_function("SUMX2MY2")
 def sum_of_differences_of_squares(x: ArrayValues, y: ArrayValues) -> float:
     """The sum of x squared less y squared."""
-    return sum((a * a - b * b for a, b in _pairs(x, y)), 0.0)
+    return total(a * a - b * b for a, b in _pairs(x, y))
 
 
 @spreadsheet_function("SUMX2PY2")
 def sum_of_sums_of_squares(x: ArrayValues, y: ArrayValues) -> float:
     """The sum of x squared plus y squared."""
-    return sum((a * a + b * b for a, b in _pairs(x, y)), 0.0)
+    return total(a * a + b * b for a, b in _pairs(x, y))
 
 
 @spreadsheet_function("SUMXMY2")
 def sum_of_squared_differences(x: ArrayValues, y: ArrayValues) -> float:
     """The sum of squares of x less y."""
-    return sum(((a - b) ** 2 for a, b in _pairs(x, y)), 0.0)
+    return total((a - b) ** 2 for a, b in _pairs(x, y))
 
 
 @spreadsheet_function("ABS")

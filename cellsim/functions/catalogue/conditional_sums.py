@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from cellsim.cells import RangeRef
 from cellsim.functions.criteria import parse_criterion
+from cellsim.functions.moments import average, total
 from cellsim.functions.number_text import number_from_text
 from cellsim.functions.registry import (
     AnyScalar,
@@ -107,7 +108,7 @@ def sum_if(
     context: Context, where: CellArea, criterion: AnyScalar, values: CellArea | None = None
 ) -> float:
     """The sum of the numbers whose place meets a criterion."""
-    return sum(_numbers_if(context, where, criterion, values), 0.0)
+    return total(_numbers_if(context, where, criterion, values))
 
 
 @spreadsheet_function("AVERAGEIF")
@@ -115,8 +116,7 @@ def average_if(
     context: Context, where: CellArea, criterion: AnyScalar, values: CellArea | None = None
 ) -> float | ErrorValue:
     """The mean of the numbers whose place meets a criterion."""
-    numbers = _numbers_if(context, where, criterion, values)
-    return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
+    return average(_numbers_if(context, where, criterion, values))
 
 
 @spreadsheet_function("COUNTIF")
@@ -148,14 +148,13 @@ def _numbers_ifs(context: Context, values: CellArea, pairs: tuple[Value, ...]) -
 @spreadsheet_function("SUMIFS", group=_PAIR, least=3)
 def sum_ifs(context: Context, values: CellArea, *pairs: Operand) -> float:
     """The sum of the numbers whose places meet all criteria."""
-    return sum(_numbers_ifs(context, values, pairs), 0.0)
+    return total(_numbers_ifs(context, values, pairs))
 
 
 @spreadsheet_function("AVERAGEIFS", group=_PAIR, least=3)
 def average_ifs(context: Context, values: CellArea, *pairs: Operand) -> float | ErrorValue:
     """The mean of the numbers whose places meet all criteria."""
-    numbers = _numbers_ifs(context, values, pairs)
-    return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
+    return average(_numbers_ifs(context, values, pairs))
 
 
 @spreadsheet_function("MAXIFS", group=_PAIR, least=3)

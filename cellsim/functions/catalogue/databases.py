@@ -10,6 +10,7 @@ import math
 from collections.abc import Callable
 
 from cellsim.functions.criteria import Criterion, parse_criterion
+from cellsim.functions.moments import average, total, variance
 from cellsim.functions.registry import AnyScalar, CellArea, Context, spreadsheet_function
 from cellsim.values import Array, ErrorValue, Fault, Scalar
 
@@ -126,7 +127,7 @@ def sum_of_field(
     context: Context, database: CellArea, field: AnyScalar, criteria: CellArea
 ) -> float:
     """The sum of a field over the records picked."""
-    return sum(_numbers(context, database, field, criteria), 0.0)
+    return total(_numbers(context, database, field, criteria))
 
 
 @spreadsheet_function("DPRODUCT")
@@ -157,34 +158,28 @@ def smallest_of_field(
 @spreadsheet_function("DAVERAGE")
 def mean_of_field(
     context: Context, database: CellArea, field: AnyScalar, criteria: CellArea
-) -> float | ErrorValue:
+) -> float:
     """The mean of a field over the records picked."""
-    numbers = _numbers(context, database, field, criteria)
-    return sum(numbers) / len(numbers) if numbers else ErrorValue.DIV0
-
-
-def _variance(numbers: list[float], lost: int) -> float:
-    if len(numbers) <= lost:
-        raise Fault(ErrorValue.DIV0)
-    centre = sum(numbers) / len(numbers)
-    return sum((number - centre) ** 2 for number in numbers) / (len(numbers) - lost)
+    return average(_numbers(context, database, field, criteria))
 
 
 def _spread(
     name: str, documentation: str, lost: int, finish: Callable[[float], float]
 ) -> Callable[..., float]:
     def kernel(context: Context, database: CellArea, field: AnyScalar, criteria: CellArea) -> float:
-        return finish(_variance(_numbers(context, database, field, criteria), lost))
+        return finish(variance(_numbers(context, database, field, criteria), lost))
 
     kernel.__doc__ = documentation
     return spreadsheet_function(name)(kernel)
 
 
-variance_of_sample = _spread("DVAR", "The variance of a field, the records a sample.", 1, float)
-variance = _spread("DVARP", "The variance of a field, the records all there are.", 0, float)
-deviation_of_sample = _spread(
+sample_variance = _spread("DVAR", "The variance of a field, the records a sample.", 1, float)
+population_variance = _spread(
+    "DVARP", "The variance of a field, the records all there are.", 0, float
+)
+sample_deviation = _spread(
     "DSTDEV", "The standard deviation of a field, the records a sample.", 1, math.sqrt
 )
-deviation = _spread(
+population_deviation = _spread(
     "DSTDEVP", "The standard deviation of a field, the records all there are.", 0, math.sqrt
 )

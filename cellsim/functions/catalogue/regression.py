@@ -7,6 +7,7 @@ import math
 import numpy as np
 
 from cellsim.functions.least_squares import Fit, fit_line, paired_numbers
+from cellsim.functions.moments import total
 from cellsim.functions.registry import (
     ArrayValues,
     FloatArray,
@@ -22,10 +23,10 @@ from cellsim.values import Array, ErrorValue, Fault, Scalar, encode_error
 def _sums(x: list[float], y: list[float]) -> tuple[float, float, float, float, float]:
     """Means, and sums of squared and crossed deviations."""
     n = len(x)
-    mean_x, mean_y = sum(x) / n, sum(y) / n
-    sxx = sum((a - mean_x) ** 2 for a in x)
-    syy = sum((b - mean_y) ** 2 for b in y)
-    sxy = sum((a - mean_x) * (b - mean_y) for a, b in zip(x, y, strict=True))
+    mean_x, mean_y = total(x) / n, total(y) / n
+    sxx = total((a - mean_x) ** 2 for a in x)
+    syy = total((b - mean_y) ** 2 for b in y)
+    sxy = total((a - mean_x) * (b - mean_y) for a, b in zip(x, y, strict=True))
     return mean_x, mean_y, sxx, syy, sxy
 
 

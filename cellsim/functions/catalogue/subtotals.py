@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 import math
-from collections import Counter
 from collections.abc import Callable
 
 from cellsim.functions.coercion import to_number
 from cellsim.functions.dispatch import single_value
-from cellsim.functions.order_statistics import percentile_exclusive, percentile_inclusive
+from cellsim.functions.moments import average, mode, total, variance
+from cellsim.functions.order_statistics import (
+    kth_from_an_end,
+    percentile_exclusive,
+    percentile_inclusive,
+)
 from cellsim.functions.registry import (
     ArrayOperand,
     CellArea,
@@ -19,30 +23,16 @@ from cellsim.functions.registry import (
 )
 from cellsim.values import Array, ErrorValue, Fault, Reference, Scalar, Value
 
-
-def _variance(numbers: list[float], lost: int) -> float:
-    if len(numbers) <= lost:
-        raise Fault(ErrorValue.DIV0)
-    centre = sum(numbers) / len(numbers)
-    return sum((number - centre) ** 2 for number in numbers) / (len(numbers) - lost)
-
-
-def _mean(numbers: list[float]) -> float:
-    if not numbers:
-        raise Fault(ErrorValue.DIV0)
-    return sum(numbers) / len(numbers)
-
-
 _STATISTICS: dict[int, Callable[[list[float]], float]] = {
-    1: _mean,
+    1: average,
     4: lambda numbers: max(numbers, default=0.0),
     5: lambda numbers: min(numbers, default=0.0),
     6: lambda numbers: math.prod(numbers) if numbers else 0.0,
-    7: lambda numbers: math.sqrt(_variance(numbers, 1)),
-    8: lambda numbers: math.sqrt(_variance(numbers, 0)),
-    9: lambda numbers: sum(numbers, 0.0),
-    10: lambda numbers: _variance(numbers, 1),
-    11: lambda numbers: _variance(numbers, 0),
+    7: lambda numbers: math.sqrt(variance(numbers, 1)),
+    8: lambda numbers: math.sqrt(variance(numbers, 0)),
+    9: total,
+    10: lambda numbers: variance(numbers, 1),
+    11: lambda numbers: variance(numbers, 0),
 }
 
 
@@ -127,7 +117,7 @@ def aggregate(context: Context, kind: Whole, option: Whole, *values: ArrayOperan
     if place is not None:
         return _at_place(kind, numbers, place)
     if kind in {12, 13}:
-        return percentile_inclusive(numbers, 0.5) if kind == 12 else _mode(numbers)
+        return percentile_inclusive(numbers, 0.5) if kind == 12 else mode(numbers)
     return _STATISTICS[kind](numbers)
 
 
@@ -147,19 +137,10 @@ def _aggregated(context: Context, value: Value, option: int, *, cells: bool) -> 
     raise Fault(value if isinstance(value, ErrorValue) else ErrorValue.VALUE)
 
 
-def _mode(numbers: list[float]) -> Value:
-    counts = Counter(numbers)
-    value, count = counts.most_common(1)[0] if counts else (0.0, 0)
-    return value if count > 1 else ErrorValue.NA
-
-
 def _at_place(kind: int, numbers: list[float], place: float) -> Value:
     """LARGE, SMALL, and percentiles and quartiles with their ends or without."""
     if kind in {14, 15}:
-        k = math.ceil(place)
-        if not 1 <= k <= len(numbers):
-            return ErrorValue.NUM
-        return sorted(numbers, reverse=kind == 14)[k - 1]
+        return kth_from_an_end(numbers, place, from_top=kind == 14)
     if kind in {17, 19}:
         place = int(place) / 4
     if kind in {16, 17}:
